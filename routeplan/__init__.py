@@ -1,0 +1,1 @@
+"""Plan outside-plant singlemode fibre runs: lengths, reels, joints, fibres, light."""
