@@ -1,1 +1,7 @@
-"""."""
+"""What the planner declares: reading run files and every vector file into a `Run`."""
+
+from __future__ import annotations
+
+from routeplan.run.defaults import assumed_values, default_value, practice_rows, value_of
+
+__all__ = ["assumed_values", "default_value", "practice_rows", "value_of"]
