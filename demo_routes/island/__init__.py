@@ -1,0 +1,1 @@
+"""The invented island Ostrellan: its ground, its ways and what is planned on it."""
