@@ -1,0 +1,328 @@
+"""
+The shortest path that reels are bought along: places, sections and their prices, made quick.
+
+Cost, joints, joints at assumed places and ties are packed into one integer, the key, so that a
+sum of integers compares like the whole objective and every tie is a real one.
+"""
+
+from __future__ import annotations
+
+from bisect import bisect_left
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from itertools import accumulate, pairwise
+from operator import le
+
+from routeplan.cable.reel_models import (
+    SpanProblem,
+    longest_reel_mm,
+    reel_price_cents,
+    sheath_most_mm,
+)
+
+__all__ = [
+    "Costs",
+    "Forward",
+    "Front",
+    "Table",
+    "best_start",
+    "forward",
+    "make_costs",
+    "make_front",
+    "make_table",
+    "path_key",
+    "path_of",
+    "push",
+    "section_price",
+]
+
+Forward = tuple[list[int | None], list[int]]  # key of each place (None: not reached), and from
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Table:
+    """
+    The problem as the search needs it.
+
+    A section fits a limit if its sheath is at most the limit's or it starts no earlier than
+    `clear[end]`, the first place from where on it stays out of the placement.
+    Within a `group` places have both index and `leave` ascending, so that the places a section
+    may start at are always the last ones of each group; nearly every place is in group 0.
+    """
+
+    arrive: Sequence[int]
+    leave: Sequence[int]
+    soonest: list[int]
+    group: list[int]
+    groups: int
+    gain: list[int]
+    shift: int
+    put_ups: list[tuple[int, int]]
+    limits: list[tuple[int, list[int]]]
+    longest: int
+    factor: int
+    step: int
+    pieces: int
+    price: Callable[[int], int]
+    gap: Callable[[int], int]
+
+
+class _Memo(dict[int, int]):
+    """Values of a function of whole numbers, computed when first asked for."""
+
+    __slots__ = ("_function",)
+
+    def __init__(self, function: Callable[[int], int]) -> None:
+        super().__init__()
+        self._function = function
+
+    def __missing__(self, number: int) -> int:
+        value = self[number] = self._function(number)
+        return value
+
+
+def make_table(problem: SpanProblem) -> Table:
+    """Prepare a problem: packed joint costs, longest sheaths, groups and clear places."""
+    buying, ratio = problem.buying, 1 + problem.ordering_ratio
+    bits = len(problem.chain_mm).bit_length()
+    tie_bits = sum(problem.tie_key).bit_length()
+    shift = tie_bits + 2 * bits
+    joint = 1 << tie_bits + bits
+    gain = [
+        (cost << shift) + joint + (assumed << tie_bits) + tie
+        for cost, assumed, tie in zip(
+            problem.joint_cost_cents, problem.assumed, problem.tie_key, strict=True
+        )
+    ]
+    gain[0] = gain[-1] = 0
+    rate, step = buying.cable_cents_per_m, buying.round_up_mm
+    group = _groups(problem.leave_mm)
+    return Table(
+        arrive=problem.arrive_mm,
+        leave=problem.leave_mm,
+        soonest=list(accumulate(reversed(problem.arrive_mm), min))[::-1],
+        group=group,
+        groups=max(group) + 1,
+        gain=gain,
+        shift=shift,
+        put_ups=[
+            (sheath_most_mm(problem, put_up), reel_price_cents(buying, put_up) << shift)
+            for put_up in sorted(set(buying.put_ups_mm))
+        ],
+        limits=[
+            (sheath_most_mm(problem, limit.most_mm), _clear(problem.chain_mm, limit.intervals_mm))
+            for limit in problem.limits
+        ],
+        longest=sheath_most_mm(problem, longest_reel_mm(buying)),
+        factor=ratio.numerator,
+        step=step * ratio.denominator,
+        pieces=buying.made_max_mm // step,
+        price=lambda pieces: reel_price_cents(buying, pieces * step) << shift,
+        gap=lambda pieces: pieces * step * rate.numerator // (1000 * rate.denominator) << shift,
+    )
+
+
+def _groups(leave: Sequence[int]) -> list[int]:
+    """Part the places into the fewest groups with `leave` ascending, most of them in the first."""
+    if all(map(le, leave, leave[1:])):
+        return [0] * len(leave)
+    last: list[int] = []
+    group = []
+    for value in leave:
+        index = next((k for k, most in enumerate(last) if most <= value), len(last))
+        last[index : index + 1] = [value]
+        group.append(index)
+    return group
+
+
+def _clear(chain: Sequence[int], intervals: Sequence[tuple[int, int]]) -> list[int]:
+    """Return for each end the first start that keeps a section out of the intervals."""
+    waiting = sorted((a, b) for a, b in intervals if a < b)[::-1]
+    reached, first, clear = chain[0], 0, []
+    for here in chain:
+        while waiting and waiting[-1][0] < here:
+            reached = max(reached, waiting.pop()[1])
+        while chain[first] < min(here, reached):
+            first += 1
+        clear.append(first)
+    return clear
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Costs:
+    """
+    Prices and joint costs of one search, every price multiplied by `scale`.
+
+    `gap` is the least price difference between sections that differ by so many pieces.
+    """
+
+    put_ups: list[tuple[int, int]]
+    price: _Memo
+    gap: _Memo
+    gain: list[int]
+
+
+def make_costs(table: Table, *, scale: int = 1, gain: list[int] | None = None) -> Costs:
+    """Return the costs of a search."""
+    if scale == 1:
+        return Costs(
+            put_ups=table.put_ups,
+            price=_Memo(table.price),
+            gap=_Memo(table.gap),
+            gain=table.gain if gain is None else gain,
+        )
+    return Costs(
+        put_ups=[(most, price * scale) for most, price in table.put_ups],
+        price=_Memo(lambda pieces: table.price(pieces) * scale),
+        gap=_Memo(lambda pieces: table.gap(pieces) * scale),
+        gain=table.gain if gain is None else gain,
+    )
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Front:
+    """
+    Earlier places that may still start the best section, by group, in order of index.
+
+    For put-ups a later place that costs no more outdoes an earlier one, since prices never
+    fall with length; for made pieces it may even cost more by what the shorter piece saves.
+    Made pieces keep (leave, place, key), `leave` multiplied so that pieces are whole steps.
+    """
+
+    table: Table
+    costs: Costs
+    stacks: list[tuple[list[int], list[int], list[int]]]
+    made: list[list[tuple[int, int, int]]]
+
+
+def make_front(table: Table, costs: Costs) -> Front:
+    """Return an empty front."""
+    groups = range(table.groups)
+    return Front(
+        table=table,
+        costs=costs,
+        stacks=[([], [], []) for _ in groups] if table.put_ups else [],
+        made=[[] for _ in groups] if table.pieces else [],
+    )
+
+
+def push(front: Front, place: int, key: int) -> None:
+    """Add a place reached at a cost, and drop those it outdoes."""
+    table = front.table
+    group, leave = table.group[place], table.leave[place]
+    if front.stacks:
+        leaves, places, keys = front.stacks[group]
+        while keys and keys[-1] >= key:
+            del leaves[-1], places[-1], keys[-1]
+        leaves.append(leave)
+        places.append(place)
+        keys.append(key)
+    if front.made:
+        scaled, step, gap = leave * table.factor, table.step, front.costs.gap
+        old = front.made[group]
+        if old and old[0][0] < scaled - table.pieces * step:  # too far from every later place
+            del old[: bisect_left(old, (scaled - table.pieces * step,))]
+        old[:] = [item for item in old if item[2] < key - gap[(scaled - item[0]) // step]]
+        old.append((scaled, place, key))
+
+
+def best_start(front: Front, end: int) -> tuple[int, int] | None:
+    """Return the least cost of reaching `end`, its own joint excluded, and from where."""
+    table, best = front.table, None
+    arrive, limits = table.arrive[end], table.limits
+    for leaves, places, keys in front.stacks:
+        first = _first_of(limits, leaves, places, arrive, end) if limits else 0
+        for most, price in front.costs.put_ups:
+            at = bisect_left(leaves, arrive - most, first)
+            if at < len(leaves) and (best is None or keys[at] + price < best[0]):
+                best = (keys[at] + price, places[at])
+            if at == first:  # a longer put-up reaches nothing more
+                break
+    reach = arrive * table.factor - table.pieces * table.step
+    for made in front.made:
+        first = bisect_left(made, (reach,))
+        if limits:
+            starts = [table.leave[item[1]] for item in made]
+            first = max(first, _first_of(limits, starts, [i[1] for i in made], arrive, end))
+        best = _best_made(made[first:], front, arrive, best)
+    return best
+
+
+def _best_made(
+    made: list[tuple[int, int, int]],
+    front: Front,
+    arrive: int,
+    best: tuple[int, int] | None,
+) -> tuple[int, int] | None:
+    """Return the better of `best` and the least cost from the places of one group."""
+    price, step = front.costs.price, front.table.step
+    ahead = arrive * front.table.factor + step - 1  # so that the division rounds up
+    totals = [key + price[(ahead - leave) // step] for leave, _, key in made]
+    if not totals:
+        return best
+    least = min(totals)
+    if best is not None and best[0] <= least:
+        return best
+    return least, made[totals.index(least)][1]
+
+
+def _first_of(
+    limits: list[tuple[int, list[int]]],
+    leaves: list[int],
+    places: list[int],
+    arrive: int,
+    end: int,
+) -> int:
+    """Return where in a group the places begin that keep every placement limit."""
+    return max(
+        min(bisect_left(leaves, arrive - most), bisect_left(places, clear[end]))
+        for most, clear in limits
+    )
+
+
+def forward(table: Table, costs: Costs) -> Forward:
+    """Return the least cost of every place and the place before it, no limit on joints."""
+    front, gain = make_front(table, costs), costs.gain
+    keys: list[int | None] = [0]
+    before = [0]
+    push(front, 0, 0)
+    for place in range(1, len(gain)):
+        found = best_start(front, place)
+        if found is None:
+            keys.append(None)
+            before.append(0)
+            continue
+        key = found[0] + gain[place]
+        keys.append(key)
+        before.append(found[1])
+        push(front, place, key)
+    return keys, before
+
+
+def path_of(found: Forward) -> tuple[int, ...] | None:
+    """Return the places on the way to the end, or None if it is not reached."""
+    keys, before = found
+    if keys[-1] is None:
+        return None
+    path = [len(keys) - 1]
+    while path[-1]:
+        path.append(before[path[-1]])
+    return tuple(path[::-1])
+
+
+def section_price(table: Table, start: int, end: int) -> int | None:
+    """Return the packed price of one section, None if it cannot be."""
+    sheath = table.arrive[end] - table.leave[start]
+    if any(sheath > most and start < clear[end] for most, clear in table.limits):
+        return None
+    prices = [price for most, price in table.put_ups if sheath <= most][:1]
+    pieces = -(-sheath * table.factor // table.step)
+    if table.pieces and pieces <= table.pieces:
+        prices.append(table.price(pieces))
+    return min(prices, default=None)
+
+
+def path_key(table: Table, path: Sequence[int]) -> int:
+    """Return the packed objective of a path that keeps the section limits."""
+    prices = (section_price(table, start, end) or 0 for start, end in pairwise(path))
+    return sum(prices) + sum(table.gain[place] for place in path)
