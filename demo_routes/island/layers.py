@@ -9,7 +9,7 @@ from typing import NamedTuple
 import numpy as np
 
 from island.frame import Floats
-from island.lines import along_m, cross_points, nearest, point_at, resample, smooth
+from island.lines import along_m, cross_points, cut, nearest, point_at, resample, smooth
 from island.terrain import HILLS, height_m, river_xy
 from island.towns import TOWNS, Street, gate, town_streets
 from island.ways import lay_way
@@ -49,10 +49,11 @@ BRIDGES = {
 }
 
 _ROADS = (
-    Road("Fell Road", "primary", ("Wexmarrow", "east"), ("Brindlequoy", "west"), "Lunnoth Bridge"),
+    Road("Fell Road", "primary", ("Wexmarrow", "east"), ("Brindlequoy", "west"), "Lunnoth Bridge",
+         0.055),
     Road("Tollan Road", "primary", ("Brindlequoy", "east"), ("Tollanquay", "west")),
     Road("Ulmeskar Road", "secondary", ("Brindlequoy", "north"), ("Ulmeskar", "west")),
-    Road("Mast Road", "track", ("Ulmeskar", "east"), ("Quenmoor", "top"), "", 0.055),
+    Road("Mast Road", "track", ("Ulmeskar", "east"), ("Quenmoor", "top"), "", 0.085),
     Road("South Shore Road", "secondary", ("Wexmarrow", "south"), ("Lunnothfoot", "west"),
          "Lunnothfoot Bridge"),
     Road("Thrumble Road", "secondary", ("Lunnothfoot", "east"), ("Tollanquay", "south")),
@@ -161,20 +162,21 @@ def _with_corner(line: Floats, corner: Floats) -> tuple[Floats, Floats]:
 @cache
 def railway() -> Floats:
     """Return the railway from Tollanquay quay up the valley to the stone pit at Stannet. [m]"""
-    stops = [(8_950, -2_050), (4_250, -5_300), (2_300, -2_900), (1_420, -480), (1_500, 1_500)]
+    stops = [(8_700, -2_900), (3_900, -4_300), (2_100, -2_900), (1_420, -480), (1_250, 1_750)]
     legs = [
         lay_way(np.array(a), np.array(b), easy_slope=0.014)
         for a, b in zip(stops[:-1], stops[1:], strict=True)
     ]
     line = np.vstack([legs[0], *(leg[1:] for leg in legs[1:])])
-    return resample(smooth(resample(line, 220.0), 3), 60.0)
+    line = smooth(resample(line, 220.0), 3)
+    return resample(cut(line, 0.0, float(along_m(line)[-1]) - 300.0), 60.0)
 
 
 @cache
 def power_line() -> Floats:
     """Return the towers of the power line from Lunnothfoot to Wexmarrow. [m]"""
-    bends = [(4_150, -5_450), (3_700, -2_700), (1_700, -1_450), (-1_600, -500), (-4_700, -2_500),
-             (-7_000, -2_200)]  # fmt: skip
+    bends = [(3_950, -5_550), (3_800, -2_700), (1_700, -1_450), (-1_600, -900), (-3_900, -2_750),
+             (-5_600, -2_050), (-7_150, -2_650)]  # fmt: skip
     line = np.array(bends, dtype=float)
     spans = [resample(line[k : k + 2], 245.0)[:-1] for k in range(len(line) - 1)]
     return np.vstack([*spans, line[-1:]])

@@ -38,7 +38,7 @@ def point_at(line: Floats, at_m: float | Sequence[float] | Floats) -> Floats:
 def cut(line: Floats, from_m: float, to_m: float) -> Floats:
     """Return the part of a line between two distances along it, with the vertices between."""
     chain = along_m(line)
-    inside = (chain > from_m + 1.0) & (chain < to_m - 1.0)  # no sliver next to a cut
+    inside = (chain > from_m + 12.0) & (chain < to_m - 12.0)  # no sliver at a cut
     return np.vstack([point_at(line, from_m), line[inside], point_at(line, to_m)])
 
 

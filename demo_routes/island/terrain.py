@@ -8,11 +8,12 @@ from typing import NamedTuple
 import numpy as np
 
 from island.frame import Floats, random_stream, xy_from_lonlat
-from island.lines import along_m, cut, nearest, resample, through
+from island.lines import along_m, cut, nearest, point_at, resample, through
 
 __all__ = [
     "HILLS",
     "Hill",
+    "beck_xy",
     "coast_xy",
     "height_m",
     "height_of_lonlat_m",
@@ -25,7 +26,8 @@ __all__ = [
 
 _HALF_EAST_M, _HALF_NORTH_M = 11_900.0, 8_300.0
 _LOWLAND_M = 34.0
-_SOURCE_M = 165.0
+_SOURCE_M = 165.0  # of the valley floor at the spring
+_VALLEY_BLUR_M = 420.0
 
 
 class Hill(NamedTuple):
@@ -42,10 +44,11 @@ class Hill(NamedTuple):
 
 HILLS = (
     Hill("Quenmoor", 6_900, 3_300, 352, 1_750, 1_350, 35),
-    Hill("Sarrel Fell", -4_300, 1_900, 250, 3_600, 1_250, 96),
-    Hill("Sarrel Fell, south", -3_700, -4_100, 165, 1_700, 1_150, 100),
+    Hill("Sarrel Fell", -4_300, 1_900, 250, 2_900, 1_300, 96),
+    Hill("Sarrel Fell, south", -3_650, -4_700, 185, 2_100, 1_150, 98),
     Hill("Owl Law", -300, 5_600, 245, 2_300, 1_500, 10),
     Hill("Thrumble", 6_600, -3_600, 118, 1_700, 1_200, 150),
+    Hill("Sarrel Gate", -3_950, -1_750, 26, 1_500, 1_250, 96),
     Hill("Grey Lathe", -7_900, 2_700, 95, 1_500, 1_900, 20),
     Hill("Stannet Rig", 2_900, 3_400, 130, 2_000, 1_000, 60),
 )
@@ -54,8 +57,8 @@ HILLS = (
 @cache
 def _shore_waves() -> tuple[Floats, Floats, Floats]:
     random = random_stream("coast")
-    order = np.arange(2, 34)
-    size = 0.26 * random.uniform(0.35, 1.0, len(order)) / order**1.12
+    order = np.arange(2, 46)
+    size = 0.23 * random.uniform(0.35, 1.0, len(order)) / order**1.04
     return order, size, random.uniform(0, 2 * np.pi, len(order))
 
 
@@ -72,7 +75,7 @@ def inland_ratio(xy: Floats) -> Floats:
     return _shore_ratio(np.arctan2(north, east)) - np.hypot(east, north)
 
 
-def coast_xy(count: int = 900) -> Floats:
+def coast_xy(count: int = 1_100) -> Floats:
     """Return the coast, anticlockwise and closed, in the local frame. [m]"""
     angle = np.linspace(-np.pi, np.pi, count, endpoint=False)
     out = _shore_ratio(angle)
@@ -118,6 +121,18 @@ def river_xy() -> Floats:
     return resample(cut(line, 0.0, float(along_m(line)[mouth])), 60.0)
 
 
+@cache
+def beck_xy() -> Floats:
+    """Return Sarrel Beck, a stream from the fell to the river, in the local frame. [m]"""
+    bends = [(-2_500, 2_300), (-1_900, 1_500), (-1_750, 800), (-1_000, 350), (-700, -500),
+             (100, -900), (600, -1_250)]  # fmt: skip
+    line = through([*bends, tuple(point_at(river_xy(), 7_200.0))], 30.0)
+    chain = along_m(line)
+    sway = np.interp(chain, [0, 200, chain[-1] - 200, chain[-1]], [0, 1, 1, 0])
+    sway = sway * (16 * np.sin(chain / 61.0) + 9 * np.sin(chain / 23.0 + 1.0))
+    return resample(line + np.stack([sway, 0.6 * sway], axis=1), 45.0)
+
+
 def river_distance_m(xy: Floats) -> Floats:
     """Return how far each place is from the middle of the river. [m]"""
     return nearest(xy.reshape(-1, 2), river_xy())[0].reshape(xy.shape[:-1])
@@ -149,7 +164,7 @@ def height_m(xy: Floats) -> Floats:
     for hill in HILLS:
         relief = relief + _bell(xy, hill)
     land = rise * np.maximum(relief, 4.0)
-    return np.where(inland > 0, _with_valley(xy, land), -70.0 * (1.0 - np.exp(7.0 * inland)))
+    return np.where(inland > 0, _with_valley(xy, land, inland), -70.0 * (1.0 - np.exp(7.0 * inland)))
 
 
 def _bell(xy: Floats, hill: Hill) -> Floats:
@@ -160,11 +175,20 @@ def _bell(xy: Floats, hill: Hill) -> Floats:
     return hill.height_m * np.exp(-((ahead / hill.along_m) ** 2) - (aside / hill.across_m) ** 2)
 
 
-def _with_valley(xy: Floats, land: Floats) -> Floats:
-    away, down = nearest(xy.reshape(-1, 2), river_xy())
-    share = down / along_m(river_xy())[-1]
-    floor = _SOURCE_M * (1.0 - share) ** 2.7
-    near = np.exp(-((away / (260.0 + 620.0 * share)) ** 2))
+def _with_valley(xy: Floats, land: Floats, inland: Floats) -> Floats:
+    """Return land heights with the valley cut in, its floor smooth where two bends are as near."""
+    places, river = xy.reshape(-1, 2), river_xy()
+    away = nearest(places, river)[0]
+    weight, share = np.zeros(len(places)), np.zeros(len(places))
+    for part, bend in zip(np.linspace(0.0, 1.0, len(river)), river, strict=True):
+        square = np.sum((places - bend) ** 2, axis=1)
+        near_bend = np.exp((away**2 - square) / _VALLEY_BLUR_M**2)
+        weight += near_bend
+        share += part * near_bend
+    share = share / np.maximum(weight, 1e-9)
+    shore = np.clip(inland.reshape(-1) / 0.03, 0.0, 1.0)
+    floor = _SOURCE_M * (1.0 - share) ** 2.7 * shore
+    near = np.exp(-((away / (300.0 + 600.0 * share)) ** 2))
     flat = land.reshape(-1)
     return (flat + near * (floor - flat)).reshape(land.shape)
 

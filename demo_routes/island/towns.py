@@ -37,7 +37,7 @@ class Street(NamedTuple):
 TOWNS = {
     town.name: town
     for town in (
-        Town("Wexmarrow", -8_350, -3_500, 13, 9, 21, 112),
+        Town("Wexmarrow", -7_800, -3_330, 13, 9, 21, 112),
         Town("Tollanquay", 9_100, -2_550, 9, 7, -24, 108),
         Town("Brindlequoy", 2_450, -650, 7, 5, 14, 98),
         Town("Ulmeskar", 5_000, 900, 5, 3, 38, 92),
