@@ -24,12 +24,13 @@ Verdict = Literal["fits", "fails", "unknown"]
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Glass:
-    """Fibre of one section."""
+    """Fibre of one section; `cable` is set where that cable's own attenuation is known."""
 
     section: str
     fibre: int
     fibre_type: str
     glass_m: float
+    cable: str = ""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

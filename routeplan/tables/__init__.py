@@ -68,7 +68,7 @@ def load_rows(name: str, row_type: type[Row]) -> tuple[Row, ...]:
         row = _typed(name, where, row_type, shared | raw)
         if "confidence" in fields:
             _check_confidence(name, where, getattr(row, "confidence"))  # noqa: B009
-        key = tuple(raw[k] for k in getattr(row_type, "KEY", ("name",)) if k in raw)
+        key = tuple(getattr(row, k) for k in getattr(row_type, "KEY", ("name",)) if k in raw)
         if key and key in seen:
             raise TableError(_problem(name, where, "stands twice", repr(key)))
         seen.add(key)
