@@ -37,6 +37,7 @@ __all__ = [
 ]
 
 Forward = tuple[list[int | None], list[int]]  # key of each place (None: not reached), and from
+_Made = tuple[int, int, int, int]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -64,7 +65,8 @@ class Table:
     step: int
     pieces: int
     price: Callable[[int], int]
-    gap: Callable[[int], int]
+    rate: tuple[int, int]
+    reel_each: int
 
 
 class _Memo(dict[int, int]):
@@ -95,7 +97,8 @@ def make_table(problem: SpanProblem) -> Table:
         )
     ]
     gain[0] = gain[-1] = 0
-    rate, step = buying.cable_cents_per_m, buying.round_up_mm
+    step = buying.round_up_mm
+    piece = buying.cable_cents_per_m * step / 1000
     group = _groups(problem.leave_mm)
     return Table(
         arrive=problem.arrive_mm,
@@ -118,7 +121,8 @@ def make_table(problem: SpanProblem) -> Table:
         step=step * ratio.denominator,
         pieces=buying.made_max_mm // step,
         price=lambda pieces: reel_price_cents(buying, pieces * step) << shift,
-        gap=lambda pieces: pieces * step * rate.numerator // (1000 * rate.denominator) << shift,
+        rate=(piece.numerator, piece.denominator),
+        reel_each=buying.reel_each_cents,
     )
 
 
@@ -153,29 +157,34 @@ class Costs:
     """
     Prices and joint costs of one search, every price multiplied by `scale`.
 
-    `gap` is the least price difference between sections that differ by so many pieces.
+    `gap` is the least price difference between sections that differ by so many pieces. Times
+    the denominator of a piece's rate: `piece` is the price of one, `least` the least that a
+    section costs beside its pieces, and `band` how much rank makes up for any rounding.
     """
 
     put_ups: list[tuple[int, int]]
     price: _Memo
     gap: _Memo
     gain: list[int]
+    piece: int
+    least: int
+    band: int
 
 
 def make_costs(table: Table, *, scale: int = 1, gain: list[int] | None = None) -> Costs:
     """Return the costs of a search."""
-    if scale == 1:
-        return Costs(
-            put_ups=table.put_ups,
-            price=_Memo(table.price),
-            gap=_Memo(table.gap),
-            gain=table.gain if gain is None else gain,
-        )
+    cents, parts = table.rate
+    unit = scale << table.shift
     return Costs(
-        put_ups=[(most, price * scale) for most, price in table.put_ups],
+        put_ups=table.put_ups
+        if scale == 1
+        else [(most, price * scale) for most, price in table.put_ups],
         price=_Memo(lambda pieces: table.price(pieces) * scale),
-        gap=_Memo(lambda pieces: table.gap(pieces) * scale),
+        gap=_Memo(lambda pieces: pieces * cents // parts * unit),
         gain=table.gain if gain is None else gain,
+        piece=cents * unit,
+        least=(table.reel_each * parts - parts // 2) * unit,
+        band=(cents + parts - 1) * unit,
     )
 
 
@@ -186,13 +195,15 @@ class Front:
 
     For put-ups a later place that costs no more outdoes an earlier one, since prices never
     fall with length; for made pieces it may even cost more by what the shorter piece saves.
-    Made pieces keep (leave, place, key), `leave` multiplied so that pieces are whole steps.
+    Made pieces keep (rank, leave, place, key) in order of rank, `leave` multiplied so that a
+    step is a whole number. Rank is what a place costs less the cable up to it; the best start
+    has a rank within the price of one step of the lowest, so few are looked at.
     """
 
     table: Table
     costs: Costs
     stacks: list[tuple[list[int], list[int], list[int]]]
-    made: list[list[tuple[int, int, int]]]
+    made: list[list[_Made]]
 
 
 def make_front(table: Table, costs: Costs) -> Front:
@@ -218,12 +229,24 @@ def push(front: Front, place: int, key: int) -> None:
         places.append(place)
         keys.append(key)
     if front.made:
-        scaled, step, gap = leave * table.factor, table.step, front.costs.gap
-        old = front.made[group]
-        if old and old[0][0] < scaled - table.pieces * step:  # too far from every later place
-            del old[: bisect_left(old, (scaled - table.pieces * step,))]
-        old[:] = [item for item in old if item[2] < key - gap[(scaled - item[0]) // step]]
-        old.append((scaled, place, key))
+        _push_made(front, front.made[group], place, key)
+
+
+def _push_made(front: Front, made: list[_Made], place: int, key: int) -> None:
+    """Add a place to those made pieces may start from, and drop those it outdoes or left behind."""
+    table, gap = front.table, front.costs.gap
+    step, scaled = table.step, table.leave[place] * table.factor
+    rank = key * table.rate[1] - scaled // step * front.costs.piece
+    while made and made[0][1] < scaled - table.pieces * step:
+        del made[0]
+    at = bisect_left(made, (rank,))
+    kept = [(rank, scaled, place, key)]
+    for item in made[at:]:
+        if item[0] >= rank + front.costs.band:
+            break
+        if item[3] < key - gap[(scaled - item[1]) // step]:
+            kept.append(item)
+    made[at:] = kept
 
 
 def best_start(front: Front, end: int) -> tuple[int, int] | None:
@@ -238,32 +261,34 @@ def best_start(front: Front, end: int) -> tuple[int, int] | None:
                 best = (keys[at] + price, places[at])
             if at == first:  # a longer put-up reaches nothing more
                 break
-    reach = arrive * table.factor - table.pieces * table.step
     for made in front.made:
-        first = bisect_left(made, (reach,))
-        if limits:
-            starts = [table.leave[item[1]] for item in made]
-            first = max(first, _first_of(limits, starts, [i[1] for i in made], arrive, end))
-        best = _best_made(made[first:], front, arrive, best)
+        best = _best_made(made, front, end, best)
     return best
 
 
 def _best_made(
-    made: list[tuple[int, int, int]],
-    front: Front,
-    arrive: int,
-    best: tuple[int, int] | None,
+    made: list[_Made], front: Front, end: int, best: tuple[int, int] | None
 ) -> tuple[int, int] | None:
-    """Return the better of `best` and the least cost from the places of one group."""
-    price, step = front.costs.price, front.table.step
-    ahead = arrive * front.table.factor + step - 1  # so that the division rounds up
-    totals = [key + price[(ahead - leave) // step] for leave, _, key in made]
-    if not totals:
-        return best
-    least = min(totals)
-    if best is not None and best[0] <= least:
-        return best
-    return least, made[totals.index(least)][1]
+    """Return the better of `best` and the least key from the places of one group."""
+    table, price = front.table, front.costs.price
+    step, arrive = table.step, table.arrive[end] * table.factor
+    reach = arrive - table.pieces * step
+    floor = arrive // step * front.costs.piece + front.costs.least
+    for rank, scaled, place, key in made:
+        if scaled < reach or (table.limits and not _clears(table, place, end)):
+            continue
+        if best is not None and rank + floor >= best[0] * table.rate[1]:
+            break  # neither this nor any later one can be better
+        total = key + price[-((scaled - arrive) // step)]
+        if best is None or total < best[0]:
+            best = (total, place)
+    return best
+
+
+def _clears(table: Table, start: int, end: int) -> bool:
+    """Say whether a section keeps every placement limit."""
+    sheath = table.arrive[end] - table.leave[start]
+    return all(sheath <= most or start >= clear[end] for most, clear in table.limits)
 
 
 def _first_of(
@@ -313,7 +338,7 @@ def path_of(found: Forward) -> tuple[int, ...] | None:
 def section_price(table: Table, start: int, end: int) -> int | None:
     """Return the packed price of one section, None if it cannot be."""
     sheath = table.arrive[end] - table.leave[start]
-    if any(sheath > most and start < clear[end] for most, clear in table.limits):
+    if not _clears(table, start, end):
         return None
     prices = [price for most, price in table.put_ups if sheath <= most][:1]
     pieces = -(-sheath * table.factor // table.step)

@@ -278,7 +278,9 @@ def _layers(
         reached, before = _layer(table, costs, bound, sources, left=left, cutoff=cutoff)
         befores.append(before)
         key = reached.pop(end, None)
-        if key is not None and (left < 0 or not exact):
+        if key is None or (exact and left >= 0):
+            pass
+        elif cutoff is None or key <= cutoff:
             best = min(best or (key, used), (key, used))
         sources = reached
         if not sources:
