@@ -1,0 +1,48 @@
+"""Reading the document that `plan.json` holds, where every value is only known to be an object."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import TypeAlias
+
+__all__ = ["Row", "numbers", "row_at", "rows_at", "text_at", "value_at", "whole_at"]
+
+Row: TypeAlias = Mapping[str, object]
+
+_NOTHING: Row = {}
+
+
+def row_at(row: Row, key: str) -> Row:
+    """Return the mapping under `key`, empty if there is none."""
+    value = row.get(key)
+    return value if isinstance(value, Mapping) else _NOTHING
+
+
+def rows_at(row: Row, key: str) -> list[Row]:
+    """Return the mappings listed under `key`, none if there is no list."""
+    value = row.get(key)
+    return [each for each in value if isinstance(each, Mapping)] if isinstance(value, list) else []
+
+
+def text_at(row: Row, key: str) -> str:
+    """Return the text under `key`, empty if there is none."""
+    value = row.get(key)
+    return "" if value is None else str(value)
+
+
+def value_at(row: Row, key: str) -> float | None:
+    """Return the number under `key`, None if there is none."""
+    value = row.get(key)
+    if isinstance(value, bool) or not isinstance(value, int | float):
+        return None
+    return value
+
+
+def whole_at(row: Row, key: str) -> int:
+    """Return the whole number under `key`, 0 if there is none."""
+    return int(value_at(row, key) or 0)
+
+
+def numbers(value: object) -> list[float]:
+    """Return the numbers of a list, such as the longitude and latitude of a vertex."""
+    return [float(each) for each in value] if isinstance(value, list | tuple) else []
