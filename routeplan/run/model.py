@@ -97,7 +97,8 @@ class Line:
     `lonlat` is WGS 84 and what maps show. `datum_lonlat` holds the same vertices on the datum the
     file declares, with that datum's ellipsoid, and is what lengths are measured on; for a file in
     WGS 84 both are the same array. `heights_m` is None where the file gives no height, and holds
-    NaN at a vertex that has none.
+    NaN at a vertex that has none. `is_drawn`, where given, is False at vertices put in to keep a
+    long straight line of a grid straight: they are nobody's pole. An unnamed line has the name "".
     """
 
     name: str
@@ -112,6 +113,7 @@ class Line:
     existing_m: float | None = None
     existing_db: float | None = None
     is_track: bool = False
+    is_drawn: NDArray[np.bool_] | None = None
     properties: Mapping[str, object] = field(default_factory=dict)
     source: Source
 

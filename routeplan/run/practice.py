@@ -24,9 +24,14 @@ __all__ = [
     "MeasuredAttenuation",
     "Practice",
     "Reels",
+    "RunFile",
+    "RunHead",
     "Slack",
 ]
 
+AnyPlacement = Literal[
+    "aerial", "duct", "buried", "surface", "indoor", "bridge", "water", "existing"
+]
 OwnPlacement = Literal["aerial", "duct", "buried", "surface", "indoor", "bridge", "water"]
 
 
@@ -261,3 +266,50 @@ class CircuitOrder(_Model):
     wavelengths_nm: Annotated[
         tuple[WavelengthNm, ...], Strict(False), AfterValidator(_without_repeats)
     ] = Field(min_length=1, max_length=200, description="Wavelengths to be used. [nm]")
+
+
+class RunHead(_Model):
+    """The keys at the top of a run file."""
+
+    title: Annotated[str, Field(min_length=1, max_length=500)] | None = Field(
+        default=None, description="Title of every sheet; left out: the geometry file's name."
+    )
+    purpose: Literal["link", "venue"] = Field(
+        description="Chooses the set of defaults: link (permanent) or venue (temporary)."
+    )
+    geometry: Annotated[tuple[Annotated[str, Field(min_length=1)], ...], Strict(False)] | None = (
+        Field(
+            default=None,
+            min_length=1,
+            description="Vector files, beside the run file; file.gpkg|layer for one layer. "
+            "Left out: the only one in the run file's folder.",
+        )
+    )
+    crs: Name | None = Field(
+        default=None, description="CRS of files that do not say, and the grid to report in."
+    )
+    placement: AnyPlacement = Field(description="Placement of lines that do not say.")
+    units: Literal["metric", "us"] = Field(
+        description="What people see: metric or us; files keep SI."
+    )
+
+
+class RunFile(RunHead):
+    """A whole run file, defaults filled in."""
+
+    joining: Joining
+    cable: CableMake = Field(description="The default cable.")
+    cables: Mapping[Name, CableMake] = Field(
+        default_factory=dict, description="Other cables by name, over the default cable."
+    )
+    slack: Slack
+    reels: Reels
+    joints: Joints
+    costs: Costs
+    loss: Loss
+    interface: Mapping[Name, Interface] = Field(
+        default_factory=dict, description="Interfaces of one's own by name."
+    )
+    circuit: Annotated[tuple[CircuitOrder, ...], Strict(False)] = Field(
+        default=(), description="Circuits; none: one between the ends of the longest leg."
+    )

@@ -1,0 +1,119 @@
+"""Reading vector files of any kind into the lines, places and areas of a run."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from routeplan.errors import GeometryError, Problem
+from routeplan.run.attributes import area_from, line_from, place_from
+from routeplan.run.datum import placed_shapes
+from routeplan.run.geometry_checks import check_together
+from routeplan.run.geometry_geojson import layers_from_geojson
+from routeplan.run.model import Area, Line, Place
+from routeplan.run.shapes import Layer
+from routeplan.run.trouble import Trouble
+
+if TYPE_CHECKING:
+    from pyproj import CRS
+
+__all__ = ["Geometry", "file_bytes", "geometry_from_files"]
+
+_GEOJSON = (".geojson", ".json")
+
+
+@dataclass(slots=True)
+class Geometry:
+    """What vector files hold, and the bytes read, in order."""
+
+    lines: list[Line] = field(default_factory=list)
+    places: list[Place] = field(default_factory=list)
+    areas: list[Area] = field(default_factory=list)
+    contents: list[bytes] = field(default_factory=list)
+
+
+def geometry_from_files(
+    names: tuple[str, ...], folder: Path, *, run_crs: CRS | None, placement: str, trouble: Trouble
+) -> Geometry:
+    """
+    Read vector files; everything wrong with them is noted in `trouble`.
+
+    Parameters
+    ----------
+    names
+        File names as the run file has them; `file.gpkg|layer` for one layer.
+    folder
+        What relative names are relative to.
+    run_crs
+        The run file's `crs`, for files that do not say.
+    placement
+        The run's placement.
+    trouble
+        Where problems are noted.
+    """
+    geometry = Geometry()
+    before = len(trouble.problems)
+    for name in names:
+        for layer in _layers(name, folder, geometry, trouble):
+            _add_layer(geometry, layer, run_crs=run_crs, placement=placement, trouble=trouble)
+    check_together(geometry.lines, geometry.places, trouble=trouble)
+    if not geometry.lines and len(trouble.problems) == before:
+        problem = Problem(
+            where=", ".join(names),
+            what="holds no line",
+            remedy="Draw the way of the cable as at least one line.",
+        )
+        trouble.add(GeometryError, problem)
+    return geometry
+
+
+def file_bytes(path: Path, *, file: str, trouble: Trouble) -> bytes | None:
+    """Return the bytes of a file, or None with the problem noted."""
+    try:
+        content = path.read_bytes()
+    except FileNotFoundError:
+        folder = path.parent.name or "this folder"
+        _refuse(trouble, file, "is not there", remedy=f"It is looked for in {folder}.")
+    except IsADirectoryError:
+        _refuse(trouble, file, "is a folder, not a file")
+    except PermissionError:
+        _refuse(trouble, file, "may not be read by this user")
+    except (OSError, ValueError) as error:
+        reason = error.strerror if isinstance(error, OSError) else str(error)
+        _refuse(trouble, file, "cannot be read", value=reason or type(error).__name__)
+    else:
+        if content:
+            return content
+        _refuse(trouble, file, "is empty")
+    return None
+
+
+def _refuse(trouble: Trouble, file: str, what: str, *, value: str = "", remedy: str = "") -> None:
+    problem = Problem(where=file, what=what, value=value, remedy=remedy)
+    trouble.add(GeometryError, problem, file=file)
+
+
+def _layers(name: str, folder: Path, geometry: Geometry, trouble: Trouble) -> list[Layer]:
+    path = folder / name
+    content = file_bytes(path, file=name, trouble=trouble)
+    if content is None:
+        return []
+    geometry.contents.append(content)
+    return layers_from_geojson(content, file=name, trouble=trouble)
+
+
+def _add_layer(
+    geometry: Geometry, layer: Layer, *, run_crs: CRS | None, placement: str, trouble: Trouble
+) -> None:
+    for placed in placed_shapes(layer, run_crs=run_crs, trouble=trouble):
+        if placed.shape.kind == "line":
+            line = line_from(placed, loose=layer.loose, placement=placement, trouble=trouble)
+            geometry.lines.extend([line] if line else [])
+        elif placed.shape.kind == "point":
+            number = len(geometry.places) + 1
+            place = place_from(placed, number=number, loose=layer.loose, trouble=trouble)
+            geometry.places.append(place)
+        else:
+            area = area_from(placed, loose=layer.loose, trouble=trouble)
+            geometry.areas.extend([area] if area else [])

@@ -1,0 +1,134 @@
+"""Reading a whole run: a run file, the folder it is in, or a bare geometry file."""
+
+from __future__ import annotations
+
+import hashlib
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from routeplan.errors import CrsError, Problem, RunFileError
+from routeplan.run.crs import crs_or_none, unusable
+from routeplan.run.geometry import Geometry, file_bytes, geometry_from_files
+from routeplan.run.model import Run
+from routeplan.run.runfile import Declared, declared_from_text
+from routeplan.run.trouble import Trouble, shown
+
+if TYPE_CHECKING:
+    from pyproj import CRS
+
+__all__ = ["RUN_FILE", "read_run"]
+
+RUN_FILE = "run.toml"
+"""Name of the run file in a folder that is given as a run."""
+
+
+def read_run(path: str | Path) -> Run:
+    """
+    Read a run and every vector file it names, defaults filled in.
+
+    Parameters
+    ----------
+    path
+        A run file, a folder holding `run.toml`, or a bare geometry file (all defaults).
+
+    Raises
+    ------
+    InputError
+        With every problem found in the run file and the geometry: `RunFileError`,
+        `GeometryError` or `CrsError` if they are all of one kind.
+    """
+    trouble = Trouble()
+    run = _read(Path(path), trouble)
+    trouble.raise_if_any()
+    assert run is not None
+    return run
+
+
+def _read(path: Path, trouble: Trouble) -> Run | None:
+    if path.is_dir():
+        path = path / RUN_FILE
+        if not path.is_file():
+            _refuse(trouble, str(path.parent), f"is a folder without a {RUN_FILE}")
+            return None
+    is_bare = path.suffix.lower() != ".toml"
+    content: bytes | None = b""
+    if not is_bare:
+        content = file_bytes(path, file=path.name, trouble=trouble)
+    if content is None:
+        return None
+    declared = declared_from_text(content, file=path.name, trouble=trouble)
+    names = (path.name,) if is_bare else _geometry_names(declared, path, trouble)
+    head = declared.head
+    run_crs = _run_crs(head.crs if head else None, file=path.name, trouble=trouble)
+    geometry = geometry_from_files(
+        names,
+        path.parent,
+        run_crs=run_crs,
+        placement=head.placement if head else "duct",
+        trouble=trouble,
+    )
+    geometry.contents.insert(0, content)
+    return None if trouble.problems else _run(declared, geometry, names, trouble)
+
+
+def _refuse(trouble: Trouble, where: str, what: str, *, value: str = "", remedy: str = "") -> None:
+    trouble.add(RunFileError, Problem(where=where, what=what, value=value, remedy=remedy))
+
+
+def _geometry_names(declared: Declared, path: Path, trouble: Trouble) -> tuple[str, ...]:
+    if declared.head is None:
+        return ()
+    if declared.head.geometry is not None:
+        return declared.head.geometry
+    return ()
+
+
+def _run_crs(name: str | None, *, file: str, trouble: Trouble) -> CRS | None:
+    if name is None:
+        return None
+    crs = crs_or_none(name)
+    reason = unusable(crs) if crs else "is not a known CRS"
+    if reason:
+        problem = Problem(
+            where=f"{file}, crs",
+            what=reason,
+            value=shown(name),
+            remedy='Name it by code, for example crs = "EPSG:27700".',
+        )
+        trouble.add(CrsError, problem)
+        return None
+    return crs
+
+
+def _run(declared: Declared, geometry: Geometry, names: tuple[str, ...], trouble: Trouble) -> Run:
+    head = declared.head
+    assert head is not None and declared.cable is not None and declared.practice is not None
+    return Run(
+        title=head.title or _title(names),
+        purpose=head.purpose,
+        units=head.units,
+        crs=head.crs,
+        lines=tuple(geometry.lines),
+        places=tuple(geometry.places),
+        areas=tuple(geometry.areas),
+        placement=head.placement,
+        cable=declared.cable,
+        cables=declared.cables,
+        interfaces=declared.interfaces,
+        circuits=declared.circuits,
+        practice=declared.practice,
+        given=declared.given,
+        digest=_digest(geometry.contents),
+        warnings=trouble.closed_warnings(),
+    )
+
+
+def _title(names: tuple[str, ...]) -> str:
+    return Path(names[0].partition("|")[0]).name.partition(".")[0]
+
+
+def _digest(contents: list[bytes]) -> str:
+    digest = hashlib.sha256()
+    for content in contents:
+        digest.update(content)
+    return digest.hexdigest()
