@@ -176,4 +176,4 @@ def _between(wavelength_nm: float, bounds: tuple[DispersionBound, ...]) -> tuple
     share = (wavelength_nm - first.wavelength_nm) / (second.wavelength_nm - first.wavelength_nm)
     low = first.min_ps_per_nm_km + share * (second.min_ps_per_nm_km - first.min_ps_per_nm_km)
     high = first.max_ps_per_nm_km + share * (second.max_ps_per_nm_km - first.max_ps_per_nm_km)
-    return low, high
+    return min(low, high), max(low, high)
