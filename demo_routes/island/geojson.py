@@ -63,9 +63,9 @@ def _flat(xy: Floats) -> list[list[float]]:
 def _with_heights(xy: Floats, *, deck: bool = False) -> list[list[float]]:
     """Return coordinates with the height of the ground, or of a deck straight between its ends."""
     lonlat = _rounded(xy)
-    height = np.round(height_of_lonlat_m(lonlat), 1)
+    height: Floats = np.round(height_of_lonlat_m(lonlat), 1)
     if deck:
-        height = np.round(np.linspace(height[0], height[-1], len(height)), 1)
+        height = np.round(np.linspace(height[0], height[-1], len(height)), 1).astype(float)
     return [[*map(float, row), float(h)] for row, h in zip(lonlat, height, strict=True)]
 
 

@@ -3,18 +3,27 @@
 from __future__ import annotations
 
 from functools import cache
-from itertools import combinations
+from itertools import combinations, pairwise
 from typing import NamedTuple
 
 import numpy as np
 
-from island.frame import Floats
+from island.frame import Floats, random_stream
 from island.lines import along_m, cross_points, cut, nearest, point_at, resample, smooth
 from island.terrain import HILLS, height_m, river_xy
 from island.towns import TOWNS, Street, gate, town_streets
 from island.ways import lay_way
 
-__all__ = ["BRIDGES", "Bridge", "bridge_line", "mast_xy", "power_line", "railway", "road", "streets"]
+__all__ = [
+    "BRIDGES",
+    "Bridge",
+    "bridge_line",
+    "mast_xy",
+    "power_line",
+    "railway",
+    "road",
+    "streets",
+]
 
 _VERTEX_STEP_M = 52.0
 _APPROACH_M = 240.0
@@ -58,9 +67,9 @@ _ROADS = (
          "Lunnothfoot Bridge"),
     Road("Thrumble Road", "secondary", ("Lunnothfoot", "east"), ("Tollanquay", "south")),
     Road("North Shore Road", "secondary", ("Wexmarrow", "north"), ("Norrabrith", "west")),
-    Road("Owl Law Road", "tertiary", ("Norrabrith", "east"), ("Ulmeskar", "north")),
+    Road("Urlaw Road", "tertiary", ("Norrabrith", "east"), ("Ulmeskar", "north")),
     Road("Valley Road", "tertiary", ("Lunnothfoot", "north"), ("Brindlequoy", "south")),
-    Road("Eastgate Road", "tertiary", ("Ulmeskar", "south"), ("Tollanquay", "north")),
+    Road("East Moor Road", "tertiary", ("Ulmeskar", "south"), ("Tollanquay", "north")),
 )  # fmt: skip
 
 
@@ -70,7 +79,8 @@ def mast_xy() -> Floats:
     hill = HILLS[0]
     step = np.arange(-600.0, 601.0, 10.0)
     xy = np.stack(np.meshgrid(hill.x_m + step, hill.y_m + step), axis=-1).reshape(-1, 2)
-    return xy[int(np.argmax(np.round(height_m(xy), 1)))]
+    top: Floats = xy[int(np.argmax(np.round(height_m(xy), 1)))]
+    return top
 
 
 @cache
@@ -99,14 +109,29 @@ def _laid_roads() -> dict[str, tuple[Floats, ...]]:
         start, end = _place(plan.start), _place(plan.end)
         if not plan.bridge:
             way = lay_way(start, end, easy_slope=plan.easy_slope, keep_off=before)
-            laid[plan.name] = (resample(way, _VERTEX_STEP_M),)
+            laid[plan.name] = (_wandering(way, plan.name),)
             continue
         west, east = _square_to_river(BRIDGES[plan.bridge], _APPROACH_M)
         ends = bridge_line(plan.bridge)
         first = np.vstack([lay_way(start, west, keep_off=before), [ends[0]]])
         second = np.vstack([[ends[1]], lay_way(east, end, keep_off=before)])
-        laid[plan.name] = tuple(resample(smooth(part, 1), _VERTEX_STEP_M) for part in (first, second))
+        laid[plan.name] = tuple(_wandering(smooth(part, 1), plan.name) for part in (first, second))
     return laid
+
+
+def _wandering(way: Floats, name: str) -> Floats:
+    """Return a road with vertices at equal steps that sways a little, as no road is ruled."""
+    line = resample(way, _VERTEX_STEP_M)
+    chain = along_m(line)
+    random = random_stream(f"road {name}")
+    sway = np.zeros(len(line))
+    for size_m, length_m in ((7.0, 830.0), (4.0, 470.0), (1.5, 260.0)):
+        sway += size_m * np.sin(2 * np.pi * chain / length_m + random.uniform(0, 2 * np.pi))
+    sway *= np.clip(np.minimum(chain, chain[-1] - chain) / 250.0, 0.0, 1.0)
+    step = np.gradient(line, axis=0)
+    unit = step / np.hypot(*step.T)[:, None]
+    swayed: Floats = line + sway[:, None] * np.stack([-unit[:, 1], unit[:, 0]], axis=1)
+    return swayed
 
 
 def _place(named: tuple[str, str]) -> Floats:
@@ -161,12 +186,9 @@ def _with_corner(line: Floats, corner: Floats) -> tuple[Floats, Floats]:
 
 @cache
 def railway() -> Floats:
-    """Return the railway from Tollanquay quay up the valley to the stone pit at Stannet. [m]"""
+    """Return the railway from Tollanquay quay up the valley to the stone pit at Skelvane. [m]"""
     stops = [(8_700, -2_900), (3_900, -4_300), (2_100, -2_900), (1_420, -480), (1_250, 1_750)]
-    legs = [
-        lay_way(np.array(a), np.array(b), easy_slope=0.014)
-        for a, b in zip(stops[:-1], stops[1:], strict=True)
-    ]
+    legs = [lay_way(np.array(a), np.array(b), easy_slope=0.014) for a, b in pairwise(stops)]
     line = np.vstack([legs[0], *(leg[1:] for leg in legs[1:])])
     line = smooth(resample(line, 220.0), 3)
     return resample(cut(line, 0.0, float(along_m(line)[-1]) - 300.0), 60.0)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from itertools import pairwise
 
 import numpy as np
 
@@ -45,7 +46,7 @@ def cut(line: Floats, from_m: float, to_m: float) -> Floats:
 def densify(line: Floats, longest_m: float) -> Floats:
     """Divide segments longer than this into equal parts; keep every vertex."""
     parts = [line[:1]]
-    for a, b in zip(line[:-1], line[1:], strict=True):
+    for a, b in pairwise(line):
         count = max(1, int(np.ceil(np.hypot(*(b - a)) / longest_m)))
         steps = np.arange(1, count + 1)[:, None] / count
         parts.append(a + (b - a) * steps)
@@ -106,7 +107,8 @@ def set_aside(line: Floats, left_m: float) -> Floats:
     normal = np.stack([-unit[:, 1], unit[:, 0]], axis=1)
     before, after = np.vstack([normal[:1], normal]), np.vstack([normal, normal[-1:]])
     mitre = before + after
-    return line + left_m * 2 * mitre / np.sum(mitre**2, axis=1)[:, None]
+    aside: Floats = line + left_m * 2 * mitre / np.sum(mitre**2, axis=1)[:, None]
+    return aside
 
 
 def distance_to_line(points: Floats, line: Floats) -> Floats:
@@ -120,7 +122,7 @@ def nearest(points: Floats, line: Floats) -> tuple[Floats, Floats]:
     chain = along_m(line)
     best = np.full(len(points), np.inf)
     where = np.zeros(len(points))
-    for k, (a, b) in enumerate(zip(line[:-1], line[1:], strict=True)):
+    for k, (a, b) in enumerate(pairwise(line)):
         step = b - a
         t = np.clip((points - a) @ step / (step @ step), 0.0, 1.0)
         far = np.hypot(*(points - a - t[:, None] * step).T)
@@ -135,7 +137,7 @@ def cross_points(line: Floats, other: Floats) -> list[float]:
     chain = along_m(line)
     start, step = other[:-1], np.diff(other, axis=0)
     found = []
-    for k, (a, b) in enumerate(zip(line[:-1], line[1:], strict=True)):
+    for k, (a, b) in enumerate(pairwise(line)):
         d = b - a
         denominator = d[0] * step[:, 1] - d[1] * step[:, 0]
         parallel = np.abs(denominator) < 1e-9

@@ -46,8 +46,8 @@ def link_line() -> Floats:
     village, over = main_street("Brindlequoy"), bridge_line("Lunnoth Bridge")
     middle = node("Brindlequoy", 2, 3)
     to_bridge, from_bridge = road("Fell Road")
-    parts = [
-        [start, node("Wexmarrow", 2, 4), node("Wexmarrow", 3, 4)],
+    parts: list[Floats] = [
+        np.array([start, node("Wexmarrow", 2, 4), node("Wexmarrow", 3, 4)]),
         _after(town, corner),
         to_bridge,
         over,
@@ -67,7 +67,8 @@ def link_line() -> Floats:
 def _spread(line: Floats) -> Floats:
     """Leave out vertices that stand next to the one before."""
     apart = np.hypot(*np.diff(line, axis=0).T) > _SHORTEST_STEP_M
-    return line[np.concatenate([[True], apart])]
+    kept: Floats = line[np.concatenate([[True], apart])]
+    return kept
 
 
 def _index(line: Floats, corner: Floats) -> int:
@@ -165,13 +166,13 @@ def _chambers(line: Floats) -> list[tuple[float, LinkPoint]]:
         (town, (170, 280), ("maintenance_hole", "handhole", "handhole", "handhole")),
         (valley, (320, 480), ("handhole", "handhole", "pedestal")),
         (village, (170, 280), ("handhole", "maintenance_hole", "handhole")),
-        (verge, (320, 520), ("handhole", "pedestal", "handhole")),
-        (track, (430, 560), ("handhole",)),
+        (verge, (320, 480), ("handhole", "pedestal", "handhole")),
+        (track, (400, 480), ("handhole",)),
     ]
     places = [(cabinet_m, "cabinet", village)]
     for stretch, (least_m, most_m), kinds in spaced:
         at, turn = stretch.from_m + 15.0, 0
-        while at < stretch.to_m - 0.55 * least_m:
+        while at < stretch.to_m - 0.28 * least_m:
             clear = at + 40.0 if np.any(np.abs(crossings_m - at) < 30.0) else at
             if abs(clear - cabinet_m) > 60.0:
                 places.append((clear, kinds[turn % len(kinds)], stretch))
@@ -210,7 +211,7 @@ def _crossings(line: Floats) -> list[tuple[float, LinkPoint]]:
         if street.road_class in widths and not street.bridge
     ]
     wanted += [
-        ("Stannet railway", "rail", 9.0, railway()),
+        ("Skelvane railway", "rail", 9.0, railway()),
         ("Sarrel Beck", "water", 4.0, beck_xy()),
         ("Lunnothfoot power line", "power", 14.0, power_line()),
     ]

@@ -46,19 +46,19 @@ HILLS = (
     Hill("Quenmoor", 6_900, 3_300, 352, 1_750, 1_350, 35),
     Hill("Sarrel Fell", -4_300, 1_900, 250, 2_900, 1_300, 96),
     Hill("Sarrel Fell, south", -3_650, -4_700, 185, 2_100, 1_150, 98),
-    Hill("Owl Law", -300, 5_600, 245, 2_300, 1_500, 10),
+    Hill("Urlaw Head", -300, 5_600, 245, 2_300, 1_500, 10),
     Hill("Thrumble", 6_600, -3_600, 118, 1_700, 1_200, 150),
     Hill("Sarrel Gate", -3_950, -1_750, 26, 1_500, 1_250, 96),
     Hill("Grey Lathe", -7_900, 2_700, 95, 1_500, 1_900, 20),
-    Hill("Stannet Rig", 2_900, 3_400, 130, 2_000, 1_000, 60),
+    Hill("Skelvane Rig", 2_900, 3_400, 130, 2_000, 1_000, 60),
 )
 
 
 @cache
 def _shore_waves() -> tuple[Floats, Floats, Floats]:
     random = random_stream("coast")
-    order = np.arange(2, 46)
-    size = 0.23 * random.uniform(0.35, 1.0, len(order)) / order**1.04
+    order = np.arange(2.0, 46.0)
+    size: Floats = 0.23 * random.uniform(0.35, 1.0, len(order)) / order**1.04
     return order, size, random.uniform(0, 2 * np.pi, len(order))
 
 
@@ -66,7 +66,8 @@ def _shore_ratio(angle: Floats) -> Floats:
     """Return how far the coast lies out, as a share of the plain oval."""
     order, size, phase = _shore_waves()
     wave = size * np.cos(np.asarray(angle)[..., None] * order + phase)
-    return 1.0 + np.sum(wave, axis=-1)
+    out: Floats = 1.0 + np.sum(wave, axis=-1)
+    return out
 
 
 def inland_ratio(xy: Floats) -> Floats:
@@ -164,7 +165,9 @@ def height_m(xy: Floats) -> Floats:
     for hill in HILLS:
         relief = relief + _bell(xy, hill)
     land = rise * np.maximum(relief, 4.0)
-    return np.where(inland > 0, _with_valley(xy, land, inland), -70.0 * (1.0 - np.exp(7.0 * inland)))
+    return np.where(
+        inland > 0, _with_valley(xy, land, inland), -70.0 * (1.0 - np.exp(7.0 * inland))
+    )
 
 
 def _bell(xy: Floats, hill: Hill) -> Floats:
@@ -172,7 +175,9 @@ def _bell(xy: Floats, hill: Hill) -> Floats:
     east, north = xy[..., 0] - hill.x_m, xy[..., 1] - hill.y_m
     ahead = east * np.cos(turn) + north * np.sin(turn)
     aside = north * np.cos(turn) - east * np.sin(turn)
-    return hill.height_m * np.exp(-((ahead / hill.along_m) ** 2) - (aside / hill.across_m) ** 2)
+    spread = (ahead / hill.along_m) ** 2 + (aside / hill.across_m) ** 2
+    rise: Floats = hill.height_m * np.exp(-spread)
+    return rise
 
 
 def _with_valley(xy: Floats, land: Floats, inland: Floats) -> Floats:
@@ -205,5 +210,3 @@ def terrain_grid(west: float, north: float, step_deg: float, shape: tuple[int, i
     lon = west + (np.arange(columns) + 0.5) * step_deg
     lonlat = np.stack(np.meshgrid(lon, lat), axis=-1)
     return np.round(height_of_lonlat_m(lonlat), 1)
-
-

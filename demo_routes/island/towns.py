@@ -81,27 +81,31 @@ def node(name: str, row: int, column: int) -> Floats:
     if not there[row, column]:
         message = f"{name} has no corner in row {row}, column {column}"
         raise ValueError(message)
-    return xy[row, column]
+    corner: Floats = xy[row, column]
+    return corner
 
 
 def gate(name: str, side: str) -> Floats:
     """Return the last corner of a town's main streets to the east, west, north or south."""
     line = main_street(name) if side in {"east", "west"} else lane(name)
-    return line[-1] if side in {"east", "north"} else line[0]
+    end: Floats = line[-1] if side in {"east", "north"} else line[0]
+    return end
 
 
 def main_street(name: str) -> Floats:
     """Return a town's middle street from west to east."""
     xy, there = _corners(name)
     row = TOWNS[name].rows // 2
-    return xy[row][there[row]]
+    line: Floats = xy[row][there[row]]
+    return line
 
 
 def lane(name: str, column: int | None = None) -> Floats:
     """Return one of a town's streets from south to north, the middle one if not named."""
     xy, there = _corners(name)
     column = TOWNS[name].columns // 2 if column is None else column
-    return xy[:, column][there[:, column]]
+    line: Floats = xy[:, column][there[:, column]]
+    return line
 
 
 def town_streets(name: str) -> list[Street]:
