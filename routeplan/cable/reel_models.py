@@ -249,7 +249,7 @@ def _faults(problem: SpanProblem) -> list[str]:
     rates = min(problem.ordering_ratio, buying.cable_cents_per_m)
     lengths = min(buying.reel_each_cents, buying.made_max_mm, *buying.put_ups_mm)
     columns = (problem.joint_cost_cents, problem.tie_key, problem.joint_weight or (0,))
-    negative = min(rates, lengths, *map(min, columns))
+    negative = min(rates, lengths, *(min(column) for column in columns))
     checks = (
         (negative >= 0, f"a ratio, length, price, tie or weight of {negative} is negative"),
         (buying.round_up_mm > 0, f"pieces in steps of {buying.round_up_mm} mm"),

@@ -32,7 +32,6 @@ from routeplan.cable.reel_paths import (
 __all__ = ["cheapest_layout", "one_joint_fewer"]
 
 
-
 def cheapest_layout(problem: SpanProblem, *, work_most: int | None = None) -> SpanLayout | None:
     """
     Return the cheapest joints and reels of a span, or None if no layout keeps the limits.

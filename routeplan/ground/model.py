@@ -55,6 +55,8 @@ class Leg:
     One continuous way on the ground between two nodes.
 
     `lonlat` (n, 2), `heights_m` (n,) or None, `ground_mm` (n,) whole millimetres from the start.
+    `shape_lonlat` (m, 2) and `shape_mm` (m,) hold the same way with long steps densified and the
+    longitude unwrapped: between their points longitude and latitude may be interpolated.
     `grid_m` and `ellipsoid_m` are lengths of the whole leg; `drawn_ellipsoid_m` is the length
     before a track was thinned. `points` are in station order.
     """
@@ -66,6 +68,8 @@ class Leg:
     lonlat: Floats
     heights_m: Floats | None
     ground_mm: Millimetres
+    shape_lonlat: Floats
+    shape_mm: Floats
     grid_m: float
     grid_crs: str
     ellipsoid_m: float

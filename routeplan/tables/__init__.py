@@ -19,7 +19,7 @@ from typing import Any, TypeVar
 
 from routeplan.errors import Problem, TableError
 
-__all__ = ["CONFIDENCES", "Meta", "load_meta", "load_rows", "table_names"]
+__all__ = ["CONFIDENCES", "Meta", "load_meta", "load_rows", "raw_rows", "table_names"]
 
 CONFIDENCES = ("read", "from memory", "common practice", "house rule", "invented")
 
@@ -47,6 +47,11 @@ def load_meta(name: str) -> Meta:
     meta = _typed(name, "meta", Meta, _raw(name).get("meta", {}))
     _check_confidence(name, "meta", meta.confidence)
     return meta
+
+
+def raw_rows(name: str) -> tuple[dict[str, object], ...]:
+    """Return the rows of table `name` as they stand in its file, for showing."""
+    return tuple(_raw(name).get("row", []))
 
 
 @cache

@@ -1,0 +1,193 @@
+"""Spare cable: loops, risers, racking and crossings, each a step of the sheath at one chain."""
+
+from __future__ import annotations
+
+from collections import defaultdict
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+
+from routeplan.cable.way import Spot, Way
+from routeplan.ground.model import Stretch
+from routeplan.run.practice import Slack
+from routeplan.units import mm_from_m
+
+__all__ = ["Step", "slack_steps"]
+
+_LOOP_CROSSES = frozenset({"rail", "water"})
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Step:
+    """Spare cable at one chain value."""
+
+    chain_mm: int
+    sheath_mm: int
+    kind: str
+    name: str
+
+
+def slack_steps(way: Way, *, slack: Slack) -> tuple[tuple[Step, ...], tuple[tuple[str, str], ...]]:
+    """
+    Return every step of spare cable along a way, and warnings of gaps no loop can break.
+
+    Loops are the fewest that keep `loop_every_m` along each run of one placement, at reach
+    points; among the fewest, those that break the run most evenly (least sum of squared gaps).
+    Exact, by dynamic programming over the reach points: O(n w), w of them within one spacing.
+
+    Parameters
+    ----------
+    way
+        The cable's way.
+    slack
+        House rules.
+    """
+    loops, warnings = _loops(way, slack)
+    steps = [*loops, *_risers(way, slack), *_racking(way, slack), *_crossing_loops(way, slack)]
+    return tuple(sorted(steps, key=lambda step: (step.chain_mm, step.kind))), tuple(warnings)
+
+
+def _loops(way: Way, slack: Slack) -> tuple[list[Step], list[tuple[str, str]]]:
+    wanted: dict[int, float] = defaultdict(float)
+    names: dict[int, str] = {}
+    for spot in way.spots:
+        if spot.loop_m:
+            wanted[spot.chain_mm] = max(wanted[spot.chain_mm], spot.loop_m)
+            names[spot.chain_mm] = spot.name
+    declared = set(wanted)
+    warnings: list[tuple[str, str]] = []
+    for stretch in way.stretches:
+        if stretch.placement == "existing" or stretch.placement not in slack.loop_every_m:
+            continue
+        every_mm = mm_from_m(slack.loop_every_m[stretch.placement])
+        size_m = slack.loop_m.get(stretch.placement, 0.0)
+        inside = _loop_spots(way.spots, stretch)
+        fixed = {at for at in declared if stretch.start_mm <= at <= stretch.end_mm}
+        chosen, longest_mm = _fewest(stretch, inside, fixed=fixed, every_mm=every_mm)
+        for spot in chosen:
+            wanted[spot.chain_mm] = max(wanted[spot.chain_mm], size_m)
+            names[spot.chain_mm] = spot.name
+        if longest_mm > every_mm:
+            warnings.append((_where(way, stretch), _gap_text(stretch, longest_mm, every_mm)))
+    loops = [
+        Step(chain_mm=at, sheath_mm=mm_from_m(size), kind="loop", name=names[at])
+        for at, size in sorted(wanted.items())
+        if size > 0
+    ]
+    return loops, warnings
+
+
+def _loop_spots(spots: Sequence[Spot], stretch: Stretch) -> list[Spot]:
+    """Return one spot for each chain value of the stretch where a loop may be added."""
+    found: dict[int, Spot] = {}
+    for spot in spots:
+        inside = stretch.start_mm <= spot.chain_mm <= stretch.end_mm
+        if inside and spot.loop_m is None and spot.kind != "assumed":
+            found.setdefault(spot.chain_mm, spot)
+    return [found[at] for at in sorted(found)]
+
+
+def _fewest(
+    stretch: Stretch, spots: Sequence[Spot], *, fixed: set[int], every_mm: int
+) -> tuple[list[Spot], int]:
+    """Return the spots to add a loop at, and the longest gap left between loops."""
+    chosen: list[Spot] = []
+    longest_mm = 0
+    bounds = sorted({stretch.start_mm, *fixed, stretch.end_mm})
+    for begin, end in zip(bounds, bounds[1:], strict=False):
+        between = [spot for spot in spots if begin <= spot.chain_mm <= end]
+        added, gap_mm = _fewest_between(begin, end, between, every_mm=every_mm)
+        chosen.extend(added)
+        longest_mm = max(longest_mm, gap_mm)
+    return chosen, longest_mm
+
+
+def _fewest_between(
+    begin: int, end: int, spots: Sequence[Spot], *, every_mm: int
+) -> tuple[list[Spot], int]:
+    """
+    Return the best loops between two fixed points, and the longest gap.
+
+    Best is least total excess of gaps over the spacing, then fewest loops, then least sum of
+    squared gaps, then least sum of the spots' own keys.
+    """
+    if end - begin <= every_mm:
+        return [], end - begin
+    at = [begin, *(spot.chain_mm for spot in spots), end]
+    keys = [0, *(spot.tie_key for spot in spots), 0]
+    best: list[tuple[int, int, int, int]] = [(0, 0, 0, 0)]
+    came: list[int] = [-1]
+    for j in range(1, len(at)):
+        options = []
+        for i in range(j - 1, -1, -1):
+            gap = at[j] - at[i]
+            excess, count, squares, key = best[i]
+            over = max(0, gap - every_mm)
+            options.append(
+                (excess + over, count + 1, squares + gap * gap, key + keys[j], i)
+            )
+            if over and options[0][0] <= over:
+                break
+        *score, i = min(options)
+        best.append((score[0], score[1], score[2], score[3]))
+        came.append(i)
+    path = [len(at) - 1]
+    while came[path[-1]] >= 0:
+        path.append(came[path[-1]])
+    path.reverse()
+    longest = max(at[b] - at[a] for a, b in zip(path, path[1:], strict=False))
+    return [spots[i - 1] for i in path[1:-1]], longest
+
+
+def _where(way: Way, stretch: Stretch) -> str:
+    return (
+        f'cable "{way.cable.name}", {stretch.placement} from {stretch.start_mm / 1000:.0f} m '
+        f"to {stretch.end_mm / 1000:.0f} m"
+    )
+
+
+def _gap_text(stretch: Stretch, longest_mm: int, every_mm: int) -> str:
+    return (
+        f"{longest_mm / 1000:.0f} m without a reach point to hold a loop, more than "
+        f"loop_every_m = {every_mm / 1000:g}. Draw its reach points, or set "
+        f"slack.loop_every_m for {stretch.placement}"
+    )
+
+
+def _risers(way: Way, slack: Slack) -> Iterator[Step]:
+    for before, after in zip(way.stretches, way.stretches[1:], strict=False):
+        kinds = (before.placement, after.placement)
+        if "existing" not in kinds and (kinds[0] == "aerial") != (kinds[1] == "aerial"):
+            yield from _step(after.start_mm, slack.riser_m, "riser", " to ".join(kinds))
+
+
+def _racking(way: Way, slack: Slack) -> Iterator[Step]:
+    for spot in way.spots:
+        inner = 0 < spot.chain_mm < way.length_mm
+        if spot.kind == "maintenance_hole" and inner and not _is_existing(way, spot.chain_mm):
+            yield from _step(spot.chain_mm, slack.racking_m, "racking", spot.name)
+
+
+def _is_existing(way: Way, chain_mm: int) -> bool:
+    return any(
+        s.placement == "existing" and s.start_mm < chain_mm < s.end_mm for s in way.stretches
+    )
+
+
+def _crossing_loops(way: Way, slack: Slack) -> Iterator[Step]:
+    """Yield a loop on each side of every bridge, and of every rail or water crossing off one."""
+    bridges = [s for s in way.stretches if s.placement == "bridge"]
+    for bridge in bridges:
+        for at in (bridge.start_mm, bridge.end_mm):
+            yield from _step(at, slack.crossing_loop_m, "loop", "bridge")
+    for crossing in way.crossings:
+        middle = (crossing.start_mm + crossing.end_mm) // 2
+        on_bridge = any(b.start_mm <= middle <= b.end_mm for b in bridges)
+        if crossing.crosses in _LOOP_CROSSES and not on_bridge and not _is_existing(way, middle):
+            for at in (crossing.start_mm, crossing.end_mm):
+                inside = min(max(at, 0), way.length_mm)
+                yield from _step(inside, slack.crossing_loop_m, "loop", crossing.name)
+
+
+def _step(chain_mm: int, length_m: float, kind: str, name: str) -> Iterator[Step]:
+    if length_m > 0:
+        yield Step(chain_mm=chain_mm, sheath_mm=mm_from_m(length_m), kind=kind, name=name)

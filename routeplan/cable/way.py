@@ -1,0 +1,276 @@
+"""What lies along one cable: stretches, crossings and every spot a joint or a loop could be at."""
+
+from __future__ import annotations
+
+import zlib
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from routeplan.cable.model import Cable, Millimetres
+from routeplan.ground.legs import position_at
+from routeplan.ground.model import Leg, Stretch
+from routeplan.run.model import Floats, JointFitness, Place
+from routeplan.run.practice import Practice
+
+__all__ = ["ChainCrossing", "Spot", "Way", "cable_way", "leg_at", "positions_on"]
+
+_NO_ASSUMED = frozenset({"bridge", "water", "indoor", "existing"})
+_NO_JOINT = frozenset({"bridge", "water", "existing"})
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Spot:
+    """A place on a cable's chain where the cable can be got at, declared or assumed."""
+
+    chain_mm: int
+    kind: str
+    name: str
+    fitness: JointFitness
+    cost_factor: float
+    loop_m: float | None
+    assumed: bool
+    tie_key: int
+    place: Place | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ChainCrossing:
+    """Something the cable crosses, from edge to edge."""
+
+    crosses: str
+    name: str
+    start_mm: int
+    end_mm: int
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Way:
+    """
+    One cable's chain: its stretches end to end, its crossings, its spots in chain order.
+
+    `is_turned` says that the chain runs against the direction in which halves are rounded, so
+    that a reversed run gets mirrored millimetres.
+    """
+
+    cable: Cable
+    legs: tuple[tuple[Leg, bool, int], ...]
+    stretches: tuple[Stretch, ...]
+    crossings: tuple[ChainCrossing, ...]
+    spots: tuple[Spot, ...]
+    length_mm: int
+    is_turned: bool
+
+
+def cable_way(cable: Cable, legs: Sequence[tuple[Leg, bool]], *, practice: Practice) -> Way:
+    """
+    Return the chain of a cable with declared and assumed spots.
+
+    Parameters
+    ----------
+    cable
+        The cable.
+    legs
+        Its legs in order, each with whether it is taken forward.
+    practice
+        House rules; `joints.assumed_spacing_m` spaces assumed spots.
+    """
+    placed: list[tuple[Leg, bool, int]] = []
+    offset = 0
+    for leg, forward in legs:
+        placed.append((leg, forward, offset))
+        offset += leg.length_mm
+    first = _end_of(placed[0], at_start=True)
+    last = _end_of(placed[-1], at_start=False)
+    way = Way(
+        cable=cable,
+        legs=tuple(placed),
+        stretches=_joined_stretches(placed),
+        crossings=tuple(sorted(_crossings(placed), key=lambda c: (c.start_mm, c.end_mm, c.name))),
+        spots=tuple(spot for leg in placed for spot in _declared_spots(leg)),
+        length_mm=offset,
+        is_turned=first > last,
+    )
+    way = replace(way, spots=tuple(_unfit_where_forbidden(way)))
+    way = replace(way, spots=_merged(way.spots, _assumed_poles(way)))
+    spacing_mm = round(practice.joints.assumed_spacing_m * 1000)
+    return replace(way, spots=_merged(way.spots, _assumed_spots(way, spacing_mm)))
+
+
+def _end_of(placed: tuple[Leg, bool, int], *, at_start: bool) -> list[float]:
+    leg, forward, _ = placed
+    end: list[float] = leg.lonlat[0 if at_start == forward else -1].tolist()
+    return end
+
+
+def _chain(placed: tuple[Leg, bool, int], ground_mm: int) -> int:
+    leg, forward, offset = placed
+    return offset + (ground_mm if forward else leg.length_mm - ground_mm)
+
+
+def _joined_stretches(placed: Sequence[tuple[Leg, bool, int]]) -> tuple[Stretch, ...]:
+    stretches: list[Stretch] = []
+    for item in placed:
+        leg, forward, _ = item
+        for stretch in leg.stretches if forward else reversed(leg.stretches):
+            span = sorted((_chain(item, stretch.start_mm), _chain(item, stretch.end_mm)))
+            last = stretches[-1] if stretches else None
+            if last and last.placement == stretch.placement != "existing":
+                stretches[-1] = replace(last, end_mm=span[1])
+            else:
+                stretches.append(replace(stretch, start_mm=span[0], end_mm=span[1]))
+    return tuple(stretches)
+
+
+def _crossings(placed: Sequence[tuple[Leg, bool, int]]) -> Iterator[ChainCrossing]:
+    for item in placed:
+        for point in item[0].points:
+            if point.place.kind == "crossing":
+                at = _chain(item, point.ground_mm)
+                half = round((point.place.width_m or 0.0) * 500)
+                yield ChainCrossing(
+                    crosses=point.place.crosses or "road",
+                    name=point.place.name,
+                    start_mm=at - half,
+                    end_mm=at + half,
+                )
+
+
+def _declared_spots(item: tuple[Leg, bool, int]) -> Iterator[Spot]:
+    leg, forward, _ = item
+    for point in leg.points if forward else reversed(leg.points):
+        place = point.place
+        if place.kind != "crossing":
+            yield Spot(
+                chain_mm=_chain(item, point.ground_mm),
+                kind=place.kind,
+                name=place.name,
+                fitness=place.joint,
+                cost_factor=place.joint_cost_factor,
+                loop_m=place.loop_m,
+                assumed=False,
+                tie_key=_tie_key(place.lon, place.lat, place.name),
+                place=place,
+            )
+
+
+def _tie_key(lon: float, lat: float, name: str) -> int:
+    """Return a number that is a spot's own, whichever way the run is drawn."""
+    return zlib.crc32(f"{lon:.9f} {lat:.9f} {name}".encode())
+
+
+def _unfit_where_forbidden(way: Way) -> Iterator[Spot]:
+    """Yield the spots; none on a bridge, in water, on an existing span or a crossing is fit."""
+    for spot in way.spots:
+        banned = spot.fitness != "no" and _is_forbidden(way, spot.chain_mm, _NO_JOINT)
+        yield replace(spot, fitness="no") if banned else spot
+
+
+def _is_forbidden(way: Way, chain_mm: int, placements: frozenset[str]) -> bool:
+    return any(
+        s.start_mm < chain_mm < s.end_mm and s.placement in placements for s in way.stretches
+    ) or any(c.start_mm <= chain_mm <= c.end_mm for c in way.crossings)
+
+
+def _merged(spots: Sequence[Spot], more: Sequence[Spot]) -> tuple[Spot, ...]:
+    if not more:
+        return tuple(spots)
+    return tuple(sorted([*spots, *more], key=lambda spot: spot.chain_mm))
+
+
+def _assumed_poles(way: Way) -> list[Spot]:
+    """Return the vertices of every aerial stretch without poles as poles."""
+    found: list[Spot] = []
+    for stretch in way.stretches:
+        inside = [s for s in way.spots if stretch.start_mm <= s.chain_mm <= stretch.end_mm]
+        if stretch.placement != "aerial" or any(spot.kind == "pole" for spot in inside):
+            continue
+        taken = {spot.chain_mm for spot in inside} | {0, way.length_mm}
+        vertices = _vertices_mm(way)
+        within = (vertices >= stretch.start_mm) & (vertices <= stretch.end_mm)
+        chains = [at for at in np.unique(vertices[within]).tolist() if at not in taken]
+        found.extend(_assumed(way, chains, "pole"))
+    return found
+
+
+def _vertices_mm(way: Way) -> Millimetres:
+    chains = [
+        offset + (leg.ground_mm if forward else leg.length_mm - leg.ground_mm)
+        for leg, forward, offset in way.legs
+    ]
+    return np.concatenate(chains)
+
+
+def _assumed_spots(way: Way, spacing_mm: int) -> list[Spot]:
+    """Return spots that divide every gap longer than the spacing into the fewest equal parts."""
+    fit = [0, *(spot.chain_mm for spot in way.spots if spot.fitness != "no"), way.length_mm]
+    chains: list[int] = []
+    for begin, end in zip(fit, fit[1:], strict=False):
+        parts = -(-(end - begin) // spacing_mm)
+        chains.extend(_shared_out(begin, end, parts, is_turned=way.is_turned))
+    allowed = [at for at in chains if not _is_forbidden(way, at, _NO_ASSUMED)]
+    aerial = [s for s in way.stretches if s.placement == "aerial"]
+    on_poles = [at for at in allowed if any(s.start_mm <= at <= s.end_mm for s in aerial)]
+    return [
+        *_assumed(way, sorted(set(allowed) - set(on_poles)), "assumed"),
+        *_assumed(way, on_poles, "pole"),
+    ]
+
+
+def _shared_out(begin: int, end: int, parts: int, *, is_turned: bool) -> list[int]:
+    """Return the inner bounds of equal parts, halves rounded the same way from either end."""
+    gap = end - begin
+    if is_turned:
+        return [end - (2 * k * gap + parts) // (2 * parts) for k in range(parts - 1, 0, -1)]
+    return [begin + (2 * k * gap + parts) // (2 * parts) for k in range(1, parts)]
+
+
+def _assumed(way: Way, chains: Sequence[int], kind: str) -> list[Spot]:
+    if not chains:
+        return []
+    lonlat, _ = positions_on(way, np.array(chains))
+    label = "Assumed pole" if kind == "pole" else "Assumed place"
+    return [
+        Spot(
+            chain_mm=at,
+            kind=kind,
+            name=f"{label} at {at / 1000:.0f} m",
+            fitness="avoid" if kind == "pole" else "yes",
+            cost_factor=1.0,
+            loop_m=None,
+            assumed=True,
+            tie_key=_tie_key(lon, lat, kind),
+        )
+        for at, (lon, lat) in zip(chains, np.round(lonlat, 7).tolist(), strict=True)
+    ]
+
+
+def leg_at(way: Way, chain_mm: int) -> tuple[Leg, int]:
+    """Return the leg that a chain value lies on and the ground station there. [mm]"""
+    for leg, forward, offset in way.legs:
+        if chain_mm <= offset + leg.length_mm:
+            along = chain_mm - offset
+            return leg, along if forward else leg.length_mm - along
+    leg, forward, _ = way.legs[-1]
+    return leg, leg.length_mm if forward else 0
+
+
+def positions_on(way: Way, chain_mm: Millimetres) -> tuple[Floats, Floats]:
+    """
+    Return longitude and latitude, shape (n, 2), and height, shape (n,), of chain values.
+
+    Parameters
+    ----------
+    way
+        The cable's way.
+    chain_mm
+        Chain values, shape (n,). [mm]
+    """
+    lonlat = np.empty((len(chain_mm), 2))
+    heights = np.empty(len(chain_mm))
+    for leg, forward, offset in way.legs:
+        on = (chain_mm >= offset) & (chain_mm <= offset + leg.length_mm)
+        along = chain_mm[on] - offset
+        lonlat[on], heights[on] = position_at(leg, along if forward else leg.length_mm - along)
+    return lonlat, heights

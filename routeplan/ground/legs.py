@@ -1,0 +1,357 @@
+"""Legs, nodes and placed points, from a joined network."""
+
+from __future__ import annotations
+
+import string
+from collections import Counter
+from collections.abc import Iterator, Sequence
+from dataclasses import replace
+
+import numpy as np
+
+from routeplan import geodesy
+from routeplan.errors import CrsError, GeometryError, Problem
+from routeplan.ground.drawn import Drawn, draw_line, joined_drawn, shape_of
+from routeplan.ground.joining import Network, Piece, chains, join_lines
+from routeplan.ground.locate import index_lines, near_lines, nearest_m
+from routeplan.ground.model import Crossing, Ground, Leg, Millimetres, Node, PlacedPoint, Stretch
+from routeplan.run.model import Floats, Place, Run
+
+__all__ = ["lay_ground", "position_at"]
+
+_STEEP_RATIO = 0.01  # house rule: more than this from slope alone looks like noise in the heights
+
+
+def lay_ground(run: Run) -> Ground:
+    """
+    Return the nodes and legs of a run, every declared point on them with its ground station.
+
+    Parameters
+    ----------
+    run
+        The run as read.
+
+    Raises
+    ------
+    GeometryError
+        If a site or reach point is far from every line, or names of legs clash.
+    CrsError
+        If the run's grid does not reach a leg.
+
+    References
+    ----------
+    .. [1] Lengths: `routeplan.geodesy`; joining: `routeplan.ground.joining`.
+    """
+    joining = run.practice.joining
+    drawn = [draw_line(line, track_tolerance_m=joining.track_tolerance_m) for line in run.lines]
+    sites = [place for place in run.places if place.kind == "site"]
+    network = join_lines(drawn, sites, joining=joining)
+    groups = chains(network)
+    nodes, numbers = _nodes(network, groups)
+    names = _leg_names(groups, [nodes[numbers[g[0].start]].name for g in groups],
+                       [nodes[numbers[g[-1].end]].name for g in groups])  # fmt: skip
+    legs = [
+        _leg(run, f"L{at}", name, pieces=group, ends=(nodes[numbers[group[0].start]].id,
+             nodes[numbers[group[-1].end]].id))  # fmt: skip
+        for at, (name, group) in enumerate(zip(names, groups, strict=True), start=1)
+    ]
+    points = [place for place in run.places if place.kind != "site"]
+    legs, nodes, crossings, problems = _place_points(run, legs, nodes, points)
+    problems = [*network.problems, *_name_problems(groups, names), *problems]
+    if problems:
+        raise GeometryError(problems)
+    warnings = (*network.warnings, *_leg_warnings(groups, names))
+    return Ground(
+        nodes=tuple(nodes), legs=tuple(legs), crossings=tuple(crossings), warnings=warnings
+    )
+
+
+def _nodes(network: Network, groups: Sequence[Sequence[Piece]]) -> tuple[list[Node], dict[int, int]]:
+    """Return the nodes in run order, and for each junction the place of its node in the list."""
+    degree = Counter(j for group in groups for j in (group[0].start, group[-1].end))
+    taken = {place.name for place in network.sites.values()}
+    letters = _free_letters(taken)
+    numbers: dict[int, int] = {}
+    nodes: list[Node] = []
+    for junction in (j for group in groups for j in (group[0].start, group[-1].end)):
+        if junction in numbers:
+            continue
+        numbers[junction] = len(nodes)
+        place = network.sites.get(junction)
+        assumed = place is None and degree[junction] == 1
+        name = place.name if place else next(letters) if assumed else f"Node {len(nodes) + 1}"
+        lon, lat = network.junctions[junction]
+        nodes.append(
+            Node(
+                id=f"N{len(nodes) + 1}",
+                name=name,
+                role=place.role if place else None,
+                is_site=place is not None or assumed,
+                lon=float(geodesy.wrapped(np.array([lon]))[0]),
+                lat=float(lat),
+                place=place,
+                assumed=assumed,
+            )
+        )
+    return nodes, numbers
+
+
+def _free_letters(taken: set[str]) -> Iterator[str]:
+    """Yield A, B, ... Z, A2, B2, ... less the names that are taken."""
+    count = 1
+    while True:
+        for letter in string.ascii_uppercase:
+            name = letter if count == 1 else f"{letter}{count}"
+            if name not in taken:
+                yield name
+        count += 1
+
+
+def _leg_names(
+    groups: Sequence[Sequence[Piece]], starts: Sequence[str], ends: Sequence[str]
+) -> list[str]:
+    """Return each leg's declared name, else its lines' common name, else "start - end"."""
+    names = []
+    for group, start, end in zip(groups, starts, ends, strict=True):
+        declared = group[0].drawn.line.leg
+        common = {piece.drawn.line.name for piece in group}
+        name = declared or (common.pop() if len(common) == 1 else "") or f"{start} - {end}"
+        names.append(name)
+    counts = Counter(names)
+    seen: Counter[str] = Counter()
+    for at, name in enumerate(names):
+        if counts[name] > 1 and not groups[at][0].drawn.line.leg:
+            seen[name] += 1
+            names[at] = f"{name} ({seen[name]})"
+    return names
+
+
+def _name_problems(groups: Sequence[Sequence[Piece]], names: Sequence[str]) -> list[Problem]:
+    problems = []
+    for name, count in Counter(names).items():
+        if count > 1:
+            line = next(g for g, n in zip(groups, names, strict=True) if n == name)[0].drawn.line
+            problems.append(
+                Problem(
+                    where=str(line.source),
+                    what=f'leg "{name}" is in {count} parts that do not run end to end',
+                    remedy="Close the gap between its lines, or give each part its own leg name",
+                )
+            )
+    return problems
+
+
+def _leg(run: Run, leg_id: str, name: str, *, pieces: Sequence[Piece], ends: tuple[str, str]) -> Leg:
+    whole = joined_drawn([piece.drawn for piece in pieces])
+    ground_mm = _whole_millimetres(whole)
+    shape, shape_index = shape_of(whole)
+    lonlat = np.column_stack([geodesy.wrapped(whole.lonlat[:, 0]), whole.lonlat[:, 1]])
+    grid_m, grid_crs = _grid(run, name, lonlat, shape)
+    return Leg(
+        id=leg_id,
+        name=name,
+        start=ends[0],
+        end=ends[1],
+        lonlat=lonlat,
+        heights_m=whole.heights_m,
+        ground_mm=ground_mm,
+        shape_lonlat=shape,
+        shape_mm=np.interp(shape_index, np.arange(len(ground_mm)), ground_mm),
+        grid_m=grid_m,
+        grid_crs=grid_crs,
+        ellipsoid_m=float(whole.ellipsoid_steps_m.sum()),
+        drawn_ellipsoid_m=whole.drawn_m,
+        stretches=_stretches(run, pieces, ground_mm),
+        points=(),
+        cable=pieces[0].drawn.line.cable,
+    )
+
+
+def _whole_millimetres(drawn: Drawn) -> Millimetres:
+    """
+    Return the ground station of every vertex.
+
+    The running sum is rounded from the end whose coordinates come first, so that a line drawn
+    the other way gets the mirrored stations to the millimetre.
+    """
+    steps = drawn.ground_steps_m
+    first, last = drawn.lonlat[0].tolist(), drawn.lonlat[-1].tolist()
+    if first == last:
+        first, last = drawn.lonlat[1].tolist(), drawn.lonlat[-2].tolist()
+    is_turned = first > last
+    reach = np.concatenate([[0.0], np.cumsum(steps[::-1] if is_turned else steps)])
+    whole = np.rint(reach * 1000.0).astype(np.int64)
+    return np.asarray(whole[-1] - whole[::-1]) if is_turned else whole
+
+
+def _grid(run: Run, name: str, lonlat: Floats, shape: Floats) -> tuple[float, str]:
+    crs = run.crs
+    if crs is None or not _is_projected(crs):
+        middle = shape[len(shape) // 2]
+        crs = geodesy.utm_crs(float(middle[0]), float(middle[1]))
+    grid_m = geodesy.grid_length_m(lonlat, crs)
+    if not np.isfinite(grid_m):
+        if run.crs == crs:
+            raise CrsError(
+                Problem(
+                    where=f'leg "{name}"',
+                    what=f"the grid {crs} does not reach it",
+                    remedy="Name a projected CRS of the region, or leave crs out",
+                )
+            )
+        grid_m = float("nan")
+    return grid_m, crs
+
+
+def _is_projected(crs: str) -> bool:
+    import pyproj
+
+    return bool(pyproj.CRS.from_user_input(crs).is_projected)
+
+
+def _stretches(run: Run, pieces: Sequence[Piece], ground_mm: Millimetres) -> tuple[Stretch, ...]:
+    """Return the leg's stretches; neighbours of one placement are one, but existing spans stay."""
+    stretches: list[Stretch] = []
+    at = 0
+    for piece in pieces:
+        begin, at = at, at + len(piece.drawn.lonlat) - 1
+        line = piece.drawn.line
+        placement = line.placement or run.placement
+        span = (int(ground_mm[begin]), int(ground_mm[at]))
+        last = stretches[-1] if stretches else None
+        if last and last.placement == placement and placement != "existing":
+            stretches[-1] = replace(last, end_mm=span[1])
+        else:
+            stretches.append(
+                Stretch(
+                    placement=placement,
+                    start_mm=span[0],
+                    end_mm=span[1],
+                    existing_m=line.existing_m if placement == "existing" else None,
+                    existing_db=line.existing_db if placement == "existing" else None,
+                )
+            )
+    return tuple(stretches)
+
+
+def _place_points(
+    run: Run, legs: list[Leg], nodes: list[Node], places: Sequence[Place]
+) -> tuple[list[Leg], list[Node], list[Crossing], list[Problem]]:
+    joining = run.practice.joining
+    shapes = [(leg.shape_lonlat, leg.shape_mm) for leg in legs]
+    index = index_lines(shapes)
+    points = np.array([[place.lon, place.lat] for place in places]).reshape(-1, 2)
+    radius = np.full(len(places), joining.reach_distance_max_m)
+    found: list[list[PlacedPoint]] = [[] for _ in legs]
+    crossings: list[Crossing] = []
+    problems: list[Problem] = []
+    tolerance_mm = round(joining.join_tolerance_m * 1000)
+    for number, hits in enumerate(near_lines(index, points, radius_m=radius)):
+        place = places[number]
+        if not hits:
+            far_m = nearest_m(index, points[number])
+            problems.append(_far_point(place, far_m, joining.reach_distance_max_m))
+            continue
+        leg = legs[hits[0].line]
+        ground_mm = round(hits[0].index)
+        at_node = _plain_node_at(leg, nodes, ground_mm, tolerance_mm)
+        if at_node is not None and place.kind != "crossing" and nodes[at_node].place is None:
+            nodes[at_node] = replace(nodes[at_node], place=place, name=place.name)
+            continue
+        placed = PlacedPoint(place=place, ground_mm=ground_mm, offset_m=hits[0].offset_m)
+        found[hits[0].line].append(placed)
+        if place.kind == "crossing":
+            crossings.append(_crossing(leg, placed))
+    legs = [
+        replace(leg, points=tuple(sorted(placed, key=_station_order)))
+        for leg, placed in zip(legs, found, strict=True)
+    ]
+    return legs, nodes, crossings, problems
+
+
+def _station_order(point: PlacedPoint) -> tuple[int, float, float, str]:
+    # Places at one station keep an order that does not depend on the file.
+    return (point.ground_mm, point.place.lon, point.place.lat, point.place.name)
+
+
+def _plain_node_at(
+    leg: Leg, nodes: Sequence[Node], ground_mm: int, tolerance_mm: int
+) -> int | None:
+    """Return the branch node, not a site, that a station on a leg falls on."""
+    for node_id, at_mm in ((leg.start, 0), (leg.end, leg.length_mm)):
+        number = int(node_id[1:]) - 1
+        if abs(ground_mm - at_mm) <= tolerance_mm and not nodes[number].is_site:
+            return number
+    return None
+
+
+def _crossing(leg: Leg, placed: PlacedPoint) -> Crossing:
+    place = placed.place
+    lonlat, _ = position_at(leg, np.array([placed.ground_mm]))
+    return Crossing(
+        leg=leg.id,
+        name=place.name,
+        crosses=place.crosses or "road",
+        ground_mm=placed.ground_mm,
+        width_m=place.width_m,
+        lon=float(lonlat[0, 0]),
+        lat=float(lonlat[0, 1]),
+    )
+
+
+def position_at(leg: Leg, ground_mm: Millimetres) -> tuple[Floats, Floats]:
+    """
+    Return where stations of a leg lie, and how high.
+
+    Parameters
+    ----------
+    leg
+        The leg.
+    ground_mm
+        Ground stations, shape (n,); fastest when rising. [mm]
+
+    Returns
+    -------
+    lonlat
+        WGS 84 longitude and latitude, shape (n, 2). [deg]
+    heights_m
+        Shape (n,), NaN where unknown. [m]
+    """
+    lonlat = np.column_stack(
+        [np.interp(ground_mm, leg.shape_mm, leg.shape_lonlat[:, axis]) for axis in (0, 1)]
+    )
+    lonlat[:, 0] = geodesy.wrapped(lonlat[:, 0])
+    if leg.heights_m is None:
+        return lonlat, np.full(len(ground_mm), np.nan)
+    return lonlat, np.interp(ground_mm, leg.ground_mm, leg.heights_m)
+
+
+def _far_point(place: Place, far_m: float, limit_m: float) -> Problem:
+    return Problem(
+        where=str(place.source),
+        what=f'{place.kind.replace("_", " ")} "{place.name}" is far from every line',
+        value=f"{far_m:,.1f} m".replace(",", " "),
+        limit=f"reach_distance_max_m = {limit_m:g}",
+        remedy="Move it onto the way, or raise joining.reach_distance_max_m",
+    )
+
+
+def _leg_warnings(
+    groups: Sequence[Sequence[Piece]], names: Sequence[str]
+) -> Iterator[tuple[str, str]]:
+    for group, name in zip(groups, names, strict=True):
+        flat = sum(float(piece.drawn.ellipsoid_steps_m.sum()) for piece in group)
+        ground = sum(float(piece.drawn.ground_steps_m.sum()) for piece in group)
+        if flat and ground / flat - 1.0 > _STEEP_RATIO:
+            yield (
+                f'leg "{name}"',
+                f"slope adds {100 * (ground / flat - 1):.2f} % to its length; noisy heights "
+                "lengthen a line falsely, so check them",
+            )
+        drawn = sum(piece.drawn.drawn_m for piece in group)
+        if drawn - flat > 1e-6 * drawn:
+            yield (
+                f'leg "{name}"',
+                f"its track measured {drawn:.1f} m and {flat:.1f} m once thinned; the thinned "
+                "length is used",
+            )

@@ -1,0 +1,104 @@
+"""The published numbers on screen, each with its source."""
+
+from __future__ import annotations
+
+import textwrap
+from collections.abc import Iterator, Mapping
+from dataclasses import asdict
+from difflib import get_close_matches
+
+from routeplan.errors import InputError, Problem
+from routeplan.tables import load_meta, raw_rows, table_names
+
+__all__ = ["published_json", "published_text"]
+
+_WIDE = 28  # a cell wider than this goes on lines of its own
+
+
+def published_json(name: str | None) -> dict[str, object]:
+    """
+    Return a table with its meta data and rows, or the list of tables.
+
+    Parameters
+    ----------
+    name
+        Name of the table, or None.
+
+    Raises
+    ------
+    InputError
+        If there is no such table.
+    """
+    if name is None:
+        return {"tables": {entry: asdict(load_meta(entry)) for entry in table_names()}}
+    _refuse_unknown(name)
+    return {"name": name, "meta": asdict(load_meta(name)), "rows": list(raw_rows(name))}
+
+
+def published_text(name: str | None) -> str:
+    """
+    Return a table as lines to read, or the list of tables.
+
+    Parameters
+    ----------
+    name
+        Name of the table, or None.
+
+    Raises
+    ------
+    InputError
+        If there is no such table.
+    """
+    if name is None:
+        width = max(map(len, table_names()))
+        lines = [f"{entry:{width}}  {load_meta(entry).title}" for entry in table_names()]
+        return "\n".join([*lines, "", "routeplan tables NAME shows one."]) + "\n"
+    _refuse_unknown(name)
+    meta = load_meta(name)
+    head = [meta.title, *_wrapped(f"Source: {meta.source} ({meta.confidence})")]
+    head += _wrapped(f"Note: {meta.note}") if meta.note else []
+    return "\n".join([*head, "", *_row_lines(raw_rows(name))]) + "\n"
+
+
+def _refuse_unknown(name: str) -> None:
+    if name in table_names():
+        return
+    near = get_close_matches(name, table_names(), n=1)
+    raise InputError(
+        Problem(
+            where="tables",
+            what="is not a table",
+            value=repr(name),
+            limit=", ".join(table_names()),
+            remedy=f"Did you mean {near[0]}?" if near else "",
+        )
+    )
+
+
+def _wrapped(text: str) -> list[str]:
+    return textwrap.wrap(text, width=96, subsequent_indent="  ")
+
+
+def _row_lines(rows: tuple[Mapping[str, object], ...]) -> Iterator[str]:
+    """Yield a line of short values for each row, with long values indented below it."""
+    cells = [{key: _shown(value) for key, value in row.items()} for row in rows]
+    long = {
+        key for row in cells for key, text in row.items() if max(len(text), len(key)) > _WIDE
+    } | {"source", "confidence"}
+    keys = [key for key in dict.fromkeys(k for row in cells for k in row) if key not in long]
+    widths = {key: max([len(key), *(len(row.get(key, "")) for row in cells)]) for key in keys}
+    yield "  ".join(f"{key:{widths[key]}}" for key in keys).rstrip()
+    for row in cells:
+        yield "  ".join(f"{row.get(key, ''):{widths[key]}}" for key in keys).rstrip()
+        for key in (k for k in row if k in long):
+            yield from textwrap.wrap(
+                f"{key}: {row[key]}", width=96, initial_indent="    ", subsequent_indent="      "
+            )
+
+
+def _shown(value: object) -> str:
+    if isinstance(value, list):
+        return ", ".join(map(_shown, value))
+    if isinstance(value, dict):
+        return ", ".join(f"{key} {_shown(entry)}" for key, entry in value.items())
+    return f"{value:g}" if isinstance(value, float) else str(value)

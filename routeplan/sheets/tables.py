@@ -1,0 +1,522 @@
+"""The one catalogue of tables: every column with its unit, digits and where it comes from."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass
+from typing import Literal, TypeAlias
+
+__all__ = ["TABLES", "Column", "Json", "Row", "Table", "csv_tables", "flat_rows", "row_of", "shaped", "table"]
+
+Json: TypeAlias = None | bool | int | float | str | list["Json"] | dict[str, "Json"]
+Row: TypeAlias = dict[str, Json]
+Kind = Literal["text", "number", "integer", "flag", "texts", "rows", "row", "points", "numbers"]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Column:
+    """
+    One column: its key, kind, unit, printed digits and meaning.
+
+    `of` names the table that rows nested in it belong to; `may_be_null` says that what cannot be
+    known is null; `is_listed` is false for what only programs read.
+    """
+
+    key: str
+    kind: Kind
+    text: str
+    unit: str = ""
+    digits: int | None = None
+    of: str = ""
+    may_be_null: bool = False
+    is_listed: bool = True
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Table:
+    """
+    One table of a plan.
+
+    `path` says where its rows are in `plan.json`, outer lists first; a CSV also shows the columns
+    `carried` from the rows around them.
+    """
+
+    name: str
+    title: str
+    path: tuple[str, ...]
+    columns: tuple[Column, ...]
+    csv: str = ""
+    carried: tuple[tuple[str, str], ...] = ()
+
+
+def _text(key: str, text: str, **more: object) -> Column:
+    return Column(key=key, kind="text", text=text, **more)  # type: ignore[arg-type]
+
+
+def _number(key: str, text: str, unit: str, digits: int, **more: object) -> Column:
+    return Column(key=key, kind="number", text=text, unit=unit, digits=digits, **more)  # type: ignore[arg-type]
+
+
+def _metres(key: str, text: str, **more: object) -> Column:
+    return _number(key, text, "m", 3, **more)
+
+
+def _decibels(key: str, text: str, **more: object) -> Column:
+    return _number(key, text, "dB", 3, **more)
+
+
+def _count(key: str, text: str, **more: object) -> Column:
+    return Column(key=key, kind="integer", text=text, **more)  # type: ignore[arg-type]
+
+
+def _rows(key: str, of: str, text: str) -> Column:
+    return Column(key=key, kind="rows", of=of, text=text)
+
+
+def _money(key: str, text: str, **more: object) -> Column:
+    return _number(key, text, "currency", 2, **more)
+
+
+_LON = _number("lon", "Longitude, WGS 84.", "deg", 9)
+_LAT = _number("lat", "Latitude, WGS 84.", "deg", 9)
+
+_FIBRE_END = (
+    _text("cable", "Cable the fibre is in."),
+    _text("section", "Section the fibre is in."),
+    _count("fibre", "Fibre number."),
+    _text("tube_colour", "Colour of its tube."),
+    _text("fibre_colour", "Colour of the fibre."),
+)
+
+_TABLES = (
+    Table(
+        name="totals",
+        title="Totals",
+        path=("totals",),
+        columns=(
+            _metres("ground_m", "Way on the ground, all legs."),
+            _metres("sheath_m", "Cable along the jacket, all sections."),
+            _metres("glass_m", "Fibre along the glass, all cables, existing spans included."),
+            _metres("ordered_m", "Bought reels."),
+            _metres("stock_m", "Used from stock."),
+            _count("reel_count", "Reels."),
+            _count("section_count", "Sections of cable."),
+            _count("joint_count", "Joints."),
+            _count("closure_count", "Closures: joints that hold splices."),
+            _count("splice_count", "Splices in closures."),
+            _count("pigtail_splice_count", "Pigtail splices behind panels."),
+            _money("cost", "Reels and joints."),
+        ),
+    ),
+    Table(
+        name="nodes",
+        title="Nodes",
+        path=("nodes",),
+        columns=(
+            _text("name", "Name of the site or branch point."),
+            _text("role", "Role of a site.", may_be_null=True),
+            _LON,
+            _LAT,
+        ),
+    ),
+    Table(
+        name="stretches",
+        title="Stretches",
+        path=("legs", "stretches"),
+        carried=(("leg", "name"),),
+        columns=(
+            _text("placement", "How the cable lies."),
+            _metres("from_ground_m", "Where it begins."),
+            _metres("to_ground_m", "Where it ends."),
+        ),
+    ),
+    Table(
+        name="legs",
+        title="Legs",
+        path=("legs",),
+        columns=(
+            _text("name", "Name."),
+            _text("from", "Node it starts at."),
+            _text("to", "Node it ends at."),
+            _metres("grid_m", "Length in the grid.", may_be_null=True),
+            _text("grid_crs", "The grid."),
+            _number("grid_scale_factor", "Grid over ellipsoid length.", "", 9, may_be_null=True),
+            _metres("ellipsoid_m", "Geodesic length on the ellipsoid."),
+            _metres("ground_m", "Length on the ground."),
+            _rows("stretches", "stretches", "Its placements in order."),
+            Column(key="line", kind="points", text="Vertices: lon, lat, height.", is_listed=False),
+            Column(
+                key="line_ground_m", kind="numbers", text="Their stations.", unit="m",
+                is_listed=False,
+            ),
+        ),
+    ),
+    Table(
+        name="cables",
+        title="Cables",
+        path=("cables",),
+        columns=(
+            _text("name", "Name."),
+            Column(key="legs", kind="texts", text="Legs it passes, in order."),
+            _count("fibre_count", "Fibres."),
+            _text("fibre_type", "Fibre type."),
+            _metres("sheath_m", "Cable along the jacket."),
+            _metres("glass_m", "Fibre from end to end."),
+        ),
+    ),
+    Table(
+        name="stations",
+        title="Stations",
+        path=("stations",),
+        csv="stations.csv",
+        columns=(
+            _text("leg", "Leg."),
+            _text("cable", "Cable."),
+            _text("kind", "site, joint, crossing, loop, reach or vertex."),
+            _text("name", "Name of what is there.", may_be_null=True),
+            _text("reach_kind", "Kind of reach point.", may_be_null=True),
+            _text("placement", "Placement of the way on from here."),
+            _metres("ground_m", "On the ground from the leg's start."),
+            _metres("sheath_from_m", "Jacket before the cable stored here."),
+            _metres("sheath_to_m", "Jacket after the cable stored here."),
+            _metres("glass_from_m", "Glass before the cable stored here."),
+            _metres("glass_to_m", "Glass after the cable stored here."),
+            _text("section", "Section of cable.", may_be_null=True),
+            _metres("section_m", "Jacket from the section's own start.", may_be_null=True),
+            _LON,
+            _LAT,
+            _metres("height_m", "Height.", may_be_null=True),
+        ),
+    ),
+    Table(
+        name="sections",
+        title="Sections",
+        path=("sections",),
+        columns=(
+            _text("name", "Name."),
+            _text("cable", "Cable it is part of."),
+            _text("from", "Joint or site it starts at."),
+            _text("to", "Joint or site it ends at."),
+            _metres("sheath_m", "Jacket between its ends, tails included."),
+            _metres("needed_m", "With the ordering allowance."),
+            _text("reel", "Reel it is cut from."),
+        ),
+    ),
+    Table(
+        name="reels",
+        title="Reels",
+        path=("reels",),
+        csv="reels.csv",
+        columns=(
+            _text("name", "Name."),
+            _metres("length_m", "Length ordered, or of the stock reel."),
+            _text("source", "put-up, to-length or stock."),
+            _metres("used_m", "Needed by its sections."),
+            _metres("spare_m", "Left over."),
+            _money("cost", "Price."),
+            Column(key="sections", kind="texts", text="Sections cut from it, outer end first."),
+        ),
+    ),
+    Table(
+        name="layout",
+        title="Layout",
+        path=("layout",),
+        columns=(
+            Column(key="optimal", kind="flag", text="Whether the cost is proven least."),
+            _money("cost", "Reels and joints."),
+            _money("lower_bound", "No layout costs less than this."),
+            Column(
+                key="one_fewer", kind="row", of="one_fewer", may_be_null=True,
+                text="Cheapest with one joint fewer.",
+            ),
+            _text("stopped_by", "What ended the search early, if anything did."),
+        ),
+    ),
+    Table(
+        name="one_fewer",
+        title="One joint fewer",
+        path=("layout", "one_fewer"),
+        columns=(_count("joint_count", "Joints."), _money("cost", "Reels and joints.")),
+    ),
+    Table(
+        name="ends",
+        title="Cable ends",
+        path=("joints", "ends"),
+        columns=(_text("section", "Section."), _text("side", "start or end of the section.")),
+    ),
+    Table(
+        name="joints",
+        title="Joints",
+        path=("joints",),
+        columns=(
+            _text("name", "Name."),
+            _text("node", "Node, where it is at one.", may_be_null=True),
+            _text("reach_name", "Place it is at."),
+            _text("reach_kind", "Kind of place.", may_be_null=True),
+            _text("leg", "Leg."),
+            _metres("ground_m", "On the ground from the leg's start."),
+            _LON,
+            _LAT,
+            _text("kind", "splice or mated."),
+            Column(key="assumed", kind="flag", text="Whether the place is assumed."),
+            _count("splice_count", "Splices."),
+            _money("cost", "Closure, visit and splices."),
+            _rows("ends", "ends", "Cable ends that meet in it."),
+        ),
+    ),
+    Table(name="fibre_end", title="Fibre end", path=(), columns=_FIBRE_END),
+    Table(
+        name="splices",
+        title="Splice schedule",
+        path=("splices",),
+        csv="splice_schedule.csv",
+        columns=(
+            _text("joint", "Joint."),
+            _count("tray", "Tray."),
+            _count("position", "Position on the tray."),
+            Column(key="in", kind="row", of="fibre_end", text="Fibre coming in."),
+            Column(
+                key="out", kind="row", of="fibre_end", may_be_null=True, text="Fibre going on."
+            ),
+            _text("kind", "splice, express or stored."),
+            _text("circuit", "Circuit, empty for a spare."),
+            _decibels("limit_db", "Loss to meet, average of both directions."),
+        ),
+    ),
+    Table(
+        name="circuit_fibres",
+        title="Fibres of circuits",
+        path=("circuits", "fibres"),
+        carried=(("circuit", "name"),),
+        columns=(_text("cable", "Cable."), _count("fibre", "Fibre number.")),
+    ),
+    Table(
+        name="budget_lines",
+        title="Loss budget",
+        path=("circuits", "budgets", "lines"),
+        csv="loss_budget.csv",
+        carried=(
+            ("circuit", "circuits.name"),
+            ("wavelength_nm", "budgets.wavelength_nm"),
+            ("direction", "budgets.direction"),
+        ),
+        columns=(
+            _text("item", "Contribution."),
+            _count("count", "How many."),
+            _decibels("each_db", "Loss of each."),
+            _decibels("sigma_db", "Standard deviation of each."),
+            _decibels("limit_db", "Most that each may lose."),
+            _text("source", "Where the figures come from."),
+        ),
+    ),
+    Table(
+        name="budgets",
+        title="Budgets",
+        path=("circuits", "budgets"),
+        carried=(("circuit", "circuits.name"),),
+        columns=(
+            _number("wavelength_nm", "Wavelength.", "nm", 3),
+            _text("direction", "from-to or to-from."),
+            _decibels("nominal_db", "Sum of means."),
+            _decibels("statistical_db", "Means and k standard deviations."),
+            _decibels("worst_db", "Everything at its limit."),
+            _decibels("available_db", "What the interface allows.", may_be_null=True),
+            _decibels("margin_db", "Available less worst less margin kept.", may_be_null=True),
+            _decibels(
+                "statistical_margin_db", "The same with the statistical loss.", may_be_null=True
+            ),
+            _decibels("overload_db", "Above zero the receiver gets too much.", may_be_null=True),
+            _decibels("attenuator_db", "Smallest that mends the overload.", may_be_null=True),
+            _number("dispersion_min_ps_per_nm", "Least chromatic dispersion.", "ps/nm", 3),
+            _number("dispersion_max_ps_per_nm", "Greatest chromatic dispersion.", "ps/nm", 3),
+            _number("pmd_ps", "Polarisation mode dispersion.", "ps", 3, may_be_null=True),
+            _decibels("return_loss_db", "Return loss.", may_be_null=True),
+            _number("delay_us", "One-way delay.", "us", 3),
+            _text("verdict", "fits, fails or unknown."),
+            Column(key="reasons", kind="texts", text="Why."),
+            _rows("lines", "budget_lines", "Every contribution."),
+        ),
+    ),
+    Table(
+        name="circuits",
+        title="Circuits",
+        path=("circuits",),
+        columns=(
+            _text("name", "Name."),
+            _text("from", "Site."),
+            _text("to", "Site."),
+            _text("interface", "Interface.", may_be_null=True),
+            _rows("fibres", "circuit_fibres", "Fibres in order along it, strand by strand."),
+            _metres("glass_m", "Glass of its first fibre."),
+            _number("delay_us", "One-way delay at its first wavelength.", "us", 3),
+            _text("verdict", "fits, fails or unknown."),
+            _rows("budgets", "budgets", "By wavelength and direction."),
+        ),
+    ),
+    Table(
+        name="checks",
+        title="Checks",
+        path=("checks",),
+        csv="checks.csv",
+        columns=(
+            _text("kind", "What is checked."),
+            _text("where", "Where."),
+            _number("value", "Found.", "", 3, may_be_null=True),
+            _number("limit", "Limit.", "", 3, may_be_null=True),
+            _text("unit", "Unit of both."),
+            _text("verdict", "fits, fails or unknown."),
+            _text("source", "Where the limit comes from."),
+        ),
+    ),
+    Table(
+        name="bill",
+        title="Bill",
+        path=("bill",),
+        csv="bill.csv",
+        columns=(
+            _text("item", "What."),
+            _number("quantity", "How many or how much.", "", 3),
+            _text("unit", "Unit of the quantity."),
+            _money("each", "Price of one.", may_be_null=True),
+            _money("total", "Price of all.", may_be_null=True),
+            _text("note", "Note."),
+        ),
+    ),
+    Table(
+        name="assumptions",
+        title="Assumptions",
+        path=("assumptions",),
+        csv="assumptions.csv",
+        columns=(
+            _text("name", "Key or matter."),
+            Column(key="value", kind="text", text="Value taken."),
+            _text("unit", "Unit."),
+            _text("source", "Where it comes from."),
+            _text("reason", "Why it is taken."),
+        ),
+    ),
+    Table(
+        name="warnings",
+        title="Warnings",
+        path=("warnings",),
+        columns=(_text("where", "Where."), _text("message", "What.")),
+    ),
+    Table(
+        name="areas",
+        title="Areas",
+        path=("areas",),
+        columns=(
+            _text("name", "Name."),
+            _text("kind", "avoid or permit."),
+            Column(key="rings", kind="points", text="Rings of lon, lat.", is_listed=False),
+        ),
+    ),
+    Table(
+        name="cautions",
+        title="Cautions",
+        path=("cautions",),
+        columns=(_text("topic", "Hazard."), _text("text", "What to mind.")),
+    ),
+)
+
+TABLES: Mapping[str, Table] = {entry.name: entry for entry in _TABLES}
+
+
+def table(name: str) -> Table:
+    """Return the table with this name."""
+    return TABLES[name]
+
+
+def csv_tables() -> tuple[Table, ...]:
+    """Return the tables that are written as CSV, in file order."""
+    return tuple(entry for entry in _TABLES if entry.csv)
+
+
+def shaped(name: str, row: Mapping[str, Json]) -> Row:
+    """
+    Return a row in the catalogue's order, its numbers rounded to the catalogue's digits.
+
+    Raises
+    ------
+    KeyError
+        If the row lacks a column or has one more.
+    """
+    columns = TABLES[name].columns
+    if len(row) != len(columns):
+        extra = set(row) ^ {column.key for column in columns}
+        raise KeyError(f"table {name}: {sorted(extra)} stand in the row or the catalogue only")
+    return {column.key: _rounded(column, row[column.key]) for column in columns}
+
+
+def row_of(name: str, source: object, **more: Json) -> Row:
+    """
+    Return a row whose columns are attributes of `source`, but for those given.
+
+    Parameters
+    ----------
+    name
+        Name of the table.
+    source
+        What has the attributes.
+    more
+        Columns that are named or counted otherwise there.
+    """
+    return {
+        column.key: _rounded(
+            column, more[column.key] if column.key in more else getattr(source, column.key)
+        )
+        for column in TABLES[name].columns
+    }
+
+
+def _rounded(column: Column, value: Json) -> Json:
+    if column.digits is not None and isinstance(value, float):
+        # Adding zero turns -0.0 into 0.0.
+        return round(value, column.digits) + 0.0
+    return value
+
+
+def flat_rows(document: Mapping[str, Json], name: str) -> Iterator[Row]:
+    """
+    Yield the rows of a table as one CSV line each: carried columns first, nested rows dotted.
+
+    Parameters
+    ----------
+    document
+        What `plan.json` holds.
+    name
+        Name of the table.
+    """
+    entry = TABLES[name]
+    for around, row in _walk(document, entry.path, {}):
+        line: Row = {key: around[_full(entry, origin)] for key, origin in entry.carried}
+        for column in entry.columns:
+            if not column.is_listed or column.kind == "rows":
+                continue
+            if column.kind == "row":
+                inner = row[column.key]
+                for nested in TABLES[column.of].columns:
+                    key = f"{column.key}_{nested.key}"
+                    line[key] = inner[nested.key] if isinstance(inner, dict) else None
+            else:
+                line[column.key] = row[column.key]
+        yield line
+
+
+def _full(entry: Table, origin: str) -> str:
+    return origin if "." in origin else f"{entry.path[-2]}.{origin}"
+
+
+def _walk(
+    place: Mapping[str, Json], path: tuple[str, ...], around: dict[str, Json]
+) -> Iterator[tuple[dict[str, Json], dict[str, Json]]]:
+    head, *rest = path
+    found = place[head]
+    for row in found if isinstance(found, list) else [found]:
+        if not isinstance(row, dict):
+            continue
+        if rest:
+            named = {f"{head}.{key}": value for key, value in row.items()}
+            yield from _walk(row, tuple(rest), around | named)
+        else:
+            yield around, row

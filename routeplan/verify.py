@@ -1,0 +1,118 @@
+"""Every check of a plan: what was found, the limit, and whether it fits."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+
+from routeplan.cable.model import Layout
+from routeplan.ground.model import Ground
+from routeplan.light.model import Budget, Verdict
+from routeplan.run.model import Run
+
+__all__ = ["Check", "plan_checks"]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Check:
+    """One comparison of a value with its limit."""
+
+    kind: str
+    where: str
+    value: float | None
+    limit: float | None
+    unit: str
+    verdict: Verdict
+    source: str
+
+
+def plan_checks(
+    run: Run, ground: Ground, layout: Layout, budgets: Sequence[Budget]
+) -> tuple[Check, ...]:
+    """
+    Return the checks of a plan: light first, then cable.
+
+    Parameters
+    ----------
+    run, ground, layout
+        The run and its layout.
+    budgets
+        Budgets of all circuits.
+    """
+    return (
+        *(check for budget in budgets for check in _light_checks(budget, run)),
+        *_reel_checks(layout),
+        *_count_checks(run, layout),
+    )
+
+
+def _light_checks(budget: Budget, run: Run) -> Iterator[Check]:
+    where = f"{budget.circuit}, {budget.wavelength_nm:g} nm, {budget.direction}"
+    on_worst = run.practice.loss.verdict_on == "worst"
+    margin = budget.margin_db if on_worst else budget.statistical_margin_db
+    yield Check(
+        kind="margin",
+        where=where,
+        value=margin,
+        limit=0.0,
+        unit="dB",
+        verdict=_verdict(None if margin is None else margin >= 0),
+        source=f"loss.margin_db, loss.verdict_on = {run.practice.loss.verdict_on}",
+    )
+    over = budget.overload_db
+    mended = over is not None and over > 0 and budget.attenuator_db is not None
+    yield Check(
+        kind="overload with attenuator" if mended else "overload",
+        where=where,
+        value=over,
+        limit=budget.attenuator_db if mended else 0.0,
+        unit="dB",
+        verdict=_verdict(None if over is None else over <= (budget.attenuator_db or 0.0)),
+        source="interface, least loss",
+    )
+    yield Check(
+        kind="circuit",
+        where=where,
+        value=margin,
+        limit=None,
+        unit="dB",
+        verdict=budget.verdict,
+        source="; ".join(budget.reasons),
+    )
+
+
+def _reel_checks(layout: Layout) -> Iterator[Check]:
+    reels = {reel.id: reel for reel in layout.reels}
+    sections = {section.id: section for section in layout.sections}
+    for cut in layout.cuts:
+        section, reel = sections[cut.section], reels[cut.reel]
+        yield Check(
+            kind="section on reel",
+            where=f"{section.id} on {reel.id}",
+            value=section.needed_mm / 1000,
+            limit=reel.length_mm / 1000,
+            unit="m",
+            verdict=_verdict(section.needed_mm <= reel.length_mm),
+            source="slack.ordering_ratio, reels",
+        )
+
+
+def _count_checks(run: Run, layout: Layout) -> Iterator[Check]:
+    most = run.practice.joints.max_count
+    if most is None:
+        return
+    for cable in layout.cables:
+        count = sum(joint.mark.cable == cable.id for joint in layout.joints)
+        yield Check(
+            kind="joints",
+            where=f"cable {cable.name}",
+            value=float(count),
+            limit=float(most),
+            unit="",
+            verdict=_verdict(count <= most),
+            source="joints.max_count",
+        )
+
+
+def _verdict(holds: bool | None) -> Verdict:
+    return "unknown" if holds is None else "fits" if holds else "fails"
