@@ -218,9 +218,8 @@ def _offline_map_type() -> type[folium.Map]:
     class OfflineMap(folium.Map):
         """A folium map that names no script or style sheet elsewhere."""
 
-        default_js: list[tuple[str, str]] = []
-        default_css: list[tuple[str, str]] = []
-
+    OfflineMap.default_js = []
+    OfflineMap.default_css = []
     return OfflineMap
 
 

@@ -1,0 +1,123 @@
+"""The budgets of the report: every circuit, wavelength and direction, every line with its source."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from routeplan.sheets.lookup import Row, rows_at, text_at, value_at
+from routeplan.sheets.report_parts import Column, db, number, table, verdict_mark, words
+from routeplan.sheets.text import length_text, number_text, safe
+
+__all__ = ["circuits_html", "reasons_of"]
+
+
+def circuits_html(document: Row) -> str:
+    """Return the budgets of all circuits."""
+    return "".join(_circuit(document, row) for row in rows_at(document, "circuits"))
+
+
+def reasons_of(circuit: Row) -> list[str]:
+    """Return the reasons for a circuit's verdicts, each once, in the order they appear."""
+    reasons: dict[str, None] = {}
+    for budget in rows_at(circuit, "budgets"):
+        listed = budget.get("reasons")
+        for reason in listed if isinstance(listed, list) else []:
+            reasons.setdefault(str(reason))
+    return list(reasons)
+
+
+def direction_text(circuit: Row, direction: str) -> str:
+    """Return a direction with the names of the sites it leads between."""
+    ends = (text_at(circuit, "from"), text_at(circuit, "to"))
+    start, end = ends if direction == "from-to" else reversed(ends)
+    return f"{start} \N{RIGHTWARDS ARROW} {end}"
+
+
+def _circuit(document: Row, circuit: Row) -> str:
+    units = text_at(document, "units")
+    fibres = ", ".join(
+        f"{text_at(row, 'cable')} fibre {text_at(row, 'fibre')}"
+        for row in rows_at(circuit, "fibres")
+    )
+    facts = (
+        f"{text_at(circuit, 'from')} to {text_at(circuit, 'to')}; {fibres}; "
+        f"{length_text(value_at(circuit, 'glass_m'), units=units, digits=3)} of glass; "
+        f"delay {number_text(value_at(circuit, 'delay_us'), digits=3)} \N{MICRO SIGN}s one way"
+    )
+    budgets = rows_at(circuit, "budgets")
+    reasons = "".join(f"<li>{safe(reason)}</li>" for reason in reasons_of(circuit))
+    return (
+        f"<article><h3>{safe(text_at(circuit, 'name'))} "
+        f"{verdict_mark(text_at(circuit, 'verdict'))}</h3>\n<p>{safe(facts)}</p>\n"
+        f"{_overview(circuit, budgets)}"
+        f"{f'<ul>{reasons}</ul>' if reasons else ''}\n{_all_lines(circuit, budgets)}</article>\n"
+    )
+
+
+def _overview(circuit: Row, budgets: Sequence[Row]) -> str:
+    columns = [
+        number("nm", "wavelength_nm"),
+        Column(head="Direction", cell=lambda row: _direction_cell(circuit, row)),
+        db("Nominal", "nominal_db"),
+        db("Statistical", "statistical_db"),
+        db("Worst", "worst_db"),
+        db("Available", "available_db"),
+        db("Margin", "margin_db"),
+        db("Margin, stat.", "statistical_margin_db"),
+        db("Overload", "overload_db"),
+        number("Attenuator", "attenuator_db", digits=1),
+        Column(head="Dispersion, ps/nm", cell=_dispersion_cell, is_number=True),
+        number("PMD, ps", "pmd_ps", digits=3),
+        number("Return loss", "return_loss_db", digits=1),
+        Column(head="Verdict", cell=lambda row: verdict_mark(text_at(row, "verdict"))),
+    ]
+    return table(columns, budgets, name="budgets") + '<p class="note">Losses in dB.</p>'
+
+
+def _direction_cell(circuit: Row, row: Row) -> str:
+    return safe(direction_text(circuit, text_at(row, "direction")))
+
+
+def _dispersion_cell(row: Row) -> str:
+    low = number_text(value_at(row, "dispersion_min_ps_per_nm"), digits=1)
+    high = number_text(value_at(row, "dispersion_max_ps_per_nm"), digits=1)
+    return safe(f"{low} \N{HORIZONTAL ELLIPSIS} {high}")
+
+
+def _all_lines(circuit: Row, budgets: Sequence[Row]) -> str:
+    """Return the lines of every budget; directions that share all lines share one table."""
+    groups: dict[tuple[str, str], list[Row]] = {}
+    for budget in budgets:
+        key = (text_at(budget, "wavelength_nm"), repr(budget.get("lines")))
+        groups.setdefault(key, []).append(budget)
+    return "".join(_lines(circuit, group) for group in groups.values())
+
+
+def _lines(circuit: Row, budgets: Sequence[Row]) -> str:
+    first = budgets[0]
+    ways = [direction_text(circuit, text_at(row, "direction")) for row in budgets]
+    way = ways[0] if len(ways) == 1 else "both directions"
+    heading = f"{number_text(value_at(first, 'wavelength_nm'))} nm, {way}"
+    columns = [
+        words("Contribution", "item"),
+        number("Count", "count"),
+        db("Each", "each_db"),
+        db("Sigma", "sigma_db"),
+        db("Limit", "limit_db"),
+        Column(head="Nominal", cell=lambda row: _times(row, "each_db"), is_number=True),
+        Column(head="Worst", cell=lambda row: _times(row, "limit_db"), is_number=True),
+        words("Source", "source"),
+    ]
+    sums = "".join(
+        f'<td class="n">{safe(number_text(value_at(first, key), digits=3))}</td>'
+        for key in ("nominal_db", "worst_db")
+    )
+    foot = f'<tr><th scope="row" colspan="5">Sum, dB</th>{sums}<td></td></tr>'
+    lines = table(columns, rows_at(first, "lines"), name="lines", foot=foot)
+    return f'<div class="keep"><h4>{safe(heading)}</h4>\n{lines}</div>'
+
+
+def _times(row: Row, key: str) -> str:
+    count, each_db = value_at(row, "count"), value_at(row, key)
+    known = count is not None and each_db is not None
+    return safe(number_text(count * each_db if known else None, digits=3))  # type: ignore[operator]
