@@ -10,7 +10,9 @@ from routeplan.errors import GeometryError, Problem
 from routeplan.run.attributes import area_from, line_from, place_from
 from routeplan.run.datum import placed_shapes
 from routeplan.run.geometry_checks import check_together
+from routeplan.run.geometry_gdal import layers_from_gdal
 from routeplan.run.geometry_geojson import layers_from_geojson
+from routeplan.run.geometry_gpx import layers_from_gpx
 from routeplan.run.model import Area, Line, Place
 from routeplan.run.shapes import Layer
 from routeplan.run.trouble import Trouble
@@ -18,7 +20,10 @@ from routeplan.run.trouble import Trouble
 if TYPE_CHECKING:
     from pyproj import CRS
 
-__all__ = ["Geometry", "file_bytes", "geometry_from_files"]
+__all__ = ["VECTOR_SUFFIXES", "Geometry", "file_bytes", "geometry_from_files"]
+
+VECTOR_SUFFIXES = (".geojson", ".json", ".gpx", ".kml", ".kmz", ".gpkg", ".shp", ".shz", ".zip")
+"""Suffixes by which a vector file is found beside a run file that names none."""
 
 _GEOJSON = (".geojson", ".json")
 
@@ -95,12 +100,49 @@ def _refuse(trouble: Trouble, file: str, what: str, *, value: str = "", remedy: 
 
 
 def _layers(name: str, folder: Path, geometry: Geometry, trouble: Trouble) -> list[Layer]:
-    path = folder / name
-    content = file_bytes(path, file=name, trouble=trouble)
+    file, only = _file_and_layer(name, folder)
+    path = folder / file
+    content = _folder_bytes(path) if _is_database(path) else None
+    if content is None:
+        content = file_bytes(path, file=file, trouble=trouble)
     if content is None:
         return []
     geometry.contents.append(content)
-    return layers_from_geojson(content, file=name, trouble=trouble)
+    suffix = path.suffix.lower()
+    if suffix in _GEOJSON and only is None:
+        return layers_from_geojson(content, file=file, trouble=trouble)
+    if suffix == ".gpx" and only is None:
+        return layers_from_gpx(content, file=file, trouble=trouble)
+    geometry.contents.extend(sidecar.read_bytes() for sidecar in _sidecars(path))
+    return layers_from_gdal(path, content, file=file, only=only, trouble=trouble)
+
+
+def _file_and_layer(name: str, folder: Path) -> tuple[str, str | None]:
+    """Split `file.gpkg|layer`, unless that is the name of a file."""
+    file, bar, layer = name.rpartition("|")
+    try:
+        is_file = (folder / name).exists()
+    except (OSError, ValueError):
+        is_file = True
+    return (name, None) if is_file or not bar else (file, layer)
+
+
+def _is_database(path: Path) -> bool:
+    """Tell whether a folder is itself a vector file."""
+    return path.suffix.lower() == ".gdb" and path.is_dir()
+
+
+def _folder_bytes(path: Path) -> bytes:
+    """Return the bytes of all files of a folder that is a vector file, in order of their names."""
+    return b"".join(part.read_bytes() for part in sorted(path.iterdir()) if part.is_file())
+
+
+def _sidecars(path: Path) -> list[Path]:
+    """Return the files that belong to a plain shapefile, in order of their names."""
+    if path.suffix.lower() != ".shp":
+        return []
+    siblings = (path.with_suffix(suffix) for suffix in (".cpg", ".dbf", ".prj", ".shx"))
+    return [sibling for sibling in siblings if sibling.is_file()]
 
 
 def _add_layer(

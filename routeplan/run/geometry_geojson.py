@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+from collections import Counter
 from collections.abc import Iterator, Mapping
 from typing import TYPE_CHECKING, Any, TypeAlias
 
@@ -161,10 +162,10 @@ def _shapes(feature: object, number: int, *, file: str, trouble: Trouble) -> Ite
     if feature.get("geometry") is None:
         trouble.warn(str(source), "has no geometry and plays no part", file=file)
         return
-    part = 0
+    counts: Counter[str] = Counter()
     for kind, coordinates in _members(feature["geometry"], source, trouble):
         for shape_kind, arrays in _parts(kind, coordinates, source, trouble):
-            part += 1
+            counts[shape_kind] += 1
             xy, z = _split(arrays)
             yield Shape(
                 kind=shape_kind,
@@ -172,7 +173,7 @@ def _shapes(feature: object, number: int, *, file: str, trouble: Trouble) -> Ite
                 z=z,
                 properties=properties,
                 source=source,
-                part=part,
+                part=counts[shape_kind],
                 ring_starts=_ring_starts(arrays),
             )
 

@@ -8,10 +8,10 @@ from typing import TYPE_CHECKING
 
 from routeplan.errors import CrsError, Problem, RunFileError
 from routeplan.run.crs import crs_or_none, unusable
-from routeplan.run.geometry import Geometry, file_bytes, geometry_from_files
+from routeplan.run.geometry import VECTOR_SUFFIXES, Geometry, file_bytes, geometry_from_files
 from routeplan.run.model import Run
 from routeplan.run.runfile import Declared, declared_from_text
-from routeplan.run.trouble import Trouble, shown
+from routeplan.run.trouble import Trouble, listed, shown
 
 if TYPE_CHECKING:
     from pyproj import CRS
@@ -76,11 +76,24 @@ def _refuse(trouble: Trouble, where: str, what: str, *, value: str = "", remedy:
 
 
 def _geometry_names(declared: Declared, path: Path, trouble: Trouble) -> tuple[str, ...]:
+    """Return the files a run names, or the only vector file beside a run file that names none."""
     if declared.head is None:
         return ()
     if declared.head.geometry is not None:
         return declared.head.geometry
-    return ()
+    if "geometry" in declared.given:
+        return ()
+    beside = sorted(p.name for p in path.parent.iterdir() if p.suffix.lower() in VECTOR_SUFFIXES)
+    if len(beside) != 1:
+        _refuse(
+            trouble,
+            f"{path.name}, geometry",
+            "is not given, and the folder does not hold exactly one vector file",
+            value=listed(beside) or "none",
+            remedy='Name the file, for example geometry = ["route.geojson"].',
+        )
+        return ()
+    return (beside[0],)
 
 
 def _run_crs(name: str | None, *, file: str, trouble: Trouble) -> CRS | None:
