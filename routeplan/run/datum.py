@@ -68,7 +68,7 @@ def placed_shapes(layer: Layer, *, run_crs: CRS | None, trouble: Trouble) -> lis
                 shape=shape,
                 lonlat=frozen(own),
                 datum_lonlat=frozen(datum_lonlat[start:end]),
-                heights_m=None if heights is None or shape.z is None else heights[start:end],
+                heights_m=_own_heights(heights, start, end),
                 is_drawn=is_drawn,
                 semi_major_m=ellipsoid[0],
                 inverse_flattening=ellipsoid[1],
@@ -176,7 +176,9 @@ def _transformer(crs: CRS, target: str | None):  # type: ignore[no-untyped-def]
 
 def _own_degrees(crs: CRS) -> object:
     own = crs.geodetic_crs
-    assert own is not None and own.prime_meridian is not None and own.ellipsoid is not None
+    assert own is not None
+    assert own.prime_meridian is not None
+    assert own.ellipsoid is not None
     if own.prime_meridian.longitude == 0.0 and degrees_of(own) == 1.0:
         return own.to_2d()
     ellipsoid = own.ellipsoid
@@ -201,6 +203,12 @@ def _heights(layer: Layer, crs: CRS, trouble: Trouble) -> Floats | None:
         trouble.warn(layer.where, "all heights are 0: taken as not known", file=layer.file)
         return None
     return frozen(heights * _metres_up(crs))
+
+
+def _own_heights(heights: Floats | None, start: int, end: int) -> Floats | None:
+    if heights is None or np.isnan(heights[start:end]).all():
+        return None
+    return heights[start:end]
 
 
 def _metres_up(crs: CRS) -> float:

@@ -38,7 +38,7 @@ def _check_twins(lines: Sequence[Line], trouble: Trouble) -> None:
                 where=str(line.source),
                 what="is the same line as another",
                 value=f"that of {twin.source}",
-                remedy="Take one out; two cables on one way are two entries under [cables].",
+                remedy="Take one out.",
             )
             trouble.add(GeometryError, problem, file=line.source.file)
 

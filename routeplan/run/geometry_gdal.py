@@ -145,8 +145,8 @@ def _layer(path: Path, name: str, *, file: str, trouble: Trouble) -> Layer | Non
 
 def _called(what: str, path: Path, *, file: str, trouble: Trouble, layer: str | None = None) -> Any:
     """Return what GDAL reads, or None with the problem noted; its warnings become ours."""
-    import pyogrio  # type: ignore[import-untyped]
-    from pyogrio.errors import DataLayerError, DataSourceError, FeatureError  # type: ignore[import-untyped]
+    import pyogrio
+    from pyogrio.errors import DataLayerError, DataSourceError, FeatureError
 
     with warnings.catch_warnings(record=True) as caught:
         warnings.simplefilter("always")
@@ -156,20 +156,25 @@ def _called(what: str, path: Path, *, file: str, trouble: Trouble, layer: str | 
             else:
                 result = pyogrio.raw.read(path.absolute(), layer=layer, return_fids=True)
         except (DataSourceError, DataLayerError, FeatureError) as error:
-            _refuse(trouble, file, *_said(str(error)))
+            _refuse(trouble, file, *_said(_without_path(error, path)))
             return None
         except UnicodeDecodeError as error:
             byte = f"byte 0x{error.object[error.start]:02x} in {shown(error.object[:40].hex())}"
             _refuse(trouble, file, "holds text that is not UTF-8", value=byte)
             return None
         except (RuntimeError, ValueError, OSError, MemoryError) as error:
-            _refuse(trouble, file, "cannot be read", value=str(error)[:300])
+            _refuse(trouble, file, "cannot be read", value=_without_path(error, path)[:300])
             return None
     for warning in caught:
         text = str(warning.message)
         if issubclass(warning.category, RuntimeWarning | UserWarning) and "Measured" not in text:
+            text = text.replace(str(path.absolute()), path.name)
             trouble.warn(file, text[:300], file=file, kind="the format's reader warns")
     return result
+
+
+def _without_path(error: BaseException, path: Path) -> str:
+    return str(error).replace(str(path.absolute()), path.name)
 
 
 def _said(text: str) -> tuple[str, str]:

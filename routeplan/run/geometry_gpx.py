@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
-from xml.etree import ElementTree
+from xml.etree import ElementTree as ET
 
 import numpy as np
 
@@ -39,8 +39,8 @@ def layers_from_gpx(content: bytes, *, file: str, trouble: Trouble) -> list[Laye
     root = None
     if problem is None:
         try:
-            root = ElementTree.fromstring(content)
-        except (ElementTree.ParseError, ValueError, LookupError, RecursionError) as error:
+            root = ET.fromstring(content)
+        except (ET.ParseError, ValueError, LookupError, RecursionError) as error:
             problem = Problem(where=file, what="is not well-formed XML", value=str(error))
     if problem is None and root is not None and _local(root) != "gpx":
         problem = Problem(where=file, what="is not GPX", value=f"root element {_local(root)}")
@@ -62,7 +62,7 @@ def xml_problem(content: bytes, *, file: str) -> Problem | None:
             remedy="Export it again.",
         )
     head = content[:200].lower()
-    if b"encoding" in head and b"utf-8" not in head or content[:2] in (b"\xff\xfe", b"\xfe\xff"):
+    if (b"encoding" in head and b"utf-8" not in head) or content[:2] in (b"\xff\xfe", b"\xfe\xff"):
         return None
     try:
         content.decode("utf-8")
@@ -74,13 +74,11 @@ def xml_problem(content: bytes, *, file: str) -> Problem | None:
     return None
 
 
-def _local(element: ElementTree.Element) -> str:
+def _local(element: ET.Element) -> str:
     return str(element.tag).rpartition("}")[2]
 
 
-def _shapes(
-    element: ElementTree.Element, number: int, *, file: str, trouble: Trouble
-) -> Iterator[Shape]:
+def _shapes(element: ET.Element, number: int, *, file: str, trouble: Trouble) -> Iterator[Shape]:
     kind = _local(element)
     groups = {"wpt": [[element]], "rte": [_children(element, "rtept")], "trk": []}.get(kind)
     if groups is None:
@@ -109,11 +107,11 @@ def _shapes(
         )
 
 
-def _children(element: ElementTree.Element, name: str) -> list[ElementTree.Element]:
+def _children(element: ET.Element, name: str) -> list[ET.Element]:
     return [child for child in element if _local(child) == name]
 
 
-def _properties(element: ElementTree.Element) -> dict[str, object]:
+def _properties(element: ET.Element) -> dict[str, object]:
     """Return the texts of an element and of everything in its extensions."""
     found: dict[str, object] = {}
     for child in element:
@@ -127,7 +125,7 @@ def _properties(element: ElementTree.Element) -> dict[str, object]:
 
 
 def _vertices(
-    points: list[ElementTree.Element], source: Source, trouble: Trouble
+    points: list[ET.Element], source: Source, trouble: Trouble
 ) -> np.ndarray[tuple[int, int], np.dtype[np.float64]] | None:
     rows = np.empty((len(points), 3))
     for number, point in enumerate(points):

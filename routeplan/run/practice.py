@@ -242,10 +242,11 @@ class Interface(_Model):
 
     @property
     def band_nm(self) -> tuple[float, float]:
-        """Shortest and longest wavelength. [nm]"""
+        """Return the shortest and the longest wavelength [nm]."""
         if self.wavelength_nm is not None:
             return self.wavelength_nm, self.wavelength_nm
-        assert self.wavelength_min_nm is not None and self.wavelength_max_nm is not None
+        assert self.wavelength_min_nm is not None
+        assert self.wavelength_max_nm is not None
         return self.wavelength_min_nm, self.wavelength_max_nm
 
 

@@ -115,7 +115,9 @@ def _run_crs(name: str | None, *, file: str, trouble: Trouble) -> CRS | None:
 
 def _run(declared: Declared, geometry: Geometry, names: tuple[str, ...], trouble: Trouble) -> Run:
     head = declared.head
-    assert head is not None and declared.cable is not None and declared.practice is not None
+    assert head is not None
+    assert declared.cable is not None
+    assert declared.practice is not None
     return Run(
         title=head.title or _title(names),
         purpose=head.purpose,

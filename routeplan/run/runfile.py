@@ -163,13 +163,14 @@ def _circuits(given: object, defaults: Table, interfaces: object) -> Any:
     if not isinstance(given, list):
         return given
     own = interfaces if isinstance(interfaces, dict) else {}
-    circuits = []
-    for number, item in enumerate(given, start=1):
-        if isinstance(item, dict):
-            light = wavelengths_of(item.get("interface"), own) or defaults["wavelengths_nm"]
-            item = {"name": f"Circuit {number}", **defaults, "wavelengths_nm": light, **item}
-        circuits.append(item)
-    return circuits
+    return [_circuit(item, number, defaults, own) for number, item in enumerate(given, start=1)]
+
+
+def _circuit(item: object, number: int, defaults: Table, own: Mapping[str, Any]) -> object:
+    if not isinstance(item, dict):
+        return item
+    light = wavelengths_of(item.get("interface"), own) or defaults["wavelengths_nm"]
+    return {"name": f"Circuit {number}", **defaults, "wavelengths_nm": light, **item}
 
 
 def _validated(merged: Table, *, file: str, trouble: Trouble, given: frozenset[str]) -> Declared:
@@ -181,8 +182,8 @@ def _validated(merged: Table, *, file: str, trouble: Trouble, given: frozenset[s
         return _sound_parts(merged, error, given=given)
     parts = {name: getattr(whole, name) for name in _PRACTICE_PARTS}
     return Declared(
-        head=RunHead.model_validate({name: getattr(whole, name) for name in RunHead.model_fields}),
-        practice=Practice.model_validate(parts),
+        head=RunHead.model_construct(**{n: getattr(whole, n) for n in RunHead.model_fields}),
+        practice=Practice.model_construct(**parts),
         cable=whole.cable,
         cables=whole.cables,
         interfaces=whole.interface,

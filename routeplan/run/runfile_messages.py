@@ -111,9 +111,9 @@ def _problem(detail: ErrorDetails, data: Mapping[str, Any], *, file: str) -> Pro
     path, kind = detail["loc"], detail["type"]
     where = f"{file}, {key_path(path, data)}"
     if kind == "extra_forbidden":
-        return _unknown_key(path, where, data)
+        return _unknown_key(path, where)
     if path[-1] == "[key]":
-        return _unknown_key(path[:-1], where, data, known=_expected(detail))
+        return _unknown_key(path[:-1], where, known=_expected(detail))
     value = "" if kind == "missing" else shown(detail["input"])
     if kind in _BOUNDS:
         bound = next(iter(detail["ctx"].values()))
@@ -148,7 +148,6 @@ def _remedy(kind: str, value: object) -> str:
 def _unknown_key(
     path: tuple[str | int, ...],
     where: str,
-    data: Mapping[str, Any],
     *,
     known: tuple[str, ...] = (),
 ) -> Problem:
