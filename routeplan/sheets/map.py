@@ -228,7 +228,7 @@ def _verbatim(text: str) -> Element:
     from branca.element import Element
 
     class Verbatim(Element):
-        def render(self, **kwargs: object) -> str:
+        def render(self, **_kwargs: object) -> str:
             return text
 
     return Verbatim()
@@ -239,7 +239,7 @@ def _starter(below: str, page: Figure, map_: folium.Map) -> Element:
     from branca.element import Element
 
     class Starter(Element):
-        def render(self, **kwargs: object) -> str:
+        def render(self, **_kwargs: object) -> str:
             start = f"(() => {{\n{_own_script()}\nshowRun({map_.get_name()});\n}})();"
             page.html.add_child(_verbatim(below), name="below")
             page.script.add_child(_verbatim(start), name="start")

@@ -1,4 +1,4 @@
-"""What the map page draws from: a run as columns of small whole numbers, each a step on the last."""
+"""What the map page draws from: a run as columns of whole numbers, each a step on the last."""
 
 from __future__ import annotations
 
@@ -172,7 +172,7 @@ def _column(stations: Sequence[Row], key: str) -> Steps:
 
 
 def _rises(stations: Sequence[Row], start: str, end: str) -> list[int]:
-    """Return what a ruler gains at each station: loops, tails, entries. [mm]"""
+    """Return the millimetres a ruler gains at each station: loops, tails, entries."""
     rises = []
     for row in stations:
         from_m, to_m = value_at(row, start), value_at(row, end)

@@ -1,4 +1,4 @@
-"""The strip chart for print: height and loss against ground metres, the ways and joints under it."""
+"""The strip chart for print: height and loss against ground metres, ways and joints below."""
 
 from __future__ import annotations
 
@@ -12,8 +12,8 @@ from routeplan.sheets.text import number_text, plain, safe
 
 __all__ = ["line_svg", "nice_step", "profile_svg"]
 
-_WIDTH, _HEIGHT = 760, 214
-_LEFT, _RIGHT, _TOP, _BOTTOM = 44, _WIDTH - 44, 30, _HEIGHT - 44
+_WIDTH, _HEIGHT = 760, 220
+_LEFT, _RIGHT, _TOP, _BOTTOM = 44, _WIDTH - 44, 36, _HEIGHT - 44
 _BAND_Y = _BOTTOM + 12
 _INK, _MUTED, _HAIR, _PAPER = "#1c2326", "#5d6a70", "#e4e0d2", "#ffffff"
 
@@ -120,7 +120,7 @@ def _heights(leg: Row, along: _Scale) -> tuple[int, list[str]]:
         f'<path d="{closed}" fill="{_HAIR}"/>',
         *grid,
         f'<path d="{edge}" fill="none" stroke="#8b8778" stroke-width="1.2"/>',
-        _text(_LEFT - 40, _TOP - 7, "Height, m", colour=_MUTED),
+        _text(_LEFT - 40, _TOP - 11, "Height, m", colour=_MUTED),
     ]
 
 
@@ -172,7 +172,7 @@ def _loss_parts(rows: Sequence[Row], along: _Scale, rows_count: int, title: str)
         f'<path d="{curve}" fill="none" stroke="{_PAPER}" stroke-width="3.6"/>',
         f'<path d="{curve}" fill="none" stroke="{_INK}" stroke-width="1.6"/>',
         *ticks,
-        _text(_RIGHT + 40, _TOP - 7, title, anchor="end"),
+        _text(_RIGHT + 40, _TOP - 11, title, anchor="end"),
     ]
 
 
@@ -234,7 +234,7 @@ def _joints(joints: Sequence[Row], along: _Scale) -> list[str]:
         )
         half = 3.2 * len(name) + 3
         if x - half >= max(free_from, _LEFT + 22) and x + half < _RIGHT - 90:
-            parts.append(_text(x, _TOP - 7, name, anchor="middle", bold=True))
+            parts.append(_text(x, _TOP - 11, name, anchor="middle", bold=True))
             free_from = x + half
     return parts
 

@@ -144,7 +144,7 @@ def _verdicts(document: Row) -> str:
     if failed:
         lines.append(
             f"<div><dt>Checks</dt><dd>{verdict_mark('fails')} "
-            f'<a href="#checks">{safe(count_text(failed, "check"))} outside its limit</a></dd></div>'
+            f'<a href="#checks">{safe(count_text(failed, "check"))} outside limits</a></dd></div>'
         )
     return f'<dl class="verdicts">{"".join(lines)}</dl>\n' if lines else ""
 
@@ -155,28 +155,35 @@ def _figures(document: Row) -> str:
     currency = text_at(document, "currency")
 
     def length(key: str) -> str:
-        return length_text(value_at(totals, key), units=units, digits=3)
+        return length_text(value_at(totals, key), units=units)
 
     def count(key: str, noun: str) -> str:
         return count_text(value_at(totals, key) or 0, noun)
 
-    figures = [
-        ("Ground", length("ground_m"), "along the way"),
-        ("Sheath", length("sheath_m"), f"{count('section_count', 'section')}, loops and tails in"),
-        ("Glass", length("glass_m"), "along the fibre"),
-        ("To order", length("ordered_m"), f"{count('reel_count', 'reel')}; "
-         f"{length('stock_m')} from stock"),
-        ("Joints", number_text(value_at(totals, "joint_count")),
-         f"{count('closure_count', 'closure')}, {count('splice_count', 'splice')}, "
-         f"{count('pigtail_splice_count', 'pigtail splice')}"),
-        ("Cost", f"{currency} {number_text(value_at(totals, 'cost'), digits=2)}".strip(),
-         "invented prices" if has_invented_prices(document) else ""),
-    ]  # fmt: skip
+    stock = f"{length('stock_m')} from stock" if value_at(totals, "stock_m") else ""
+    made_of = {
+        "Ground": "along the way",
+        "Sheath": f"{count('section_count', 'section')}, with loops and tails",
+        "Glass": "along the fibre",
+        "To order": "; ".join(part for part in (count("reel_count", "reel"), stock) if part),
+        "Joints": f"{count('splice_count', 'splice')} in {count('closure_count', 'closure')}, "
+        f"{count('pigtail_splice_count', 'pigtail splice')}",
+        "Cost": "invented prices" if has_invented_prices(document) else "",
+    }
+    figures = {
+        "Ground": length("ground_m"),
+        "Sheath": length("sheath_m"),
+        "Glass": length("glass_m"),
+        "To order": length("ordered_m"),
+        "Joints": number_text(value_at(totals, "joint_count")),
+        "Cost": f"{currency} {number_text(value_at(totals, 'cost'), digits=2)}".strip(),
+    }
     return (
         '<dl class="figures">'
         + "".join(
-            f"<div><dt>{safe(name)}</dt><dd>{safe(value)}</dd><dd class='sub'>{safe(sub)}</dd></div>"
-            for name, value, sub in figures
+            f"<div><dt>{name}</dt><dd>{safe(value)}</dd>"
+            f'<dd class="sub">{safe(made_of[name])}</dd></div>'
+            for name, value in figures.items()
         )
         + "</dl>\n"
     )

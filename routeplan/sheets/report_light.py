@@ -1,4 +1,4 @@
-"""The budgets of the report: every circuit, wavelength and direction, every line with its source."""
+"""The budgets of the report: each circuit, wavelength and direction, every line with its source."""
 
 from __future__ import annotations
 
@@ -9,6 +9,22 @@ from routeplan.sheets.report_parts import Column, db, number, table, verdict_mar
 from routeplan.sheets.text import length_text, number_text, safe
 
 __all__ = ["circuits_html", "reasons_of"]
+
+_BUDGETS_ACROSS = 6
+_QUANTITIES = (
+    ("Nominal loss", "dB", 3, "nominal_db"),
+    ("Statistical loss", "dB", 3, "statistical_db"),
+    ("Worst loss", "dB", 3, "worst_db"),
+    ("Available", "dB", 3, "available_db"),
+    ("Margin on the worst loss", "dB", 3, "margin_db"),
+    ("Margin on the statistical loss", "dB", 3, "statistical_margin_db"),
+    ("Overload, positive is too much light", "dB", 3, "overload_db"),
+    ("Attenuator that mends it", "dB", 1, "attenuator_db"),
+    ("Dispersion, least", "ps/nm", 1, "dispersion_min_ps_per_nm"),
+    ("Dispersion, most", "ps/nm", 1, "dispersion_max_ps_per_nm"),
+    ("Polarisation mode dispersion", "ps", 3, "pmd_ps"),
+    ("Return loss", "dB", 1, "return_loss_db"),
+)
 
 
 def circuits_html(document: Row) -> str:
@@ -55,33 +71,44 @@ def _circuit(document: Row, circuit: Row) -> str:
 
 
 def _overview(circuit: Row, budgets: Sequence[Row]) -> str:
-    columns = [
-        number("nm", "wavelength_nm"),
-        Column(head="Direction", cell=lambda row: _direction_cell(circuit, row)),
-        db("Nominal", "nominal_db"),
-        db("Statistical", "statistical_db"),
-        db("Worst", "worst_db"),
-        db("Available", "available_db"),
-        db("Margin", "margin_db"),
-        db("Margin, stat.", "statistical_margin_db"),
-        db("Overload", "overload_db"),
-        number("Attenuator", "attenuator_db", digits=1),
-        Column(head="Dispersion, ps/nm", cell=_dispersion_cell, is_number=True),
-        number("PMD, ps", "pmd_ps", digits=3),
-        number("Return loss", "return_loss_db", digits=1),
-        Column(head="Verdict", cell=lambda row: verdict_mark(text_at(row, "verdict"))),
+    """Return the budgets side by side, a row for each quantity, a few budgets to a table."""
+    parts = [
+        _side_by_side(circuit, budgets[start : start + _BUDGETS_ACROSS])
+        for start in range(0, len(budgets), _BUDGETS_ACROSS)
     ]
-    return table(columns, budgets, name="budgets") + '<p class="note">Losses in dB.</p>'
+    return "".join(parts)
 
 
-def _direction_cell(circuit: Row, row: Row) -> str:
-    return safe(direction_text(circuit, text_at(row, "direction")))
+def _side_by_side(circuit: Row, budgets: Sequence[Row]) -> str:
+    heads = "".join(
+        f'<th scope="col" class="n">{wavelength_text(row)}<br><small>to '
+        f"{safe(_far_end(circuit, row))}</small></th>"
+        for row in budgets
+    )
+    lines = []
+    for name, unit, digits, key in _QUANTITIES:
+        cells = "".join(
+            f'<td class="n">{safe(number_text(value_at(row, key), digits=digits))}</td>'
+            for row in budgets
+        )
+        lines.append(f'<tr><th scope="row">{name}, {unit}</th>{cells}</tr>')
+    marks = "".join(
+        f'<td class="n">{verdict_mark(text_at(row, "verdict"))}</td>' for row in budgets
+    )
+    return (
+        f'<table class="budgets keep"><thead><tr><th></th>{heads}</tr></thead><tbody>'
+        f'{"".join(lines)}</tbody><tfoot><tr><th scope="row">Verdict</th>{marks}</tr></tfoot>'
+        "</table>\n"
+    )
 
 
-def _dispersion_cell(row: Row) -> str:
-    low = number_text(value_at(row, "dispersion_min_ps_per_nm"), digits=1)
-    high = number_text(value_at(row, "dispersion_max_ps_per_nm"), digits=1)
-    return safe(f"{low} \N{HORIZONTAL ELLIPSIS} {high}")
+def wavelength_text(budget: Row) -> str:
+    """Return a wavelength without grouping, as people say it."""
+    return safe(f"{value_at(budget, 'wavelength_nm') or 0:g} nm")
+
+
+def _far_end(circuit: Row, budget: Row) -> str:
+    return text_at(circuit, "to" if text_at(budget, "direction") == "from-to" else "from")
 
 
 def _all_lines(circuit: Row, budgets: Sequence[Row]) -> str:
@@ -97,7 +124,6 @@ def _lines(circuit: Row, budgets: Sequence[Row]) -> str:
     first = budgets[0]
     ways = [direction_text(circuit, text_at(row, "direction")) for row in budgets]
     way = ways[0] if len(ways) == 1 else "both directions"
-    heading = f"{number_text(value_at(first, 'wavelength_nm'))} nm, {way}"
     columns = [
         words("Contribution", "item"),
         number("Count", "count"),
@@ -114,7 +140,7 @@ def _lines(circuit: Row, budgets: Sequence[Row]) -> str:
     )
     foot = f'<tr><th scope="row" colspan="5">Sum, dB</th>{sums}<td></td></tr>'
     lines = table(columns, rows_at(first, "lines"), name="lines", foot=foot)
-    return f'<div class="keep"><h4>{safe(heading)}</h4>\n{lines}</div>'
+    return f'<div class="keep"><h4>{wavelength_text(first)}, {safe(way)}</h4>\n{lines}</div>'
 
 
 def _times(row: Row, key: str) -> str:

@@ -161,7 +161,7 @@ def joints_html(document: Row) -> str:
         length("Ground station", "ground_m", units=text_at(document, "units")),
         Column(head="How to get there", cell=lambda row: joint_place(document, row)),
         Column(head="Latitude, longitude", cell=lambda row: safe(position_text(row))),
-        words("Kind", "kind"),
+        words("Kind", "kind", is_long=False),
         number("Splices", "splice_count"),
         amount("Cost", "cost"),
     ]
@@ -200,14 +200,16 @@ def _measured(row: Row, key: str) -> str:
 
 def _value_text(value: object) -> str:
     """Return a number with the digits it was given, anything else as text."""
-    if isinstance(value, bool) or not isinstance(value, int | float):
-        return safe(", ".join(f"{k}: {v}" for k, v in value.items()) if _is_map(value) else value)
-    digits = len(f"{round(value, 6):f}".rstrip("0").partition(".")[2])
+    if isinstance(value, dict):
+        return safe(", ".join(f"{key} {each}" for key, each in value.items()) or "none")
+    if isinstance(value, list):
+        return safe(", ".join(str(each) for each in value) or "none")
+    if isinstance(value, bool):
+        return "yes" if value else "no"
+    if not isinstance(value, int | float):
+        return safe(value)
+    digits = len(f"{value:.6f}".rstrip("0").partition(".")[2])
     return safe(number_text(value, digits=digits))
-
-
-def _is_map(value: object) -> bool:
-    return isinstance(value, dict)
 
 
 def bill_html(document: Row) -> str:

@@ -40,11 +40,12 @@ class Column:
     head: str
     cell: Callable[[Row], str]
     is_number: bool = False
+    is_long: bool = False
 
 
-def words(head: str, key: str) -> Column:
-    """Return a column of text."""
-    return Column(head=head, cell=lambda row: safe(text_at(row, key)) or UNKNOWN)
+def words(head: str, key: str, *, is_long: bool = True) -> Column:
+    """Return a column of text; a long one breaks inside words if it has to."""
+    return Column(head=head, cell=lambda row: safe(text_at(row, key)) or UNKNOWN, is_long=is_long)
 
 
 def number(head: str, key: str, *, digits: int = 0) -> Column:
@@ -82,7 +83,7 @@ def length(head: str, key: str, *, units: str, digits: int = 3) -> Column:
 def table(columns: Sequence[Column], rows: Iterable[Row], *, name: str = "", foot: str = "") -> str:
     """Return a table; `foot` is its last row as HTML."""
     heads = "".join(
-        f'<th scope="col"{_number_class(column)}>{safe(column.head)}</th>' for column in columns
+        f'<th scope="col"{_class(column)}>{safe(column.head)}</th>' for column in columns
     )
     body = "\n".join(table_row(columns, row) for row in rows)
     kind = f' class="{safe(name)}"' if name else ""
@@ -92,7 +93,7 @@ def table(columns: Sequence[Column], rows: Iterable[Row], *, name: str = "", foo
 
 def table_row(columns: Sequence[Column], row: Row) -> str:
     """Return one row of a table."""
-    cells = "".join(f"<td{_number_class(column)}>{column.cell(row)}</td>" for column in columns)
+    cells = "".join(f"<td{_class(column)}>{column.cell(row)}</td>" for column in columns)
     return f"<tr>{cells}</tr>"
 
 
@@ -122,5 +123,5 @@ def swatch(colour: str) -> str:
     return f'<span class="swatch" style="background:{fill}"></span>{safe(colour)}'
 
 
-def _number_class(column: Column) -> str:
-    return ' class="n"' if column.is_number else ""
+def _class(column: Column) -> str:
+    return ' class="n"' if column.is_number else ' class="w"' if column.is_long else ""

@@ -155,14 +155,14 @@ def _columns() -> list[Column]:
         *_end_columns("in"),
         Column(head="", cell=_between),
         *_end_columns("out"),
-        words("Kind", "kind"),
+        words("Kind", "kind", is_long=False),
         Column(head="Circuit", cell=lambda row: safe(text_at(row, "circuit")) or "spare"),
         Column(
             head="Limit, dB",
             cell=lambda row: safe(number_text(value_at(row, "limit_db"), digits=2)),
             is_number=True,
         ),
-        Column(head="Measured", cell=lambda row: '<span class="blank"></span>'),
+        Column(head="Measured", cell=lambda _: '<span class="blank"></span>'),
     ]
 
 
