@@ -7,7 +7,7 @@ import contextlib
 import json
 import os
 import sys
-from collections.abc import Callable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -47,7 +47,9 @@ def make_parser() -> argparse.ArgumentParser:
 
     new = commands.add_parser("new", help="write a commented run file for a geometry file")
     new.add_argument("geometry", metavar="GEOMETRY", help="any vector file of lines and points")
-    new.add_argument("--out", metavar="FILE", help="run file to write (default: run.toml beside it)")
+    new.add_argument(
+        "--out", metavar="FILE", help="run file to write (default: run.toml beside it)"
+    )
     new.set_defaults(act=_new)
 
     tables = commands.add_parser("tables", help="show the published numbers with their sources")
@@ -111,7 +113,7 @@ def _plan(arguments: argparse.Namespace) -> int:
     from routeplan.planning import plan
     from routeplan.run import read_run
     from routeplan.sheets.summary import summary_text
-    from routeplan.sheets.write import SHEET_NAMES, json_text, write_sheets
+    from routeplan.sheets.write import SHEET_NAMES, write_sheets
 
     with _progress(3 + len(SHEET_NAMES)) as advance:
         advance("reading")
@@ -207,5 +209,3 @@ def _progress(total: int) -> Iterator[Callable[[str], None]]:
             bar.update(1)
 
         yield advance
-
-

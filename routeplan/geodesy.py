@@ -132,7 +132,9 @@ def mean_radius_m(semi_major_m: float, inverse_flattening: float) -> float:
     return semi_major_m * (3.0 - flattening) / 3.0
 
 
-def ground_steps_m(ellipsoid_steps_m: Floats, heights_m: Floats | None, *, radius_m: float) -> Floats:
+def ground_steps_m(
+    ellipsoid_steps_m: Floats, heights_m: Floats | None, *, radius_m: float
+) -> Floats:
     """
     Return steps on the ground: raised from the ellipsoid to their height, then along the slope.
 
@@ -252,7 +254,9 @@ def densified(
     return np.concatenate(points)[order], np.concatenate(index)[order]
 
 
-def local_xy_m(lonlat: Floats, *, lon: Floats | float, lat: Floats | float) -> tuple[Floats, Floats]:
+def local_xy_m(
+    lonlat: Floats, *, lon: Floats | float, lat: Floats | float
+) -> tuple[Floats, Floats]:
     """
     Return east and north of points from near-by origins, by the WGS 84 radii at the origin.
 

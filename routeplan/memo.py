@@ -49,4 +49,4 @@ def fingerprint(value: object) -> Hashable:
     slots = getattr(type(value), "__dataclass_fields__", None)
     if slots is not None:
         return (type(value).__name__, *(fingerprint(getattr(value, name)) for name in slots))
-    return value  # type: ignore[return-value]
+    return value

@@ -21,7 +21,7 @@ from routeplan.light.interfaces import (
     find_interface,
 )
 from routeplan.light.model import Budget, ExistingSpan, Path, Verdict
-from routeplan.light.path import cable_track, circuit_paths
+from routeplan.light.path import CableTrack, cable_track, circuit_paths
 from routeplan.memo import Memo, remembered
 from routeplan.run.defaults import AssumedValue, assumed_values, default_value
 from routeplan.run.model import Run
@@ -112,9 +112,7 @@ def plan(run: Run, *, memo: Memo | None = None) -> Plan:
     )
 
 
-def _orders(
-    run: Run, ground: Ground
-) -> tuple[tuple[CircuitOrder, ...], list[tuple[str, str]]]:
+def _orders(run: Run, ground: Ground) -> tuple[tuple[CircuitOrder, ...], list[tuple[str, str]]]:
     """Return the circuits with both ends named; without any, one over the longest leg."""
     longest = max(ground.legs, key=lambda leg: leg.length_mm)
     start, end = ground.node(longest.start), ground.node(longest.end)
@@ -220,7 +218,7 @@ def _refuse_optics(run: Run, orders: Sequence[CircuitOrder]) -> None:
         raise InputError(problems)
 
 
-def _tracks(laid: Sequence[LaidCable], layout: Layout) -> Iterator:
+def _tracks(laid: Sequence[LaidCable], layout: Layout) -> Iterator[CableTrack]:
     for cable in laid:
         own = cable.way.cable
         existing = [

@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from functools import partial
 
 import numpy as np
 
@@ -21,7 +22,7 @@ from routeplan.cable.model import (
 )
 from routeplan.cable.reel_models import Buying, PlacementLimit, SpanLayout, SpanProblem
 from routeplan.cable.reels import cheapest_layout, one_joint_fewer
-from routeplan.cable.relax import infeasible_problem
+from routeplan.cable.relax import infeasible_problem, smallest_relaxation
 from routeplan.cable.rulers import BareRuler, bare_ruler, glass_from_sheath, readings, ruled
 from routeplan.cable.slack import Step, slack_steps
 from routeplan.cable.way import Spot, Way, cable_way, leg_at, positions_on
@@ -84,13 +85,8 @@ def lay_cables(run: Run, ground: Ground, *, memo: Memo | None = None) -> tuple[L
     for leg in ground.legs:
         ends = (ground.node(leg.start), ground.node(leg.end))
         try:
-            laid.append(
-                remembered(
-                    memo,
-                    ("cable", run.cable, run.cables, run.practice, leg, ends),
-                    lambda leg=leg, ends=ends: _lay(run, leg, ends),
-                )
-            )
+            inputs = ("cable", run.cable, run.cables, run.practice, leg, ends)
+            laid.append(remembered(memo, inputs, partial(_lay, run, leg, ends)))
         except InfeasibleError as error:
             problems.extend(error.problems)
     if problems:
@@ -167,7 +163,7 @@ def _laid_spans(way: Way, bare: BareRuler, practice: Practice) -> Iterator[LaidS
         problem = _problem(way, bare, spots, bounds=(start, end), practice=practice, most=left)
         best = cheapest_layout(problem)
         if best is None:
-            raise InfeasibleError(infeasible_problem(problem, **_spoken(way, spots, start, end)))
+            raise InfeasibleError(_infeasible(way, spots, problem))
         if left is not None:
             left -= best.joint_count
         yield LaidSpan(spots=spots, start_mm=start, end_mm=end, problem=problem, best=best)
@@ -178,9 +174,16 @@ def _fixed_joints(way: Way, bounds: Sequence[tuple[int, int]]) -> list[int]:
     return [at for span in bounds for at in span if 0 < at < way.length_mm]
 
 
-def _spoken(way: Way, spots: Sequence[Spot], start: int, end: int) -> dict[str, object]:
-    names = ["its start", *(spot.name for spot in spots), "its end"]
-    return {"where": f'cable "{way.cable.name}"', "names": names}
+def _infeasible(way: Way, spots: Sequence[Spot], problem: SpanProblem) -> Problem:
+    relaxation = smallest_relaxation(problem)
+    if relaxation is None:
+        raise AssertionError(f"cable {way.cable.name}: no layout found where there is one")
+    return infeasible_problem(
+        relaxation,
+        where=f'cable "{way.cable.name}"',
+        names=["its start", *(spot.name for spot in spots), "its end"],
+        chain_m=[at / 1000 for at in problem.chain_mm],
+    )
 
 
 def _problem(
@@ -349,8 +352,6 @@ def _end(section: Section, side: str) -> CableEnd:
 
 
 def _with_ends(joint: Joint, ends: Sequence[CableEnd]) -> Joint:
-    from dataclasses import replace
-
     # The arriving end first: what comes in, then what goes on.
     ordered = sorted(ends, key=lambda end: end.side == "start")
     return replace(joint, ends=tuple(ordered))

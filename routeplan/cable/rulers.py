@@ -11,10 +11,18 @@ from numpy.typing import NDArray
 from routeplan.cable.model import Millimetres, Rulers
 from routeplan.cable.slack import Step
 from routeplan.cable.way import Way
+from routeplan.run.model import Placement
 from routeplan.run.practice import Slack
 from routeplan.units import mm_from_m
 
-__all__ = ["BareRuler", "bare_ruler", "chain_from_reading", "glass_from_sheath", "readings", "ruled"]
+__all__ = [
+    "BareRuler",
+    "bare_ruler",
+    "chain_from_reading",
+    "glass_from_sheath",
+    "readings",
+    "ruled",
+]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -36,7 +44,9 @@ class BareRuler:
     is_existing: NDArray[np.bool_]
 
 
-def bare_ruler(way: Way, steps: Sequence[Step], *, slack: Slack, end_mm: tuple[int, int]) -> BareRuler:
+def bare_ruler(
+    way: Way, steps: Sequence[Step], *, slack: Slack, end_mm: tuple[int, int]
+) -> BareRuler:
     """
     Return the sheath ruler with undulation, spare cable and ends, but no joints.
 
@@ -84,9 +94,8 @@ def bare_ruler(way: Way, steps: Sequence[Step], *, slack: Slack, end_mm: tuple[i
     )
 
 
-def _undulation(placement: str, slack: Slack) -> float:
-    ratios: dict[str, float] = dict(slack.undulation_ratio)
-    return 0.0 if placement == "existing" else ratios[placement]
+def _undulation(placement: Placement, slack: Slack) -> float:
+    return 0.0 if placement == "existing" else slack.undulation_ratio[placement]
 
 
 def ruled(
@@ -195,7 +204,9 @@ def readings(
     glass = _between(rulers.chain_mm, rulers.glass_mm, chain_mm, first)
     return (
         (
-            np.where(is_knot, rulers.sheath_mm[np.minimum(first, len(rulers.chain_mm) - 1)], sheath),
+            np.where(
+                is_knot, rulers.sheath_mm[np.minimum(first, len(rulers.chain_mm) - 1)], sheath
+            ),
             np.where(is_knot, rulers.sheath_mm[last], sheath),
         ),
         (

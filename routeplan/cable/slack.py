@@ -122,9 +122,7 @@ def _fewest_between(
             gap = at[j] - at[i]
             excess, count, squares, key = best[i]
             over = max(0, gap - every_mm)
-            options.append(
-                (excess + over, count + 1, squares + gap * gap, key + keys[j], i)
-            )
+            options.append((excess + over, count + 1, squares + gap * gap, key + keys[j], i))
             if over and options[0][0] <= over:
                 break
         *score, i = min(options)

@@ -6,11 +6,12 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from routeplan import geodesy
 from routeplan.run.model import Floats, Line
 
-__all__ = ["Drawn", "cut_drawn", "draw_line", "joined_drawn", "reversed_drawn"]
+__all__ = ["Drawn", "cut_drawn", "draw_line", "joined_drawn", "reversed_drawn", "shape_of"]
 
 _SHAPE_STEP_M = 500.0  # interpolating longitude and latitude over more would leave the geodesic
 
@@ -60,9 +61,7 @@ def draw_line(line: Line, *, track_tolerance_m: float) -> Drawn:
         heights = None if heights is None else heights[keep]
         ellipsoid = _ellipsoid_steps_m(line, line.datum_lonlat[keep])
     radius = geodesy.mean_radius_m(line.semi_major_m, line.inverse_flattening)
-    ground = geodesy.ground_steps_m(
-        ellipsoid, None if line.is_track else heights, radius_m=radius
-    )
+    ground = geodesy.ground_steps_m(ellipsoid, None if line.is_track else heights, radius_m=radius)
     unwrapped = np.column_stack([geodesy.unwrapped(lonlat[:, 0]), lonlat[:, 1]])
     return Drawn(
         line=line,
@@ -80,23 +79,21 @@ def _ellipsoid_steps_m(line: Line, lonlat: Floats) -> Floats:
     )
 
 
-def _thinned(lonlat: Floats, tolerance_m: float) -> Floats:
+def _thinned(lonlat: Floats, tolerance_m: float) -> NDArray[np.int64]:
     """Return the indices of the vertices that Douglas-Peucker keeps."""
     import shapely
 
     middle = lonlat[len(lonlat) // 2]
     east, north = geodesy.local_xy_m(lonlat, lon=middle[0], lat=middle[1])
     # The third ordinate carries the index through the simplification.
-    line = shapely.linestrings(np.column_stack([east, north, np.arange(len(lonlat))]))
+    line = shapely.LineString(np.column_stack([east, north, np.arange(len(lonlat))]))
     kept = shapely.get_coordinates(line.simplify(tolerance_m), include_z=True)
     return np.asarray(kept[:, 2].astype(np.int64))
 
 
 def shape_of(drawn: Drawn) -> tuple[Floats, Floats]:
     """Return the line with long steps densified, and the fractional index of every point."""
-    return geodesy.densified(
-        drawn.lonlat, step_m=_SHAPE_STEP_M, lengths_m=drawn.ellipsoid_steps_m
-    )
+    return geodesy.densified(drawn.lonlat, step_m=_SHAPE_STEP_M, lengths_m=drawn.ellipsoid_steps_m)
 
 
 def reversed_drawn(drawn: Drawn) -> Drawn:
@@ -137,9 +134,7 @@ def _part(drawn: Drawn, begin: float, end: float) -> Drawn:
     index = np.concatenate([[begin], inner, [end]])
     shape, shape_index = shape_of(drawn)
     whole = np.arange(len(drawn.lonlat), dtype=np.float64)
-    lonlat = np.column_stack(
-        [np.interp(index, shape_index, shape[:, axis]) for axis in (0, 1)]
-    )
+    lonlat = np.column_stack([np.interp(index, shape_index, shape[:, axis]) for axis in (0, 1)])
     lonlat[1:-1] = drawn.lonlat[inner.astype(np.int64)]
     heights = drawn.heights_m
     return replace(

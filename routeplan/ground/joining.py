@@ -159,8 +159,9 @@ def _take_sites(
     for number, hits in enumerate(near_lines(lines, points, radius_m=radius)):
         site = sites[number]
         assumed = bool(site.properties.get("kind_assumed"))
-        if near_ends[number] is not None:
-            taken.append((site, int(cluster[near_ends[number]])))
+        near_end = near_ends[number]
+        if near_end is not None:
+            taken.append((site, cluster[near_end]))
         elif hits and not assumed:
             taken.append((site, hits[0]))
         elif assumed:

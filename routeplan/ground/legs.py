@@ -51,8 +51,13 @@ def lay_ground(run: Run) -> Ground:
     names = _leg_names(groups, [nodes[numbers[g[0].start]].name for g in groups],
                        [nodes[numbers[g[-1].end]].name for g in groups])  # fmt: skip
     legs = [
-        _leg(run, f"L{at}", name, pieces=group, ends=(nodes[numbers[group[0].start]].id,
-             nodes[numbers[group[-1].end]].id))  # fmt: skip
+        _leg(
+            run,
+            f"L{at}",
+            name,
+            pieces=group,
+            ends=(nodes[numbers[group[0].start]].id, nodes[numbers[group[-1].end]].id),
+        )  # fmt: skip
         for at, (name, group) in enumerate(zip(names, groups, strict=True), start=1)
     ]
     points = [place for place in run.places if place.kind != "site"]
@@ -66,7 +71,9 @@ def lay_ground(run: Run) -> Ground:
     )
 
 
-def _nodes(network: Network, groups: Sequence[Sequence[Piece]]) -> tuple[list[Node], dict[int, int]]:
+def _nodes(
+    network: Network, groups: Sequence[Sequence[Piece]]
+) -> tuple[list[Node], dict[int, int]]:
     """Return the nodes in run order, and for each junction the place of its node in the list."""
     degree = Counter(j for group in groups for j in (group[0].start, group[-1].end))
     taken = {place.name for place in network.sites.values()}
@@ -141,7 +148,9 @@ def _name_problems(groups: Sequence[Sequence[Piece]], names: Sequence[str]) -> l
     return problems
 
 
-def _leg(run: Run, leg_id: str, name: str, *, pieces: Sequence[Piece], ends: tuple[str, str]) -> Leg:
+def _leg(
+    run: Run, leg_id: str, name: str, *, pieces: Sequence[Piece], ends: tuple[str, str]
+) -> Leg:
     whole = joined_drawn([piece.drawn for piece in pieces])
     ground_mm = _whole_millimetres(whole)
     shape, shape_index = shape_of(whole)

@@ -53,7 +53,7 @@ def index_lines(shapes: Sequence[tuple[Floats, Floats]]) -> LineIndex:
     begin = np.concatenate([lonlat[:-1] for lonlat in moved])
     end = np.concatenate([lonlat[1:] for lonlat in moved])
     return LineIndex(
-        tree=shapely.STRtree(shapely.linestrings(np.stack([begin, end], axis=1))),
+        tree=shapely.STRtree(np.asarray(shapely.linestrings(np.stack([begin, end], axis=1)))),
         begin=begin,
         end=end,
         line=np.repeat(np.arange(len(shapes)), [len(lonlat) - 1 for lonlat in moved]),
@@ -157,7 +157,7 @@ def within_pairs(points: Floats, *, radius_m: float) -> list[tuple[int, int]]:
     moved = np.column_stack(
         [points[:, 0] - 360.0 * np.round((points[:, 0] - points[0, 0]) / 360.0), points[:, 1]]
     )
-    tree = shapely.STRtree(shapely.points(moved))
+    tree = shapely.STRtree(np.asarray(shapely.points(moved)))
     first, second = tree.query(_boxes(moved, np.full(len(moved), radius_m)))
     keep = first < second
     first, second = first[keep], second[keep]

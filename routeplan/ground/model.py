@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Literal, TypeAlias
+from typing import TypeAlias
 
 import numpy as np
 from numpy.typing import NDArray
@@ -90,7 +90,7 @@ class Crossing:
 
     leg: str
     name: str
-    crosses: Literal["road", "rail", "water", "power"]
+    crosses: str
     ground_mm: int
     width_m: float | None
     lon: float

@@ -6,7 +6,18 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from typing import Literal, TypeAlias
 
-__all__ = ["TABLES", "Column", "Json", "Row", "Table", "csv_tables", "flat_rows", "row_of", "shaped", "table"]
+__all__ = [
+    "TABLES",
+    "Column",
+    "Json",
+    "Row",
+    "Table",
+    "csv_tables",
+    "flat_rows",
+    "row_of",
+    "shaped",
+    "table",
+]
 
 Json: TypeAlias = None | bool | int | float | str | list["Json"] | dict[str, "Json"]
 Row: TypeAlias = dict[str, Json]
@@ -146,7 +157,10 @@ _TABLES = (
             _rows("stretches", "stretches", "Its placements in order."),
             Column(key="line", kind="points", text="Vertices: lon, lat, height.", is_listed=False),
             Column(
-                key="line_ground_m", kind="numbers", text="Their stations.", unit="m",
+                key="line_ground_m",
+                kind="numbers",
+                text="Their stations.",
+                unit="m",
                 is_listed=False,
             ),
         ),
@@ -226,7 +240,10 @@ _TABLES = (
             _money("cost", "Reels and joints."),
             _money("lower_bound", "No layout costs less than this."),
             Column(
-                key="one_fewer", kind="row", of="one_fewer", may_be_null=True,
+                key="one_fewer",
+                kind="row",
+                of="one_fewer",
+                may_be_null=True,
                 text="Cheapest with one joint fewer.",
             ),
             _text("stopped_by", "What ended the search early, if anything did."),
@@ -275,9 +292,7 @@ _TABLES = (
             _count("tray", "Tray."),
             _count("position", "Position on the tray."),
             Column(key="in", kind="row", of="fibre_end", text="Fibre coming in."),
-            Column(
-                key="out", kind="row", of="fibre_end", may_be_null=True, text="Fibre going on."
-            ),
+            Column(key="out", kind="row", of="fibre_end", may_be_null=True, text="Fibre going on."),
             _text("kind", "splice, express or stored."),
             _text("circuit", "Circuit, empty for a spare."),
             _decibels("limit_db", "Loss to meet, average of both directions."),

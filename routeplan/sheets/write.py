@@ -10,6 +10,7 @@ import os
 import shutil
 import tempfile
 from collections.abc import Callable, Iterator, Mapping, Sequence
+from functools import partial
 from pathlib import Path
 
 from routeplan.errors import InputError, Problem
@@ -60,9 +61,7 @@ def write_sheets(
     return put_sheets(make_sheets(planned, on_sheet=on_sheet), folder)
 
 
-def make_sheets(
-    planned: Plan, *, on_sheet: Callable[[str], None] | None = None
-) -> dict[str, str]:
+def make_sheets(planned: Plan, *, on_sheet: Callable[[str], None] | None = None) -> dict[str, str]:
     """
     Return the text of every sheet by its file name.
 
@@ -78,10 +77,10 @@ def make_sheets(
 
     document = plan_document(planned)
     makers: dict[str, Callable[[], str]] = {
-        **{entry.csv: lambda entry=entry: csv_text(document, entry) for entry in csv_tables()},
-        "map.html": lambda: map_html(document),
-        "report.html": lambda: report_html(document),
-        "plan.json": lambda: json_text(document),
+        **{entry.csv: partial(csv_text, document, entry) for entry in csv_tables()},
+        "map.html": partial(map_html, document),
+        "report.html": partial(report_html, document),
+        "plan.json": partial(json_text, document),
     }
     sheets = {}
     for name in SHEET_NAMES:
