@@ -160,7 +160,10 @@ def joints_html(document: Row) -> str:
         words("Leg", "leg"),
         length("Ground station", "ground_m", units=text_at(document, "units")),
         Column(head="How to get there", cell=lambda row: joint_place(document, row)),
-        Column(head="Latitude, longitude", cell=lambda row: safe(position_text(row))),
+        Column(
+            head="Latitude, longitude",
+            cell=lambda row: f'<span class="whole">{safe(position_text(row))}</span>',
+        ),
         words("Kind", "kind", is_long=False),
         number("Splices", "splice_count"),
         amount("Cost", "cost"),

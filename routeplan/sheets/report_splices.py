@@ -7,7 +7,7 @@ from itertools import groupby
 
 from routeplan.sheets.lookup import Row, row_at, rows_at, text_at, value_at, whole_at
 from routeplan.sheets.report_parts import Column, swatch, table_row, words
-from routeplan.sheets.text import MINUS, count_text, length_text, number_text, safe
+from routeplan.sheets.text import count_text, length_text, number_text, safe
 
 __all__ = ["closures_html", "joint_place", "runs_of_splices"]
 
@@ -40,11 +40,11 @@ def joint_place(document: Row, joint: Row) -> str:
 
 
 def position_text(joint: Row) -> str:
-    """Return a joint's coordinates as people type them into a navigator: latitude first."""
+    """Return a joint's coordinates as a navigator takes them, latitude first."""
     lon, lat = value_at(joint, "lon"), value_at(joint, "lat")
     if lon is None or lat is None:
         return ""
-    return f"{lat:.6f}, {lon:.6f}".replace("-", MINUS)
+    return f"{lat:.6f}, {lon:.6f}"
 
 
 def runs_of_splices(rows: Sequence[Row]) -> list[str]:

@@ -7,6 +7,7 @@ from itertools import pairwise
 from typing import Any
 
 Row = dict[str, Any]
+Marks = dict[float, tuple[str, str, str | None, float]]
 
 HOSTILE_NAMES = ("<img src=x onerror=alert(1)>", "`${1}`", "</script><script>alert(2)</script>")
 
@@ -46,7 +47,10 @@ def made_up_run(
     ]
     names = HOSTILE_NAMES if hostile else ("Ostrel House", "Quenmoor", "Leg 1")
     joints_at_m = [at * scale for at in JOINTS_AT_M]
-    stations = _stations(line, ground_m, stretches, joints_at_m, reach_step_m, names)
+    marks = _marks(
+        ground_m, stretches, joints_at_m=joints_at_m, reach_step_m=reach_step_m, names=names
+    )
+    stations = _stations(line, ground_m, marks=marks, leg=names[2])
     sections = _sections(stations, names, joints_at_m)
     document: Row = {
         "schema": 1,
@@ -97,12 +101,10 @@ def _at(line: list[list[float]], ground_m: list[float], at_m: float) -> list[flo
 def _stations(
     line: list[list[float]],
     ground_m: list[float],
-    stretches: list[Row],
-    joints_at_m: list[float],
-    reach_step_m: int,
-    names: tuple[str, ...],
+    *,
+    marks: Marks,
+    leg: str,
 ) -> list[Row]:
-    marks = _marks(ground_m, stretches, joints_at_m, reach_step_m, names)
     stations, sheath_m, glass_m, before_m, section = [], 0.0, 0.0, 0.0, 1
     section_start_m = 0.0
     for at_m in sorted(marks):
@@ -112,7 +114,7 @@ def _stations(
         to_m = round(sheath_m + steps_m, 3)
         lon, lat, height_m = _at(line, ground_m, at_m)
         stations.append({
-            "leg": names[2], "cable": "Cable 1", "kind": kind, "name": name,
+            "leg": leg, "cable": "Cable 1", "kind": kind, "name": name,
             "reach_kind": reach_kind, "ground_m": at_m,
             "sheath_from_m": sheath_m, "sheath_to_m": to_m,
             "glass_from_m": glass_m, "glass_to_m": round(glass_m + steps_m * 1.012, 3),
@@ -128,12 +130,13 @@ def _stations(
 def _marks(
     ground_m: list[float],
     stretches: list[Row],
+    *,
     joints_at_m: list[float],
     reach_step_m: int,
     names: tuple[str, ...],
-) -> dict[float, tuple[str, str, str | None, float]]:
+) -> Marks:
     """Return what stands at each ground station: kind, name, reach kind, sheath step."""
-    marks: dict[float, tuple[str, str, str | None, float]] = {}
+    marks: Marks = {}
     for at_m in ground_m:
         marks[at_m] = ("vertex", "", None, 0.0)
     end_m = ground_m[-1]
