@@ -246,12 +246,13 @@ def _faults(problem: SpanProblem) -> list[str]:
     if count < 2 or set(sizes) != {count}:
         return [f"{count} places with columns of {sizes}; at least 2 places, columns alike"]
     buying = problem.buying
-    rates = min(problem.ordering_ratio, buying.cable_cents_per_m)
+    rate = min(problem.ordering_ratio, buying.cable_cents_per_m)
     lengths = min(buying.reel_each_cents, buying.made_max_mm, *buying.put_ups_mm)
     columns = (problem.joint_cost_cents, problem.tie_key, problem.joint_weight or (0,))
-    negative = min(rates, lengths, *(min(column) for column in columns))
+    least = min(lengths, *(min(column) for column in columns))
     checks = (
-        (negative >= 0, f"a ratio, length, price, tie or weight of {negative} is negative"),
+        (rate >= 0, f"a ratio or rate of {rate} is negative"),
+        (least >= 0, f"a length, price, tie or weight of {least} is negative"),
         (buying.round_up_mm > 0, f"pieces in steps of {buying.round_up_mm} mm"),
         (_ascends(problem.chain_mm), "places are not in order along the chain"),
         (
