@@ -27,7 +27,7 @@ def make_parser() -> argparse.ArgumentParser:
     """Return the parser of every command."""
     parser = argparse.ArgumentParser(
         prog="routeplan",
-        description="Plan outside-plant singlemode fibre runs: lengths, reels, joints, fibres, light.",
+        description="Plan outside-plant singlemode fibre runs, from lengths and reels to light.",
         epilog=_EPILOG,
         formatter_class=argparse.RawDescriptionHelpFormatter,
     )
@@ -198,7 +198,7 @@ def _tables(arguments: argparse.Namespace) -> int:
 def _progress(total: int) -> Iterator[Callable[[str], None]]:
     """Yield a function that names the next step; a bar shows after a second, on a terminal only."""
     if not sys.stderr.isatty():
-        yield lambda name: None
+        yield lambda _: None
         return
     from tqdm import tqdm
 

@@ -102,7 +102,7 @@ def plan(run: Run, *, memo: Memo | None = None) -> Plan:
         layout=layout,
         circuits=circuits,
         splice_counts=counts,
-        checks=plan_checks(run, ground, layout, [b for c in circuits for b in c.budgets]),
+        checks=plan_checks(run, layout, [b for c in circuits for b in c.budgets]),
         warnings=(
             *run.warnings,
             *ground.warnings,

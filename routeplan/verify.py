@@ -6,7 +6,6 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 from routeplan.cable.model import Layout
-from routeplan.ground.model import Ground
 from routeplan.light.model import Budget, Verdict
 from routeplan.run.model import Run
 
@@ -26,16 +25,16 @@ class Check:
     source: str
 
 
-def plan_checks(
-    run: Run, ground: Ground, layout: Layout, budgets: Sequence[Budget]
-) -> tuple[Check, ...]:
+def plan_checks(run: Run, layout: Layout, budgets: Sequence[Budget]) -> tuple[Check, ...]:
     """
     Return the checks of a plan: light first, then cable.
 
     Parameters
     ----------
-    run, ground, layout
-        The run and its layout.
+    run
+        What was declared.
+    layout
+        Its layout.
     budgets
         Budgets of all circuits.
     """

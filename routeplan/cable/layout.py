@@ -95,7 +95,7 @@ def lay_cables(run: Run, ground: Ground, *, memo: Memo | None = None) -> tuple[L
 
 
 def _cable_of(run: Run, leg: Leg) -> Cable:
-    """Return the leg's cable, of the named make that claims the leg or the line, else the default."""
+    """Return the leg's cable, of the named make that claims leg or line, else the default."""
     claimed = [
         name for name, make in run.cables.items() if leg.name in make.legs or leg.cable == name
     ]
@@ -290,7 +290,7 @@ def _stored_at(bare: BareRuler, chain_mm: int) -> tuple[int, int]:
 
 def put_together(run: Run, ground: Ground, laid: Sequence[LaidCable]) -> Layout:
     """
-    Number sections, joints and reels in run order and add up the cost.
+    Return the layout: sections, joints and reels numbered in run order, the cost added up.
 
     Parameters
     ----------

@@ -1,4 +1,4 @@
-"""The three rulers of a cable: chain on the ground, sheath along the jacket, glass along the fibre."""
+"""The three rulers of a cable: ground chain, sheath along the jacket, glass along the fibre."""
 
 from __future__ import annotations
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections import defaultdict
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 
 from routeplan.cable.way import Spot, Way
 from routeplan.ground.model import Stretch
@@ -93,7 +94,7 @@ def _fewest(
     chosen: list[Spot] = []
     longest_mm = 0
     bounds = sorted({stretch.start_mm, *fixed, stretch.end_mm})
-    for begin, end in zip(bounds, bounds[1:], strict=False):
+    for begin, end in pairwise(bounds):
         between = [spot for spot in spots if begin <= spot.chain_mm <= end]
         added, gap_mm = _fewest_between(begin, end, between, every_mm=every_mm)
         chosen.extend(added)
@@ -132,7 +133,7 @@ def _fewest_between(
     while came[path[-1]] >= 0:
         path.append(came[path[-1]])
     path.reverse()
-    longest = max(at[b] - at[a] for a, b in zip(path, path[1:], strict=False))
+    longest = max(at[b] - at[a] for a, b in pairwise(path))
     return [spots[i - 1] for i in path[1:-1]], longest
 
 
@@ -152,7 +153,7 @@ def _gap_text(stretch: Stretch, longest_mm: int, every_mm: int) -> str:
 
 
 def _risers(way: Way, slack: Slack) -> Iterator[Step]:
-    for before, after in zip(way.stretches, way.stretches[1:], strict=False):
+    for before, after in pairwise(way.stretches):
         kinds = (before.placement, after.placement)
         if "existing" not in kinds and (kinds[0] == "aerial") != (kinds[1] == "aerial"):
             yield from _step(after.start_mm, slack.riser_m, "riser", " to ".join(kinds))

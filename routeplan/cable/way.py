@@ -5,6 +5,7 @@ from __future__ import annotations
 import zlib
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
+from itertools import pairwise
 
 import numpy as np
 
@@ -206,7 +207,7 @@ def _assumed_spots(way: Way, spacing_mm: int) -> list[Spot]:
     """Return spots that divide every gap longer than the spacing into the fewest equal parts."""
     fit = [0, *(spot.chain_mm for spot in way.spots if spot.fitness != "no"), way.length_mm]
     chains: list[int] = []
-    for begin, end in zip(fit, fit[1:], strict=False):
+    for begin, end in pairwise(fit):
         parts = -(-(end - begin) // spacing_mm)
         chains.extend(_shared_out(begin, end, parts, is_turned=way.is_turned))
     allowed = [at for at in chains if not _is_forbidden(way, at, _NO_ASSUMED)]

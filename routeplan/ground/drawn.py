@@ -167,7 +167,7 @@ def joined_drawn(parts: Sequence[Drawn]) -> Drawn:
     lonlats = [first.lonlat]
     for part in parts[1:]:
         turn = 360.0 * np.round((lonlats[-1][-1, 0] - part.lonlat[0, 0]) / 360.0)
-        lonlats.append(part.lonlat[1:] + [turn, 0.0])
+        lonlats.append(part.lonlat[1:] + np.array([turn, 0.0]))
     return Drawn(
         line=first.line,
         lonlat=np.concatenate(lonlats),

@@ -61,7 +61,7 @@ def join_lines(drawn: Sequence[Drawn], sites: Sequence[Place], *, joining: Joini
     _cut_at_ends(lines, drawn, ends, cluster=cluster, cuts=cuts, joining=joining)
     junctions = _junction_positions(ends, cluster)
     taken, problems, warnings = _take_sites(
-        lines, drawn, sites, ends=ends, cluster=cluster, joining=joining
+        lines, sites, ends=ends, cluster=cluster, joining=joining
     )
     named: dict[int, Place] = {}
     for place, where in taken:
@@ -142,7 +142,6 @@ def _cut_at_ends(
 
 def _take_sites(
     lines: LineIndex,
-    drawn: Sequence[Drawn],
     sites: Sequence[Place],
     *,
     ends: Floats,

@@ -48,17 +48,11 @@ def lay_ground(run: Run) -> Ground:
     network = join_lines(drawn, sites, joining=joining)
     groups = chains(network)
     nodes, numbers = _nodes(network, groups)
-    names = _leg_names(groups, [nodes[numbers[g[0].start]].name for g in groups],
-                       [nodes[numbers[g[-1].end]].name for g in groups])  # fmt: skip
+    ends = [(nodes[numbers[group[0].start]], nodes[numbers[group[-1].end]]) for group in groups]
+    names = _leg_names(groups, ends)
     legs = [
-        _leg(
-            run,
-            f"L{at}",
-            name,
-            pieces=group,
-            ends=(nodes[numbers[group[0].start]].id, nodes[numbers[group[-1].end]].id),
-        )  # fmt: skip
-        for at, (name, group) in enumerate(zip(names, groups, strict=True), start=1)
+        _leg(run, f"L{at}", name, pieces=group, ends=(start.id, end.id))
+        for at, (name, group, (start, end)) in enumerate(zip(names, groups, ends, strict=True), 1)
     ]
     points = [place for place in run.places if place.kind != "site"]
     legs, nodes, crossings, problems = _place_points(run, legs, nodes, points)
@@ -114,15 +108,15 @@ def _free_letters(taken: set[str]) -> Iterator[str]:
         count += 1
 
 
-def _leg_names(
-    groups: Sequence[Sequence[Piece]], starts: Sequence[str], ends: Sequence[str]
-) -> list[str]:
+def _leg_names(groups: Sequence[Sequence[Piece]], ends: Sequence[tuple[Node, Node]]) -> list[str]:
     """Return each leg's declared name, else its lines' common name, else "start - end"."""
     names = []
-    for group, start, end in zip(groups, starts, ends, strict=True):
+    for group, (start, end) in zip(groups, ends, strict=True):
         declared = group[0].drawn.line.leg
         common = {piece.drawn.line.name for piece in group}
-        name = declared or (common.pop() if len(common) == 1 else "") or f"{start} - {end}"
+        name = (
+            declared or (common.pop() if len(common) == 1 else "") or f"{start.name} - {end.name}"
+        )
         names.append(name)
     counts = Counter(names)
     seen: Counter[str] = Counter()

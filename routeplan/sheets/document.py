@@ -45,7 +45,7 @@ def plan_document(planned: Plan) -> dict[str, Json]:
         "totals": _totals(planned),
         "nodes": [row_of("nodes", node) for node in planned.ground.nodes],
         "legs": [_leg(planned, leg) for leg in planned.ground.legs],
-        "cables": [_cable(planned, laid) for laid in planned.laid],
+        "cables": [_cable(laid) for laid in planned.laid],
         "stations": list(station_rows(planned)),
         "sections": [_section(planned, section) for section in planned.layout.sections],
         "reels": list(_reels(planned)),
@@ -133,7 +133,7 @@ def _known(value: float) -> float | None:
     return value if math.isfinite(value) else None
 
 
-def _cable(planned: Plan, laid: LaidCable) -> Row:
+def _cable(laid: LaidCable) -> Row:
     cable = laid.way.cable
     return shaped(
         "cables",

@@ -110,7 +110,10 @@ def _leg_rows(
         "lon": (np.round(lonlat[:, 0], 9) + 0.0).tolist(),
         "lat": (np.round(lonlat[:, 1], 9) + 0.0).tolist(),
         "height_m": [
-            height if height == height else None for height in np.round(heights, 3).tolist()
+            None if unknown else height
+            for height, unknown in zip(
+                np.round(heights, 3).tolist(), np.isnan(heights).tolist(), strict=True
+            )
         ],
     }
     keys = [column.key for column in table("stations").columns]

@@ -99,15 +99,11 @@ def _light_lines(planned: Plan) -> list[str]:
     if not planned.circuits:
         return ["no circuit"]
     head = ["circuit", "nm", "way", "nominal", "worst", "in hand", "attenuator", "verdict"]
-    rows = [head]
-    for circuit in planned.circuits:
-        for budget in circuit.budgets:
-            rows.append(_budget_row(planned, budget))
-    lines = _table(rows)
+    budgets = [budget for circuit in planned.circuits for budget in circuit.budgets]
+    lines = _table([head, *(_budget_row(planned, budget) for budget in budgets)])
     reasons = dict.fromkeys(
         f"{budget.circuit}: {reason}"
-        for circuit in planned.circuits
-        for budget in circuit.budgets
+        for budget in budgets
         if budget.verdict != "fits"
         for reason in budget.reasons
     )

@@ -19,7 +19,7 @@ __all__ = [
     "table",
 ]
 
-Json: TypeAlias = None | bool | int | float | str | list["Json"] | dict[str, "Json"]
+Json: TypeAlias = bool | int | float | str | list["Json"] | dict[str, "Json"] | None
 Row: TypeAlias = dict[str, Json]
 Kind = Literal["text", "number", "integer", "flag", "texts", "rows", "row", "points", "numbers"]
 

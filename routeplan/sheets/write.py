@@ -1,4 +1,4 @@
-"""The sheets of a plan, written so that nothing of anybody else's is touched and nothing half done."""
+"""The sheets of a plan, written so that nothing is half done and nobody else's file touched."""
 
 from __future__ import annotations
 
