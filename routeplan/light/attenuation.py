@@ -120,6 +120,9 @@ def water_peak_ratio(wavelength_nm: float | Floats) -> float | Floats:
     r"""
     Return the shape of the water peak: 1 at its top, a Lorentzian line about 1383 nm.
 
+    The line is lowered so that it ends 60 nm from its top: there it no longer matters, and the
+    floor can be told from points beyond.
+
     Parameters
     ----------
     wavelength_nm
@@ -136,13 +139,14 @@ def water_peak_ratio(wavelength_nm: float | Floats) -> float | Floats:
 
     Examples
     --------
-    >>> water_peak_ratio(1383.0), water_peak_ratio(1399.0)
-    (1.0, 0.5)
+    >>> round(water_peak_ratio(1399.0), 3), water_peak_ratio(1310.0)
+    (0.464, 0.0)
     """
-    offset = (np.asarray(wavelength_nm) - constant("water_peak_nm")) / constant(
-        "water_half_width_nm"
-    )
-    return _as_given(1.0 / (1.0 + offset * offset), wavelength_nm)
+    half_nm, reach_nm = constant("water_half_width_nm"), constant("water_reach_nm")
+    offset = (np.asarray(wavelength_nm) - constant("water_peak_nm")) / half_nm
+    end = 1.0 / (1.0 + (reach_nm / half_nm) ** 2)
+    ratio = (1.0 / (1.0 + offset * offset) - end) / (1.0 - end)
+    return _as_given(np.maximum(ratio, 0.0), wavelength_nm)
 
 
 @overload
@@ -153,9 +157,10 @@ def attenuation_db_per_km(wavelength_nm: float | Floats, curve: LossCurve) -> fl
     r"""
     Return the attenuation that a curve gives: Rayleigh floor, water peak and infrared edge.
 
-    .. math:: \alpha = a + b / \lambda^4 + h / (1 + ((\lambda - 1383) / 16)^2) + \alpha_{IR}
+    .. math:: \alpha = a + b / \lambda^4 + h \, w(\lambda) + \alpha_{IR}
 
-    with *a* and *b* such that the curve passes through its points.
+    with the shape *w* of the water peak, and *a*, *b* and *h* such that the curve passes through
+    its points.
 
     Parameters
     ----------

@@ -67,6 +67,7 @@ class Optic:
     penalty_db: float = 0.0
     dispersion_reach_m: float | None = None
     dispersion_max_ps_per_nm: float | None = None
+    line_width_nm: float | None = None
     return_loss_min_db: float | None = None
     extinction_ratio_min_db: float | None = None
     reach_m: float | None = None

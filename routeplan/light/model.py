@@ -6,12 +6,15 @@ from dataclasses import dataclass
 from typing import Literal, TypeAlias
 
 __all__ = [
+    "Bend",
     "Budget",
     "BudgetLine",
     "Direction",
     "ExistingSpan",
     "Glass",
     "Mating",
+    "Part",
+    "PartLoss",
     "Path",
     "SpliceStep",
     "Step",
@@ -20,6 +23,16 @@ __all__ = [
 
 Direction = Literal["from-to", "to-from"]
 Verdict = Literal["fits", "fails", "unknown"]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class PartLoss:
+    """What one part loses, where that is known of itself and not from practice."""
+
+    mean_db: float
+    sigma_db: float
+    limit_db: float
+    source: str
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -39,13 +52,36 @@ class SpliceStep:
 
     where: str
     is_pigtail: bool = False
+    loss: PartLoss | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Mating:
-    """A mated connector pair at a panel."""
+    """A mated connector pair at a panel, and what it reflects where that is known."""
 
     where: str
+    loss: PartLoss | None = None
+    return_loss_db: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Part:
+    """Something in the way that loses light: a multiplexer, a splitter, an attenuator."""
+
+    where: str
+    item: str
+    loss: PartLoss
+    return_loss_db: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Bend:
+    """Fibre wound with a radius, so many turns together."""
+
+    where: str
+    fibre_type: str
+    radius_mm: float
+    turns: float
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -58,7 +94,7 @@ class ExistingSpan:
     loss_db: float | None
 
 
-Step: TypeAlias = Glass | SpliceStep | Mating | ExistingSpan
+Step: TypeAlias = Glass | SpliceStep | Mating | ExistingSpan | Part | Bend
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -6,7 +6,6 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from small_paths import measured
 
 from routeplan.errors import InputError, RangeError
 from routeplan.light.attenuation import (
@@ -19,6 +18,7 @@ from routeplan.light.attenuation import (
     water_peak_ratio,
 )
 from routeplan.light.fibres import fibre_names, find_fibre
+from tests.light.small_paths import measured
 
 # Which curves the recommendations' ceilings were made for.
 LOW_WATER_PEAK = ("G.652.D", "G.657.A1", "G.657.A2", "G.657.B3")
@@ -123,7 +123,10 @@ def test_ordinary_water_peak_is_narrow_and_where_it_should_be() -> None:
     top = attenuation_db_per_km(1383.0, curve) - attenuation_db_per_km(1383.0, dry)
     half = attenuation_db_per_km(1399.0, curve) - attenuation_db_per_km(1399.0, dry)
     assert half / top == pytest.approx(0.5, abs=0.04)
-    assert water_peak_ratio(1383.0 - 16.0) == 0.5
+    assert (
+        water_peak_ratio(1383.0 - 16.0) == water_peak_ratio(1399.0) == pytest.approx(0.46, abs=0.01)
+    )
+    assert water_peak_ratio(1310.0) == water_peak_ratio(1490.0) == 0.0
 
 
 def test_arrays_give_what_floats_give() -> None:

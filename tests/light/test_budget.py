@@ -7,11 +7,11 @@ from dataclasses import replace
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from small_paths import example, measured, optic, path, practice
 
 from routeplan.light.budget import circuit_budget, circuit_verdict
 from routeplan.light.interfaces import find_interface
 from routeplan.light.model import Budget, ExistingSpan, Mating, Path
+from tests.light.small_paths import example, measured, optic, path, practice
 
 ER = find_interface("10GBASE-ER", {}).at_from
 LENGTHS = st.lists(st.floats(1.0, 6000.0), min_size=1, max_size=12)
@@ -66,7 +66,8 @@ def test_fibre_line_is_typical_sigma_and_maximum_of_its_glass() -> None:
     """4 and 3 km of G.652.D at 1550 nm: 0.19 x 7, 0.010 x 5, 0.22 x 7."""
     line = circuit_budget(path([4000.0, 3000.0]), 1550.0, practice=practice()).lines[0]
     assert (line.count, line.each_db, line.sigma_db, line.limit_db) == (1, 1.33, 0.05, 1.54)
-    assert "attenuation" in line.source and "1550" in line.source
+    assert "attenuation" in line.source
+    assert "1550" in line.source
 
 
 @settings(max_examples=50, deadline=None)
@@ -118,7 +119,8 @@ def test_a_connector_more_never_raises_the_margin(lengths_m: list[float]) -> Non
     """Adding a mated pair lowers both margins, or leaves them."""
     before = circuit_budget(path(lengths_m), 1550.0, practice=practice(), optic=ER)
     after = circuit_budget(path(lengths_m, matings=3), 1550.0, practice=practice(), optic=ER)
-    assert before.margin_db is not None and after.margin_db is not None
+    assert before.margin_db is not None
+    assert after.margin_db is not None
     assert after.margin_db < before.margin_db
     assert after.statistical_db >= before.statistical_db
 
@@ -149,14 +151,16 @@ def test_verdict_is_on_the_loss_that_practice_names() -> None:
     worst = circuit_budget(path([2000.0] * 2), 1310.0, practice=practice(), optic=link)
     likely = circuit_budget(path([2000.0] * 2), 1310.0, practice=likely_practice, optic=link)
     assert worst.margin_db == likely.margin_db == -0.1
-    assert likely.statistical_margin_db is not None and likely.statistical_margin_db > 0.0
+    assert likely.statistical_margin_db is not None
+    assert likely.statistical_margin_db > 0.0
     assert (worst.verdict, likely.verdict) == ("fails", "fits")
 
 
 def test_too_strong_light_is_mended_by_an_attenuator() -> None:
     """10GBASE-ER over 2 km is too strong; a venue's margin leaves room for 5 dB."""
     budget = circuit_budget(path([2000.0]), 1550.0, practice=practice(margin_db=1.0), optic=ER)
-    assert budget.overload_db is not None and budget.overload_db > 3.0
+    assert budget.overload_db is not None
+    assert budget.overload_db > 3.0
     assert budget.attenuator_db == 5.0
     assert budget.verdict == "fits"
     assert any("5 dB attenuator" in reason for reason in budget.reasons)
@@ -165,7 +169,8 @@ def test_too_strong_light_is_mended_by_an_attenuator() -> None:
 def test_too_strong_light_fails_where_the_attenuator_eats_the_margin() -> None:
     """With 3 dB kept in hand, 8 km of 10GBASE-ER have no room for the attenuator they need."""
     budget = circuit_budget(path([8200.0]), 1550.0, practice=practice(), optic=ER)
-    assert budget.margin_db is not None and budget.margin_db > 0.0
+    assert budget.margin_db is not None
+    assert budget.margin_db > 0.0
     assert budget.attenuator_db == 5.0
     assert budget.verdict == "fails"
 
@@ -192,7 +197,8 @@ def test_launch_without_sensitivity_is_unknown() -> None:
     budget = circuit_budget(
         path([5000.0]), 1310.0, practice=practice(), optic=optic(tx_min_dbm=-3.0)
     )
-    assert budget.verdict == "unknown" and budget.available_db is None
+    assert budget.verdict == "unknown"
+    assert budget.available_db is None
 
 
 def test_dispersion_beyond_the_interface_fails() -> None:
@@ -216,7 +222,8 @@ def test_a_lane_that_fails_fails_the_interface() -> None:
     link = find_interface("40GBASE-LR4", {}).at_from
     way = path([2000.0] * 5)
     roomy = circuit_budget(way, 1331.0, practice=practice(margin_db=0.0), optic=link)
-    assert roomy.margin_db is not None and roomy.verdict == "fits"
+    assert roomy.margin_db is not None
+    assert roomy.verdict == "fits"
     tight = practice(margin_db=roomy.margin_db)
     budget = circuit_budget(way, 1331.0, practice=tight, optic=link)
     assert budget.margin_db == 0.0

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from small_paths import example, published
 
 from routeplan.light.dispersion import (
     dispersion_range_ps_per_nm,
@@ -13,6 +12,7 @@ from routeplan.light.dispersion import (
     sellmeier_ps_per_nm_km,
 )
 from routeplan.light.fibres import fibre_names, find_fibre
+from tests.light.small_paths import example, published
 
 
 @pytest.mark.parametrize(
@@ -35,7 +35,8 @@ def test_no_fibre_inside_the_box_lies_outside_the_envelope(wavelength_nm: float)
         for zero in np.linspace(1300.0, 1324.0, 25)
         for slope in np.linspace(0.073, 0.092, 20)
     ]
-    assert low == pytest.approx(min(inside)) and high == pytest.approx(max(inside))
+    assert low == pytest.approx(min(inside))
+    assert high == pytest.approx(max(inside))
 
 
 def test_example_of_a_spread_over_100_km() -> None:

@@ -7,6 +7,7 @@ import pytest
 from routeplan.light.fibres import check_fibre_type, fibre_names, find_fibre
 
 EXPECTED = {
+    "G.652.B",
     "G.652.D",
     "G.654.E",
     "G.655",
@@ -25,7 +26,8 @@ def test_every_type_is_there_and_complete() -> None:
     assert set(fibre_names()) == EXPECTED
     for name in fibre_names():
         fibre = find_fibre(name)
-        assert fibre.attenuation and fibre.ceilings
+        assert fibre.attenuation
+        assert fibre.ceilings
         box = (fibre.zero_dispersion_min_nm, fibre.slope_max_ps_per_nm2_km)
         assert None not in box or fibre.dispersion_bounds
 

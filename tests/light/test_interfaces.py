@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import pytest
-from small_paths import optic
 
 from routeplan.errors import InputError
 from routeplan.light.interfaces import (
@@ -20,6 +19,7 @@ from routeplan.light.interfaces import (
 )
 from routeplan.run.practice import Interface
 from routeplan.tables import load_rows
+from tests.light.small_paths import optic
 
 ROWS: tuple[Optic, ...] = load_rows("interfaces", Optic)
 ETHERNET = [row for row in ROWS if row.family == "Ethernet"]
@@ -35,7 +35,8 @@ def own(**values: object) -> Interface:
 @pytest.mark.parametrize("row", [r for r in ETHERNET if r.basis == "channel"], ids=lambda r: r.name)
 def test_least_receive_power_is_launch_less_channel_loss(row: Optic) -> None:
     """RX minimum = TX minimum - channel loss - what the class sets aside, but for 10GBASE-ER."""
-    assert row.tx_min_dbm is not None and row.channel_loss_db is not None
+    assert row.tx_min_dbm is not None
+    assert row.channel_loss_db is not None
     expected = row.tx_min_dbm - row.channel_loss_db - row.penalty_db - SLACK_DB.get(row.name, 0.0)
     assert row.rx_sensitivity_dbm == pytest.approx(expected, abs=1e-9)
 
@@ -43,7 +44,8 @@ def test_least_receive_power_is_launch_less_channel_loss(row: Optic) -> None:
 @pytest.mark.parametrize("row", ETHERNET, ids=lambda r: r.name)
 def test_least_channel_loss_is_highest_launch_less_overload(row: Optic) -> None:
     """What must be lost at least is what overload asks for; classes that ask nothing need none."""
-    assert row.tx_max_dbm is not None and row.rx_overload_dbm is not None
+    assert row.tx_max_dbm is not None
+    assert row.rx_overload_dbm is not None
     needed = max(0.0, row.tx_max_dbm - row.rx_overload_dbm)
     stated = row.channel_loss_min_db
     assert (needed if stated is None else stated) == pytest.approx(needed, abs=1e-9) or (
@@ -55,7 +57,8 @@ def test_least_channel_loss_is_highest_launch_less_overload(row: Optic) -> None:
 def test_rows_are_sound(row: Optic) -> None:
     """Bands rise and do not overlap, nominal wavelengths lie in them, powers are in order."""
     edges = [edge for band in row.bands_nm for edge in band]
-    assert edges == sorted(edges) and 1260.0 <= edges[0] <= edges[-1] <= 1625.0
+    assert edges == sorted(edges)
+    assert 1260.0 <= edges[0] <= edges[-1] <= 1625.0
     assert len(row.wavelengths_nm) == len(row.bands_nm)
     for nm, (low, high) in zip(row.wavelengths_nm, row.bands_nm, strict=True):
         assert low <= nm <= high
@@ -151,4 +154,5 @@ def test_names_are_unique_and_hold_the_pair() -> None:
     """Every row and the common name of the one pair are known, each once."""
     names = interface_names()
     assert len(set(names)) == len(names)
-    assert "1000BASE-BX10" in names and "10GBASE-ER" in names
+    assert "1000BASE-BX10" in names
+    assert "10GBASE-ER" in names

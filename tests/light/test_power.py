@@ -6,7 +6,6 @@ import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
-from small_paths import example
 
 from routeplan.light.model import BudgetLine
 from routeplan.light.power import (
@@ -17,6 +16,7 @@ from routeplan.light.power import (
     printed_db,
     total_loss,
 )
+from tests.light.small_paths import example
 
 
 def line(count: int, mean_db: float, sigma_db: float = 0.0, limit_db: float = 99.0) -> BudgetLine:
