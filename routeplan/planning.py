@@ -10,6 +10,7 @@ from routeplan.cable.fibres import assign_fibres
 from routeplan.cable.layout import LaidCable, fewer_joints, lay_cables, put_together
 from routeplan.cable.model import FibreUse, Layout, Splice
 from routeplan.cable.schedule import joint_splice_count, splice_rows
+from routeplan.cable.way import existing_name
 from routeplan.errors import InputError, Problem
 from routeplan.ground.legs import lay_ground
 from routeplan.ground.model import Ground
@@ -225,7 +226,7 @@ def _tracks(laid: Sequence[LaidCable], layout: Layout) -> Iterator[CableTrack]:
             (
                 stretch.start_mm,
                 ExistingSpan(
-                    where=f"{own.name}, existing span at {stretch.start_mm / 1000:.0f} m",
+                    where=existing_name(cable.way, stretch),
                     fibre_type=own.make.fibre_type,
                     glass_m=(stretch.end_mm - stretch.start_mm) / 1000
                     if stretch.existing_m is None

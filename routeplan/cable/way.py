@@ -15,7 +15,7 @@ from routeplan.ground.model import Leg, Stretch
 from routeplan.run.model import Floats, JointFitness, Place
 from routeplan.run.practice import Practice
 
-__all__ = ["ChainCrossing", "Spot", "Way", "cable_way", "leg_at", "positions_on"]
+__all__ = ["ChainCrossing", "Spot", "Way", "cable_way", "existing_name", "leg_at", "positions_on"]
 
 _NO_ASSUMED = frozenset({"bridge", "water", "indoor", "existing"})
 _NO_JOINT = frozenset({"bridge", "water", "existing"})
@@ -245,6 +245,11 @@ def _assumed(way: Way, chains: Sequence[int], kind: str) -> list[Spot]:
         )
         for at, (lon, lat) in zip(chains, np.round(lonlat, 7).tolist(), strict=True)
     ]
+
+
+def existing_name(way: Way, stretch: Stretch) -> str:
+    """Return what an existing span is called on budgets: its cable and where it begins."""
+    return f"{way.cable.name}, existing span at {stretch.start_mm / 1000:.0f} m"
 
 
 def leg_at(way: Way, chain_mm: int) -> tuple[Leg, int]:

@@ -14,6 +14,7 @@ from routeplan.light.model import Budget
 from routeplan.planning import CircuitPlan, Plan, assumptions, one_fewer, splices
 from routeplan.sheets.bill import bill_rows, pigtail_counts
 from routeplan.sheets.cautions import cautions_for
+from routeplan.sheets.power import power_rows
 from routeplan.sheets.stations import station_rows
 from routeplan.sheets.tables import Json, Row, row_of, shaped
 from routeplan.units import amount_from_cents, m_from_mm
@@ -260,6 +261,7 @@ def _circuit(planned: Plan, circuit: CircuitPlan) -> Row:
         delay_us=circuit.budgets[0].delay_ns / 1000,
         verdict=circuit.verdict,
         budgets=[_budget(budget) for budget in circuit.budgets],
+        power=list(power_rows(planned, circuit)),
     )
 
 

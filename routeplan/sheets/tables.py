@@ -366,6 +366,25 @@ _TABLES = (
             _number("delay_us", "One-way delay at its first wavelength.", "us", 3),
             _text("verdict", "fits, fails or unknown."),
             _rows("budgets", "budgets", "By wavelength and direction."),
+            Column(
+                key="power",
+                kind="rows",
+                of="power",
+                text="Nominal loss along it.",
+                is_listed=False,
+            ),
+        ),
+    ),
+    Table(
+        name="power",
+        title="Loss along circuits",
+        path=("circuits", "power"),
+        carried=(("circuit", "name"),),
+        columns=(
+            _text("leg", "Leg."),
+            _number("wavelength_nm", "Wavelength.", "nm", 3),
+            _metres("ground_m", "On the ground from the leg's start."),
+            _decibels("loss_db", "Lost so far, nominal."),
         ),
     ),
     Table(
