@@ -1,0 +1,367 @@
+"""Write the reference pages from the code again: python docs/build_reference.py [--check]."""
+
+from __future__ import annotations
+
+import argparse
+import itertools
+import json
+from collections.abc import Callable, Iterable, Iterator, Sequence
+from pathlib import Path
+
+from routeplan.cli import make_parser
+from routeplan.run.names import colour_codes, fibre_types, interface_classes
+from routeplan.run.reference import KeyRow, key_rows, run_file_schema, toml_value
+from routeplan.sheets.tables import TABLES, Column, Table
+from routeplan.sheets.write import LIST_NAME, SHEET_NAMES
+
+__all__ = ["PAGES", "commands_page", "main", "run_file_page", "run_file_schema_text", "sheets_page"]
+
+_MADE = "<!-- Made from the code by docs/build_reference.py: change the code, then run it. -->"
+
+_SECTIONS = {  # heading of each section of a run file, and what a reader has to know first
+    "": ("Top of the file", ""),
+    "joining": (
+        "`[joining]`",
+        "How lines become legs and points find them: [lengths](lengths.md).",
+    ),
+    "cable": (
+        "`[cable]`",
+        "The default cable. `measured` is a list of tables, for example "
+        "`measured = [ { wavelength_nm = 1310, attenuation_db_per_km = 0.33 } ]`: attenuation of the "
+        "delivered cable, taken as typical and as maximum; `sigma_db_per_km` is 0 unless given.",
+    ),
+    "cables.NAME": (
+        "`[cables.NAME]`",
+        "Another cable, named NAME, for the legs in `legs` or for lines whose `cable` is NAME. Keys "
+        "left out are those of `[cable]`. One leg for each cable in this version.",
+    ),
+    "slack": ("`[slack]`", "What each figure does: [slack and rulers](slack_and_rulers.md)."),
+    "reels": ("`[reels]`", "How they are chosen: [reels and joints](reels_and_joints.md)."),
+    "joints": ("`[joints]`", ""),
+    "costs": (
+        "`[costs]`",
+        "The default prices are invented, so that a first plan can weigh reels against joints. Every "
+        "sheet says so. Replace them with your own before an order is placed.",
+    ),
+    "loss": ("`[loss]`", "How the figures are added up: [light](light.md)."),
+    "interface.NAME": (
+        "`[interface.NAME]`",
+        "An optical interface of your own, for circuits to name. Give its light as `wavelength_nm` or "
+        "as `wavelength_min_nm` and `wavelength_max_nm`; what may be lost as `channel_loss_db`, or as "
+        "`tx_min_dbm` and `rx_sensitivity_dbm`.",
+    ),
+    "circuit": (
+        "`[[circuit]]`",
+        "One light path; the heading stands once for each. Left out `wavelengths_nm` are those of the "
+        "interface, where one is named.",
+    ),
+}
+
+_RUN_FILE_HEAD = """\
+# The run file
+
+A TOML file, usually `run.toml` beside its geometry. Every key is optional: `routeplan new GEOMETRY`
+writes a file with all of them commented out. A key that is not known is an error that names the
+nearest known one. All problems of a file are reported together.
+
+```toml
+title = "Studio to hill"
+geometry = ["route.geojson", "survey.gpkg|poles"]   # file|layer takes one layer
+
+[cable]
+fibre_count = 48
+
+[[circuit]]
+name = "Programme"
+from = "Studio"
+to = "Hill"
+interface = "10GBASE-ER"
+```
+
+Names end in their unit: `_m` metres, `_db` decibels, `_nm` nanometres, `_ratio` a share (0.02 is
+2 %). Files are SI whatever `units` says. Keys by placement take a table, for example
+`undulation_ratio = { aerial = 0.005, duct = 0.012 }`; for `loop_m` and `undulation_ratio` placements
+left out keep their default, any other table that is given replaces the whole default.
+
+`purpose` chooses between two sets of defaults and nothing else; a default for a venue run is shown
+where it differs. An editor that reads JSON Schema can take [run_file.schema.json](run_file.schema.json).
+"""
+
+_NOT_YET = """\
+## Not in this version
+
+`terrain`, `reels.stock`, `"stock"` in `reels.buy`, `interface = "any"` and more than one leg in
+`cables.NAME.legs` are refused, not ignored.
+"""
+
+_COMMANDS_HEAD = """\
+# Commands
+
+`routeplan COMMAND ...`, or `python -m routeplan COMMAND ...`. Nothing is sent over the network.
+"""
+
+_COMMANDS_TAIL = """\
+## Exit codes
+
+| code | meaning |
+|---|---|
+| 0 | nothing fails (`unknown` is not failing) |
+| 1 | planned and all sheets written, but some check fails: see `checks.csv` |
+| 2 | the input is wrong, or no layout is possible; one line for each problem on stderr, nothing written |
+
+## What `--json` prints
+
+`plan`: what `plan.json` holds ([sheets](sheets.md)). `check`: `problems`, which is empty, and
+`warnings` with `where` and `message`. `tables`: title, source, confidence and rows. With exit code 2:
+`{"problems": [{"where", "what", "value", "limit", "remedy"}]}`. Messages for people go to stderr.
+
+## Where `plan` writes
+
+`--out DIR`, or else `sheets/` beside the run file, or `STEM_sheets/` beside a bare geometry file
+STEM.*. Only files that an earlier `plan` wrote there are replaced or, when they are no longer made,
+removed: their names and SHA-256 sums stand in `sheets.sha256`. If a file in the way is not one of
+them, or was changed since, nothing is written and the file is named. Sheets are made in a folder beside
+DIR first and moved in when all are done, `plan.json` last.
+"""
+
+_SHEETS_HEAD = """\
+# Sheets
+
+What `routeplan plan` writes. Same input, same bytes, on any day and in any folder.
+
+| file | what |
+|---|---|
+"""
+
+_SHEET_TEXTS = {
+    "plan.json": "everything, for programs",
+    "map.html": "the map: one file that opens without a network",
+    "report.html": "the report, made to be printed",
+    LIST_NAME: "names and SHA-256 sums of these files; `sha256sum -c sheets.sha256` checks them",
+}
+
+_SHEETS_MIDDLE = """\
+CSV files are UTF-8, separated by commas, with a point for decimals. Their heads are the keys below, with
+the unit behind where the key itself does not end in it. Rows nested in one column become columns of
+their own (`in_fibre`, `out_fibre`). Text that starts with = + - @, a tab or a return gets an
+apostrophe in front, so that no spreadsheet takes it for a formula; numbers never do.
+
+Lengths are whole millimetres written in metres, and totals are their exact sums. Decibels are rounded to
+0.001, delays to a nanosecond, longitude and latitude to nine decimals. What cannot be known is
+`null`, an empty cell in a CSV. The meaning of each word is in the [glossary](glossary.md).
+
+## The head of plan.json
+
+| key | what |
+|---|---|
+"""
+
+_HEAD_KEYS = {
+    "schema": "1: the version of this layout",
+    "title": "title of the run",
+    "purpose": "link or venue",
+    "verdict": "fits, fails or unknown: the worst of all checks",
+    "units": "metric or us: what people are shown; this file is SI",
+    "currency": "currency of all costs, as the run file names it",
+    "fibres_per_tray": "splices on a tray",
+    "digest": "SHA-256 of all input files, one after the other",
+}
+
+
+def run_file_page() -> str:
+    """Return the text of docs/run_file.md."""
+    rows = key_rows()
+    parts = [_MADE, _RUN_FILE_HEAD]
+    for section, own in itertools.groupby(rows, key=lambda row: row.section):
+        heading, text = _SECTIONS[section]
+        parts += [f"## {heading}\n", *([text + "\n"] if text else []), _key_table(own)]
+    parts += [_names_part(), _NOT_YET, "## Defaults, and why\n", _default_table(rows)]
+    return "\n".join(parts)
+
+
+def _key_table(rows: Iterable[KeyRow]) -> str:
+    head = ("key", "what", "type", "unit", "limits", "default", "for a venue")
+    return _table(head, map(_key_cells, rows))
+
+
+def _key_cells(row: KeyRow) -> tuple[str, ...]:
+    is_named_cable = row.section.startswith("cables")
+    return (
+        f"`{row.key}`",
+        row.description,
+        row.type,
+        row.unit.removeprefix("-"),
+        row.limits.replace("1e+06", "1 000 000").replace("1e+09", "1 000 000 000"),
+        "" if is_named_cable else _default(row.default),
+        _default(row.venue),
+    )
+
+
+def _default(value: object) -> str:
+    return "" if value is None else f"`{toml_value(value)}`"  # type: ignore[arg-type]
+
+
+def _names_part() -> str:
+    lines = [
+        "## Names the file can use\n",
+        f"- `cable.fibre_type`: {_listed(fibre_types())}.",
+        f"- `cable.colour_code`: {_listed(colour_codes())}.",
+        f"- `circuit.interface`: one of `[interface.NAME]`, or {_listed(interface_classes())}.",
+        "\n`routeplan tables fibres`, `tables colours` and `tables interfaces` show them with sources.\n",
+    ]
+    return "\n".join(lines)
+
+
+def _listed(names: Iterable[str]) -> str:
+    return ", ".join(f"`{name}`" for name in names)
+
+
+def _default_table(rows: Sequence[KeyRow]) -> str:
+    cells = (
+        (
+            f"`{r.name}`",
+            _default(r.default),
+            _default(r.venue),
+            r.unit.strip("-"),
+            r.source,
+            r.reason,
+        )
+        for r in rows
+        if r.default is not None and not r.section.startswith("cables")
+    )
+    return _table(("key", "link", "venue", "unit", "source", "why"), cells)
+
+
+def commands_page() -> str:
+    """Return the text of docs/commands.md."""
+    parser = make_parser()
+    parts = [_MADE, _COMMANDS_HEAD, _argument_table(_actions(parser))]
+    for action in _actions(parser):
+        if not isinstance(action.choices, dict):
+            continue
+        helps = {choice.dest: choice.help for choice in action._get_subactions()}
+        for name, command in action.choices.items():
+            parts.append(f"## `{_usage(name, command)}`\n")
+            parts.append(f"{_sentence(helps.get(name) or '')}\n")
+            parts.append(_argument_table(_actions(command)))
+    return "\n".join([*parts, _COMMANDS_TAIL])
+
+
+def _actions(parser: argparse.ArgumentParser) -> list[argparse.Action]:
+    return [a for a in parser._actions if not isinstance(a, argparse._HelpAction)]
+
+
+def _usage(name: str, command: argparse.ArgumentParser) -> str:
+    words = [f"routeplan {name}"]
+    for action in _actions(command):
+        if action.option_strings:
+            words.append(f"[{_label(action)}]")
+        else:
+            words.append(f"[{_label(action)}]" if action.nargs == "?" else _label(action))
+    return " ".join(words)
+
+
+def _label(action: argparse.Action) -> str:
+    value = str(action.metavar or action.dest.upper())
+    if not action.option_strings:
+        return value
+    return ", ".join(action.option_strings) + (f" {value}" if action.nargs != 0 else "")
+
+
+def _argument_table(actions: Iterable[argparse.Action]) -> str:
+    cells = ((f"`{_label(a)}`", _help(a)) for a in actions if not isinstance(a.choices, dict))
+    return _table(("argument", "what"), cells)
+
+
+def _help(action: argparse.Action) -> str:
+    # The parser's own words for --version differ between versions of Python.
+    is_version = isinstance(action, argparse._VersionAction)
+    return "Print the version." if is_version else _sentence(action.help or "")
+
+
+def _sentence(text: str) -> str:
+    return f"{text[:1].upper()}{text[1:]}."
+
+
+def sheets_page() -> str:
+    """Return the text of docs/sheets.md."""
+    csv_texts = {entry.csv: entry.title.lower() for entry in TABLES.values() if entry.csv}
+    texts = {**csv_texts, **_SHEET_TEXTS}
+    files = "".join(f"| `{name}` | {texts[name]} |\n" for name in (*SHEET_NAMES, LIST_NAME))
+    head = "".join(f"| `{key}` | {text} |\n" for key, text in _HEAD_KEYS.items())
+    tables = (_sheet_part(entry) for entry in TABLES.values())
+    return "\n".join([_MADE, _SHEETS_HEAD + files, _SHEETS_MIDDLE + head, *tables])
+
+
+def _sheet_part(entry: Table) -> str:
+    where = f"`{'.'.join(entry.path)}`" if entry.path else "inside rows of other tables"
+    line = f"In `plan.json`: {where}." + (f" As CSV: `{entry.csv}`." if entry.csv else "")
+    if entry.csv and entry.carried:
+        line += f" The CSV begins with {_listed(key for key, _ in entry.carried)}."
+    head = ("column", "kind", "unit", "decimals", "what")
+    return f"## {entry.title}\n\n{line}\n\n" + _table(head, map(_column_cells, entry.columns))
+
+
+def _column_cells(column: Column) -> tuple[str, ...]:
+    kind = {
+        "rows": f"list of {TABLES[column.of].title.lower()}" if column.of else "",
+        "row": TABLES[column.of].title.lower() if column.of else "",
+        "flag": "true or false",
+        "texts": "list of text",
+        "points": "list of points",
+        "numbers": "list of numbers",
+    }.get(column.kind, column.kind)
+    digits = "" if column.digits is None else str(column.digits)
+    null = " Null where it cannot be known or does not apply." if column.may_be_null else ""
+    unlisted = "" if column.is_listed else " In `plan.json` only."
+    return (f"`{column.key}`", kind, column.unit, digits, column.text + null + unlisted)
+
+
+def run_file_schema_text() -> str:
+    """Return the text of docs/run_file.schema.json."""
+    return json.dumps(run_file_schema(), ensure_ascii=False, indent=1) + "\n"
+
+
+def _table(head: Sequence[str], rows: Iterable[Sequence[str]]) -> str:
+    """Return a Markdown table without the columns that are empty in every row."""
+    body = [tuple(cell.replace("|", "\\|") for cell in row) for row in rows]
+    kept = [k for k in range(len(head)) if any(row[k] for row in body)]
+    return "".join(f"| {' | '.join(line)} |\n" for line in _lines(head, body, kept))
+
+
+def _lines(
+    head: Sequence[str], body: Iterable[Sequence[str]], kept: Sequence[int]
+) -> Iterator[list[str]]:
+    yield [head[k] for k in kept]
+    yield ["---" for _ in kept]
+    for row in body:
+        yield [row[k] for k in kept]
+
+
+PAGES: dict[str, Callable[[], str]] = {
+    "run_file.md": run_file_page,
+    "run_file.schema.json": run_file_schema_text,
+    "commands.md": commands_page,
+    "sheets.md": sheets_page,
+}
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    """Write the pages that changed, or with --check only name them; 1 if --check names any."""
+    parser = argparse.ArgumentParser(description=__doc__)
+    parser.add_argument("--check", action="store_true", help="write nothing, name what is stale")
+    check = parser.parse_args(arguments).check
+    stale = []
+    for name, make in PAGES.items():
+        path = Path(__file__).parent / name
+        text = make()
+        if not path.is_file() or path.read_text("utf-8") != text:
+            stale.append(name)
+            if not check:
+                path.write_text(text, "utf-8", newline="\n")
+    print("\n".join(f"{'stale' if check else 'wrote'} {name}" for name in stale) or "all fresh")
+    return 1 if check and stale else 0
+
+
+if __name__ == "__main__":
+    raise SystemExit(main())
