@@ -84,6 +84,8 @@ def _all_xy(layer: Layer) -> Floats:
 
 
 def _finite(layer: Layer, trouble: Trouble) -> Layer:
+    if not layer.shapes or _is_finite(layer):
+        return layer
     good = []
     for shape in layer.shapes:
         bad = ~np.isfinite(shape.xy).all(axis=1)
@@ -99,6 +101,14 @@ def _finite(layer: Layer, trouble: Trouble) -> Layer:
         else:
             good.append(shape)
     return replace(layer, shapes=good)
+
+
+def _is_finite(layer: Layer) -> bool:
+    heights = [shape.z for shape in layer.shapes if shape.z is not None]
+    return bool(
+        np.isfinite(_all_xy(layer)).all()
+        and not (heights and np.isinf(np.concatenate(heights)).any())
+    )
 
 
 def _without_repeats(shape: Shape) -> Shape:

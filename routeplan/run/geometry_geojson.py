@@ -281,5 +281,7 @@ def _wide(array: Floats, width: int) -> Floats:
 
 
 def _ring_starts(arrays: list[Floats]) -> tuple[int, ...]:
+    if len(arrays) == 1:
+        return (0,)
     starts = np.cumsum([0, *(len(array) for array in arrays[:-1])])
     return tuple(int(start) for start in starts)
