@@ -144,9 +144,10 @@ def _orders(run: Run, ground: Ground) -> tuple[tuple[CircuitOrder, ...], list[tu
 def _default_order(run: Run, start: str, end: str) -> CircuitOrder:
     values = {
         key: default_value(f"circuit.{key}", run.purpose)
-        for key in ("name", "fibre_count", "wavelengths_nm")
+        for key in ("fibre_count", "wavelengths_nm")
     }
-    return CircuitOrder.model_validate({**values, "from": start, "to": end})
+    ends = {"name": "Circuit 1", "from": start, "to": end}
+    return CircuitOrder.model_validate({**values, **ends})
 
 
 def _light_circuits(

@@ -8,7 +8,7 @@ from routeplan.cable.way import existing_name, leg_at
 from routeplan.light.along import losses_along_db
 from routeplan.light.model import ExistingSpan, Glass, Path
 from routeplan.planning import CircuitPlan, Plan
-from routeplan.sheets.tables import Row, row_of
+from routeplan.sheets.tables import Row, shaped
 from routeplan.units import m_from_mm
 
 __all__ = ["power_rows"]
@@ -35,8 +35,15 @@ def power_rows(planned: Plan, circuit: CircuitPlan) -> Iterator[Row]:
         for step, ends in places:
             before_db = losses_db[step - 1] if step else 0.0
             for (leg, ground_mm), loss_db in zip(ends, (before_db, losses_db[step]), strict=True):
-                at = {"leg": leg, "wavelength_nm": wavelength_nm}
-                yield row_of("power", None, **at, ground_m=m_from_mm(ground_mm), loss_db=loss_db)
+                yield shaped(
+                    "power",
+                    {
+                        "leg": leg,
+                        "wavelength_nm": wavelength_nm,
+                        "ground_m": m_from_mm(ground_mm),
+                        "loss_db": loss_db,
+                    },
+                )
 
 
 def _glass_places(
