@@ -27,12 +27,12 @@ _SECTIONS = {  # heading of each section of a run file, and what a reader has to
     "cable": (
         "`[cable]`",
         "The default cable. `measured` is a list of tables, for example "
-        "`measured = [ { wavelength_nm = 1310, attenuation_db_per_km = 0.33 } ]`: attenuation of the "
-        "delivered cable, taken as typical and as maximum; `sigma_db_per_km` is 0 unless given.",
+        "`measured = [ { wavelength_nm = 1310, attenuation_db_per_km = 0.33 } ]`: attenuation of "
+        "the delivered cable, taken as typical and as maximum; `sigma_db_per_km` is 0 unless given.",
     ),
     "cables.NAME": (
         "`[cables.NAME]`",
-        "Another cable, named NAME, for the legs in `legs` or for lines whose `cable` is NAME. Keys "
+        "Another cable, named NAME, for the leg in `legs` or for lines whose `cable` is NAME. Keys "
         "left out are those of `[cable]`. One leg for each cable in this version.",
     ),
     "slack": ("`[slack]`", "What each figure does: [slack and rulers](slack_and_rulers.md)."),
@@ -40,20 +40,20 @@ _SECTIONS = {  # heading of each section of a run file, and what a reader has to
     "joints": ("`[joints]`", ""),
     "costs": (
         "`[costs]`",
-        "The default prices are invented, so that a first plan can weigh reels against joints. Every "
-        "sheet says so. Replace them with your own before an order is placed.",
+        "The default prices are invented, so that a first plan can weigh reels against joints; "
+        "every sheet says so. Replace them with your own before an order is placed.",
     ),
     "loss": ("`[loss]`", "How the figures are added up: [light](light.md)."),
     "interface.NAME": (
         "`[interface.NAME]`",
-        "An optical interface of your own, for circuits to name. Give its light as `wavelength_nm` or "
-        "as `wavelength_min_nm` and `wavelength_max_nm`; what may be lost as `channel_loss_db`, or as "
-        "`tx_min_dbm` and `rx_sensitivity_dbm`.",
+        "An optical interface of your own, for circuits to name. Give its light as "
+        "`wavelength_nm`, or as `wavelength_min_nm` and `wavelength_max_nm`; what may be lost as "
+        "`channel_loss_db`, or as `tx_min_dbm` and `rx_sensitivity_dbm`.",
     ),
     "circuit": (
         "`[[circuit]]`",
-        "One light path; the heading stands once for each. Left out `wavelengths_nm` are those of the "
-        "interface, where one is named.",
+        "One light path; the heading stands once for each. Where `wavelengths_nm` is left out and "
+        "an interface is named, the wavelengths are the interface's.",
     ),
 }
 
@@ -80,11 +80,12 @@ interface = "10GBASE-ER"
 
 Names end in their unit: `_m` metres, `_db` decibels, `_nm` nanometres, `_ratio` a share (0.02 is
 2 %). Files are SI whatever `units` says. Keys by placement take a table, for example
-`undulation_ratio = { aerial = 0.005, duct = 0.012 }`; for `loop_m` and `undulation_ratio` placements
-left out keep their default, any other table that is given replaces the whole default.
+`undulation_ratio = { aerial = 0.005, duct = 0.012 }`. In `loop_m` and `undulation_ratio` a placement
+left out keeps its default; any other table that is given replaces the whole default.
 
 `purpose` chooses between two sets of defaults and nothing else; a default for a venue run is shown
-where it differs. An editor that reads JSON Schema can take [run_file.schema.json](run_file.schema.json).
+where it differs. Editors that read JSON Schema can use
+[run_file.schema.json](run_file.schema.json).
 """
 
 _NOT_YET = """\
@@ -107,21 +108,24 @@ _COMMANDS_TAIL = """\
 |---|---|
 | 0 | nothing fails (`unknown` is not failing) |
 | 1 | planned and all sheets written, but some check fails: see `checks.csv` |
-| 2 | the input is wrong, or no layout is possible; one line for each problem on stderr, nothing written |
+| 2 | the input is wrong or no layout is possible: one line a problem, nothing written |
 
 ## What `--json` prints
 
-`plan`: what `plan.json` holds ([sheets](sheets.md)). `check`: `problems`, which is empty, and
-`warnings` with `where` and `message`. `tables`: title, source, confidence and rows. With exit code 2:
-`{"problems": [{"where", "what", "value", "limit", "remedy"}]}`. Messages for people go to stderr.
+- `plan`: what `plan.json` holds, see [sheets](sheets.md).
+- `check`: `problems`, which is empty, and `warnings` with `where` and `message`.
+- `tables`: title, source, confidence and rows.
+- With exit code 2: `{"problems": [{"where", "what", "value", "limit", "remedy"}]}`.
+
+Problems and warnings for people go to stderr.
 
 ## Where `plan` writes
 
 `--out DIR`, or else `sheets/` beside the run file, or `STEM_sheets/` beside a bare geometry file
 STEM.*. Only files that an earlier `plan` wrote there are replaced or, when they are no longer made,
 removed: their names and SHA-256 sums stand in `sheets.sha256`. If a file in the way is not one of
-them, or was changed since, nothing is written and the file is named. Sheets are made in a folder beside
-DIR first and moved in when all are done, `plan.json` last.
+them, or was changed since, nothing is written and the file is named. Sheets are made in a folder
+beside DIR first and moved in when all are done, `plan.json` last.
 """
 
 _SHEETS_HEAD = """\
@@ -141,13 +145,13 @@ _SHEET_TEXTS = {
 }
 
 _SHEETS_MIDDLE = """\
-CSV files are UTF-8, separated by commas, with a point for decimals. Their heads are the keys below, with
-the unit behind where the key itself does not end in it. Rows nested in one column become columns of
-their own (`in_fibre`, `out_fibre`). Text that starts with = + - @, a tab or a return gets an
-apostrophe in front, so that no spreadsheet takes it for a formula; numbers never do.
+CSV files are UTF-8, separated by commas, with a point for decimals. Their heads are the keys below,
+with the unit behind where the key itself does not end in it. Rows nested in one column become
+columns of their own (`in_fibre`, `out_fibre`). Text that starts with = + - @, a tab or a return gets
+an apostrophe in front, so that no spreadsheet takes it for a formula; numbers never do.
 
-Lengths are whole millimetres written in metres, and totals are their exact sums. Decibels are rounded to
-0.001, delays to a nanosecond, longitude and latitude to nine decimals. What cannot be known is
+Lengths are whole millimetres written in metres, and totals are their exact sums. Decibels are rounded
+to 0.001, delays to a nanosecond, longitude and latitude to nine decimals. What cannot be known is
 `null`, an empty cell in a CSV. The meaning of each word is in the [glossary](glossary.md).
 
 ## The head of plan.json
@@ -207,7 +211,7 @@ def _names_part() -> str:
         f"- `cable.fibre_type`: {_listed(fibre_types())}.",
         f"- `cable.colour_code`: {_listed(colour_codes())}.",
         f"- `circuit.interface`: one of `[interface.NAME]`, or {_listed(interface_classes())}.",
-        "\n`routeplan tables fibres`, `tables colours` and `tables interfaces` show them with sources.\n",
+        "\n`routeplan tables fibres`, `colours` and `interfaces` show them with sources.\n",
     ]
     return "\n".join(lines)
 
