@@ -29,7 +29,7 @@ def map_data(document: Row) -> dict[str, object]:
     names = [text_at(leg, "name") for leg in legs]
     by_leg = _stations_by_leg(document)
     sections = {text_at(row, "name"): row for row in rows_at(document, "sections")}
-    origin = next((numbers(at)[0] for leg in legs for at in _vertices(leg)[:1]), 0.0)
+    origin = next((numbers(at[:1])[0] for leg in legs for at in _vertices(leg)[:1]), 0.0)
     return {
         "units": text_at(document, "units") or "metric",
         "pointWords": POINT_WORDS,
