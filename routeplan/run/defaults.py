@@ -167,5 +167,6 @@ def _chosen(row: PracticeRow, purpose: Purpose) -> PracticeValue:
 
 def _flat(value: PracticeValue) -> int | float | str:
     if isinstance(value, dict | tuple):
-        return ", ".join(str(part) for part in value) or "none"
+        parts = (f"{part:.10g}" if isinstance(part, float) else str(part) for part in value)
+        return ", ".join(parts) or "none"
     return value

@@ -63,7 +63,7 @@ def geometry_from_files(
         for layer in _layers(name, folder, geometry, trouble):
             _add_layer(geometry, layer, run_crs=run_crs, placement=placement, trouble=trouble)
     check_together(geometry.lines, geometry.places, trouble=trouble)
-    if not geometry.lines and len(trouble.problems) == before:
+    if names and not geometry.lines and len(trouble.problems) == before:
         problem = Problem(
             where=", ".join(names),
             what="holds no line",

@@ -28,6 +28,7 @@ __all__ = ["Declared", "declared_from_text", "parsed_toml"]
 Table: TypeAlias = dict[str, Any]
 Model = TypeVar("Model", bound=BaseModel)
 
+_MENDED = {"cable": 1, "cables": 2}  # how deep the keys of a section are that can be mended
 _PRACTICE_PARTS = tuple(Practice.model_fields)
 
 
@@ -193,7 +194,7 @@ def _validated(merged: Table, *, file: str, trouble: Trouble, given: frozenset[s
 
 
 def _sound_parts(merged: Table, error: ValidationError, *, given: frozenset[str]) -> Declared:
-    """Return what validates once unknown keys are out and wrong values of cables are defaults."""
+    """Return what validates with unknown keys out, and defaults in the head and in cables."""
     for detail in error.errors(include_url=False):
         _mend(merged, detail["loc"], unknown=detail["type"] == "extra_forbidden")
     head = {key: value for key, value in merged.items() if key in RunHead.model_fields}
@@ -212,7 +213,7 @@ def _sound_parts(merged: Table, error: ValidationError, *, given: frozenset[str]
 
 
 def _mend(merged: Table, path: tuple[str | int, ...], *, unknown: bool) -> None:
-    depth = {"cable": 1, "cables": 2}.get(str(path[0]))
+    depth = 0 if path[0] in RunHead.model_fields else _MENDED.get(str(path[0]))
     if unknown:
         depth = len(path) - 1
     if depth is None or len(path) <= depth:
@@ -223,7 +224,7 @@ def _mend(merged: Table, path: tuple[str | int, ...], *, unknown: bool) -> None:
     if isinstance(table, dict):
         table.pop(path[depth], None)
         if not unknown:
-            defaults = _default_tables("link")["cable"]
+            defaults = _default_tables("link")["cable" if depth else ""]
             table.update({k: v for k, v in defaults.items() if k == path[depth]})
 
 

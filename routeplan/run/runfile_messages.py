@@ -92,18 +92,18 @@ def key_path(path: tuple[str | int, ...], data: Mapping[str, Any]) -> str:
     >>> key_path(("reels", "put_ups_m", 1), {})
     'reels.put_ups_m, item 2'
     """
+    text = ""
     if path[:1] == ("circuit",) and len(path) > 1 and isinstance(path[1], int):
-        rest = ".".join(str(part) for part in path[2:3])
         item = _value_at(path[:2], data)
         name = item.get("name") if isinstance(item, Mapping) else None
-        label = shown(name) if isinstance(name, str) else str(path[1] + 1)
-        path = (f"circuit {label}, {rest}" if rest else f"circuit {label}", *path[3:])
-    text = ""
+        text = f"circuit {shown(name) if isinstance(name, str) else path[1] + 1}"
+        path = path[2:]
     for part in path:
         if isinstance(part, int):
             text += f", item {part + 1}"
         elif part != "[key]":
-            text += f"{', ' if ', item' in text else '.' if text else ''}{shown(part)[1:-1]}"
+            joint = ", " if text.startswith("circuit ") or ", item" in text else "."
+            text += f"{joint if text else ''}{shown(part)[1:-1]}"
     return text
 
 
