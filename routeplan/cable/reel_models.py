@@ -212,8 +212,9 @@ def _check_section(problem: SpanProblem, section: BoughtSection) -> None:
     where = f"section {section.start}-{section.end}: "
     sheath_mm = problem.arrive_mm[section.end] - problem.leave_mm[section.start]
     _require(sheath_mm == section.sheath_mm, where + f"sheath {section.sheath_mm} mm")
-    over = section.needed_mm - sheath_mm * (1 + problem.ordering_ratio)
-    _require(0 <= over < 1, where + f"needed {section.needed_mm} mm")
+    whole = problem.ordering_ratio.denominator
+    over = section.needed_mm * whole - sheath_mm * (whole + problem.ordering_ratio.numerator)
+    _require(0 <= over < whole, where + f"needed {section.needed_mm} mm")
     _require(section.reel_mm >= section.needed_mm, where + f"reel {section.reel_mm} mm too short")
     buying = problem.buying
     if section.way == "put-up":
@@ -223,8 +224,10 @@ def _check_section(problem: SpanProblem, section: BoughtSection) -> None:
         _require(spare_mm < buying.round_up_mm, where + f"made {spare_mm} mm too long")
         _require(section.reel_mm % buying.round_up_mm == 0, where + "piece not rounded")
         _require(section.reel_mm <= buying.made_max_mm, where + f"made {section.reel_mm} mm")
-    exact = buying.cable_cents_per_m * section.reel_mm / 1000 + buying.reel_each_cents
-    _require(0 <= exact + Fraction(1, 2) - section.price_cents < 1, where + "price")
+    rate, price = buying.cable_cents_per_m, section.price_cents - buying.reel_each_cents
+    half = 500 * rate.denominator
+    over = 2 * half * price - rate.numerator * section.reel_mm
+    _require(-half < over <= half, where + f"price {section.price_cents}")
     low, high = problem.chain_mm[section.start], problem.chain_mm[section.end]
     for limit in problem.limits:
         touched = any(max(a, low) < min(b, high) for a, b in limit.intervals_mm)

@@ -10,8 +10,7 @@ from __future__ import annotations
 from bisect import bisect_left
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-from itertools import accumulate, pairwise
-from operator import le
+from itertools import pairwise
 
 from routeplan.cable.reel_models import (
     SpanProblem,
@@ -38,6 +37,7 @@ __all__ = [
 
 Forward = tuple[list[int | None], list[int]]  # key of each place (None: not reached), and from
 _Made = tuple[int, int, int, int]
+_NEVER = 1 << 9999  # above every key
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -53,7 +53,6 @@ class Table:
 
     arrive: Sequence[int]
     leave: Sequence[int]
-    soonest: list[int]
     group: list[int]
     groups: int
     gain: list[int]
@@ -90,8 +89,9 @@ def make_table(problem: SpanProblem) -> Table:
     tie_bits = sum(problem.tie_key).bit_length()
     shift = tie_bits + 2 * bits
     joint = 1 << tie_bits + bits
+    joints = (joint, joint + (1 << tie_bits))  # at a known place, at an assumed one
     gain = [
-        (cost << shift) + joint + (assumed << tie_bits) + tie
+        (cost << shift) + joints[assumed] + tie
         for cost, assumed, tie in zip(
             problem.joint_cost_cents, problem.assumed, problem.tie_key, strict=True
         )
@@ -103,7 +103,6 @@ def make_table(problem: SpanProblem) -> Table:
     return Table(
         arrive=problem.arrive_mm,
         leave=problem.leave_mm,
-        soonest=list(accumulate(reversed(problem.arrive_mm), min))[::-1],
         group=group,
         groups=max(group) + 1,
         gain=gain,
@@ -128,14 +127,15 @@ def make_table(problem: SpanProblem) -> Table:
 
 def _groups(leave: Sequence[int]) -> list[int]:
     """Part the places into the fewest groups with `leave` ascending, most of them in the first."""
-    if all(map(le, leave, leave[1:])):
-        return [0] * len(leave)
-    last: list[int] = []
-    group = []
-    for value in leave:
+    group = [0] * len(leave)
+    last = [leave[0]]
+    for place, value in enumerate(leave):
+        if value >= last[0]:
+            last[0] = value
+            continue
         index = next((k for k, most in enumerate(last) if most <= value), len(last))
         last[index : index + 1] = [value]
-        group.append(index)
+        group[place] = index
     return group
 
 
@@ -234,55 +234,62 @@ def push(front: Front, place: int, key: int) -> None:
 
 def _push_made(front: Front, made: list[_Made], place: int, key: int) -> None:
     """Add a place to those made pieces may start from, and drop those it outdoes or left behind."""
-    table, gap = front.table, front.costs.gap
+    table, costs = front.table, front.costs
     step, scaled = table.step, table.leave[place] * table.factor
-    rank = key * table.rate[1] - scaled // step * front.costs.piece
+    rank = key * table.rate[1] - scaled // step * costs.piece
     while made and made[0][1] < scaled - table.pieces * step:
         del made[0]
     at = bisect_left(made, (rank,))
     kept = [(rank, scaled, place, key)]
-    for item in made[at:]:
-        if item[0] >= rank + front.costs.band:
-            break
-        if item[3] < key - gap[(scaled - item[1]) // step]:
-            kept.append(item)
+    if at < len(made):
+        band, gap = rank + costs.band, costs.gap
+        for item in made[at:]:
+            if item[0] >= band:
+                break
+            if item[3] < key - gap[(scaled - item[1]) // step]:
+                kept.append(item)
     made[at:] = kept
 
 
 def best_start(front: Front, end: int) -> tuple[int, int] | None:
-    """Return the least cost of reaching `end`, its own joint excluded, and from where."""
-    table, best = front.table, None
+    """Return the least key of reaching `end`, its own joint excluded, and from where."""
+    table, least, start = front.table, _NEVER, 0
     arrive, limits = table.arrive[end], table.limits
     for leaves, places, keys in front.stacks:
         first = _first_of(limits, leaves, places, arrive, end) if limits else 0
         for most, price in front.costs.put_ups:
             at = bisect_left(leaves, arrive - most, first)
-            if at < len(leaves) and (best is None or keys[at] + price < best[0]):
-                best = (keys[at] + price, places[at])
-            if at == first:  # a longer put-up reaches nothing more
-                break
+            if at < len(leaves):
+                key = keys[at] + price
+                if key < least:
+                    least, start = key, places[at]
+                if at == first:  # a longer put-up reaches nothing more
+                    break
     for made in front.made:
-        best = _best_made(made, front, end, best)
-    return best
+        if made:
+            least, start = _best_made(made, front, end, least, start)
+    return None if least is _NEVER else (least, start)
 
 
 def _best_made(
-    made: list[_Made], front: Front, end: int, best: tuple[int, int] | None
-) -> tuple[int, int] | None:
-    """Return the better of `best` and the least key from the places of one group."""
-    table, price = front.table, front.costs.price
+    made: list[_Made], front: Front, end: int, least: int, start: int
+) -> tuple[int, int]:
+    """Return the better of what is known and the least key from the places of one group."""
+    table, price, parts = front.table, front.costs.price, front.table.rate[1]
     step, arrive = table.step, table.arrive[end] * table.factor
     reach = arrive - table.pieces * step
     floor = arrive // step * front.costs.piece + front.costs.least
+    ceiling = least * parts - floor  # no better start has this rank
     for rank, scaled, place, key in made:
         if scaled < reach or (table.limits and not _clears(table, place, end)):
             continue
-        if best is not None and rank + floor >= best[0] * table.rate[1]:
-            break  # neither this nor any later one can be better
+        if rank >= ceiling:
+            break
         total = key + price[-((scaled - arrive) // step)]
-        if best is None or total < best[0]:
-            best = (total, place)
-    return best
+        if total < least:
+            least, start = total, place
+            ceiling = total * parts - floor
+    return least, start
 
 
 def _clears(table: Table, start: int, end: int) -> bool:

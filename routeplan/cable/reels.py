@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
-from itertools import pairwise
+from itertools import accumulate, pairwise
 
 from routeplan.cable.reel_models import (
     BoughtSection,
@@ -163,6 +163,7 @@ class _Bound:
     Charging `rate` / `scale` for each unit of load, no path keeping the limit has a key below
     `floor`, and from a place to the end none costs less than `togo` / `scale` nor loads less
     than `least`. `path` is the best one seen that keeps the limit, optimal if it uses it up.
+    `soonest` is the least reading at which a section to a place or to a later one may end.
     """
 
     load: tuple[int, ...]
@@ -171,6 +172,7 @@ class _Bound:
     rate: int
     togo: list[int | None]
     least: list[int | None]
+    soonest: list[int]
     floor: int
     path: tuple[int, ...]
 
@@ -214,6 +216,7 @@ def _bound(table: Table, back: Table, *, load: tuple[int, ...], most: int) -> _B
         rate=rate,
         togo=_togo(back, costs),
         least=least,
+        soonest=list(accumulate(reversed(table.arrive), min))[::-1],
         floor=-(-(value - rate * most) // scale),
         path=light,
     )
@@ -307,7 +310,7 @@ def _layer(
     end = len(table.gain) - 1
     reached, before = {}, {}
     for place in range(waiting[-1] + 1, end + 1):
-        if table.soonest[place] > furthest:
+        if bound.soonest[place] > furthest:
             break
         while waiting and waiting[-1] < place:
             start = waiting.pop()
@@ -361,7 +364,7 @@ def _by_weight(
         left = room.joints_most - used - 1
         reached: dict[int, list[_Label]] = {}
         for place in range(min(sources) + 1, end + 1):
-            if table.soonest[place] > _furthest(table, sources):
+            if counted.soonest[place] > _furthest(table, sources):
                 break
             if place != end and not _allows(counted, place, 0, left=left, cutoff=cutoff):
                 continue

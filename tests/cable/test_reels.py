@@ -127,7 +127,7 @@ def section_cost(problem: SpanProblem, start: int, end: int) -> int | None:
 def objective(
     problem: SpanProblem, path: tuple[int, ...], costs: dict[tuple[int, int], int | None]
 ) -> tuple[int, int, int, int] | None:
-    """Return a layout's cost, joints, assumed and ties from the raw numbers; None if not allowed."""
+    """Return a layout's cost, joints, assumed and ties; None if a limit forbids it."""
     joints = path[1:-1]
     prices = [costs[ends] for ends in pairwise(path)]
     if None in prices or (problem.joints_most is not None and len(joints) > problem.joints_most):
@@ -472,3 +472,85 @@ def test_numbers_the_search_is_not_exact_for_are_refused(
     )
     with pytest.raises(RangeError, match=message):
         replace(problem, **changes)  # type: ignore[arg-type]
+
+
+def wide_span(seed: int) -> SpanProblem:
+    """Return an invented span of dozens of places whose sections reach over many of them."""
+    rng = random.Random(seed)
+    count = rng.randint(25, 60)
+    chain = [0]
+    for _ in range(count - 1):
+        chain.append(chain[-1] + rng.choice([0, 1, rng.randint(1, 90)]))
+    tails = [rng.choice((0, 15, rng.randint(0, 120))) for _ in range(count)]
+    cuts = sorted(rng.sample(range(chain[-1]), 4))
+    return SpanProblem(
+        chain_mm=tuple(chain),
+        arrive_mm=tuple(at + tail for at, tail in zip(chain, tails, strict=True)),
+        leave_mm=tuple(at - tail for at, tail in zip(chain, tails, strict=True)),
+        joint_cost_cents=tuple(rng.choice((0, 3, 3, 3, 50)) for _ in range(count)),
+        assumed=tuple(rng.random() < 0.5 for _ in range(count)),
+        tie_key=tuple(rng.getrandbits(64) for _ in range(count)),
+        ordering_ratio=rng.choice([Fraction(0), Fraction(1, 50), Fraction(3, 70)]),
+        buying=Buying(
+            put_ups_mm=rng.choice([(), (300, 500), (260, 400, 999)]),
+            made_max_mm=rng.choice([600, 815]),
+            round_up_mm=rng.choice([1, 9, 40, 150]),
+            cable_cents_per_m=rng.choice([Fraction(0), Fraction(100, 3), Fraction(1000)]),
+            reel_each_cents=rng.choice([0, 10, 60]),
+        ),
+        limits=(
+            PlacementLimit(placement="duct", most_mm=350, intervals_mm=((cuts[0], cuts[2]),)),
+            PlacementLimit(placement="buried", most_mm=450, intervals_mm=((cuts[1], cuts[3]),)),
+        )[: rng.choice([0, 0, 1, 2])],
+    )
+
+
+def by_layers(problem: SpanProblem) -> list[tuple[tuple[int, ...], tuple[int, ...]] | None]:
+    """Return for every number of joints the best layout, by the plainest dynamic programming."""
+    count = len(problem.chain_mm)
+    arcs = [
+        (i, j, price)
+        for j in range(count)
+        for i in range(j)
+        if (price := section_cost(problem, i, j)) is not None
+    ]
+    layer = {0: ((0, 0, 0, 0), (0,))}
+    answers = []
+    for _ in range(count - 1):
+        following: dict[int, tuple[tuple[int, ...], tuple[int, ...]]] = {}
+        for i, j, price in arcs:
+            if i not in layer:
+                continue
+            own = (problem.joint_cost_cents[j], 1, problem.assumed[j], problem.tie_key[j])
+            step = (0, 0, 0, 0) if j == count - 1 else own
+            value = tuple(map(sum, zip(layer[i][0], step, (price, 0, 0, 0), strict=True)))
+            reached = (value, (*layer[i][1], j))
+            following[j] = min(following.get(j, reached), reached)
+        answers.append(following.get(count - 1))
+        layer = following
+    return answers
+
+
+@pytest.mark.parametrize("block", range(4))
+def test_equals_plain_dynamic_programming(block: int) -> None:
+    """On dozens of places the free, limited and one-fewer optima equal the plainest search."""
+    limited = 0
+    for seed in range(block * 20, block * 20 + 20):
+        problem = wide_span(seed)
+        layers = by_layers(problem)
+        solved = [found for found in layers if found is not None]
+        layout = cheapest_layout(problem)
+        if not solved:
+            assert layout is None
+            continue
+        assert layout is not None
+        assert layout.places == min(solved)[1], seed
+        fewer = one_joint_fewer(problem, layout)
+        expected = layers[layout.joint_count - 1] if layout.joint_count else None
+        assert (fewer and fewer.places) == (expected and expected[1]), seed
+        for most in range(layout.joint_count):
+            within = [found for found in layers[: most + 1] if found is not None]
+            bound = cheapest_layout(replace(problem, joints_most=most))
+            assert (bound and bound.places) == (min(within)[1] if within else None), (seed, most)
+            limited += bool(within)
+    assert limited > 5
