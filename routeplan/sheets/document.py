@@ -8,15 +8,16 @@ from collections.abc import Iterator
 import numpy as np
 
 from routeplan.cable.layout import LaidCable
-from routeplan.cable.model import FibreEnd, Joint, Section
-from routeplan.ground.model import Leg
+from routeplan.cable.model import FibreEnd, Joint
+from routeplan.ground.model import Crossing, Leg
 from routeplan.light.model import Budget
 from routeplan.planning import CircuitPlan, Plan, assumptions, one_fewer, splices
 from routeplan.sheets.bill import bill_rows, pigtail_counts
 from routeplan.sheets.cautions import cautions_for
 from routeplan.sheets.power import power_rows
+from routeplan.sheets.rows import row_of, shaped
 from routeplan.sheets.stations import station_rows
-from routeplan.sheets.tables import Json, Row, row_of, shaped
+from routeplan.sheets.tables import Json, Row
 from routeplan.units import amount_from_cents, m_from_mm
 
 __all__ = ["SCHEMA", "plan_document"]
@@ -46,9 +47,10 @@ def plan_document(planned: Plan) -> dict[str, Json]:
         "totals": _totals(planned),
         "nodes": [row_of("nodes", node) for node in planned.ground.nodes],
         "legs": [_leg(planned, leg) for leg in planned.ground.legs],
+        "crossings": [_crossing(planned, crossing) for crossing in planned.ground.crossings],
         "cables": [_cable(laid) for laid in planned.laid],
         "stations": list(station_rows(planned)),
-        "sections": [_section(planned, section) for section in planned.layout.sections],
+        "sections": list(_sections(planned)),
         "reels": list(_reels(planned)),
         "layout": _layout(planned),
         "joints": [_joint(planned, joint) for joint in planned.layout.joints],
@@ -130,6 +132,12 @@ def _leg(planned: Plan, leg: Leg) -> Row:
     )
 
 
+def _crossing(planned: Plan, crossing: Crossing) -> Row:
+    leg = next(leg for leg in planned.ground.legs if leg.id == crossing.leg)
+    ground_m = m_from_mm(crossing.ground_mm)
+    return row_of("crossings", crossing, leg=leg.name, ground_m=ground_m)
+
+
 def _known(value: float) -> float | None:
     return value if math.isfinite(value) else None
 
@@ -153,20 +161,22 @@ def _cable_names(planned: Plan) -> dict[str, str]:
     return {cable.id: cable.name for cable in planned.layout.cables}
 
 
-def _section(planned: Plan, section: Section) -> Row:
-    reel = next(cut.reel for cut in planned.layout.cuts if cut.section == section.id)
-    return shaped(
-        "sections",
-        {
-            "name": section.id,
-            "cable": _cable_names(planned)[section.cable],
-            "from": section.start,
-            "to": section.end,
-            "sheath_m": m_from_mm(section.sheath_mm),
-            "needed_m": m_from_mm(section.needed_mm),
-            "reel": reel,
-        },
-    )
+def _sections(planned: Plan) -> Iterator[Row]:
+    names = _cable_names(planned)
+    reels = {cut.section: cut.reel for cut in planned.layout.cuts}
+    for section in planned.layout.sections:
+        yield shaped(
+            "sections",
+            {
+                "name": section.id,
+                "cable": names[section.cable],
+                "from": section.start,
+                "to": section.end,
+                "sheath_m": m_from_mm(section.sheath_mm),
+                "needed_m": m_from_mm(section.needed_mm),
+                "reel": reels[section.id],
+            },
+        )
 
 
 def _reels(planned: Plan) -> Iterator[Row]:

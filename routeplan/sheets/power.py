@@ -8,7 +8,8 @@ from routeplan.cable.way import existing_name, leg_at
 from routeplan.light.along import losses_along_db
 from routeplan.light.model import ExistingSpan, Glass, Path
 from routeplan.planning import CircuitPlan, Plan
-from routeplan.sheets.tables import Row, shaped
+from routeplan.sheets.columns import Row
+from routeplan.sheets.rows import shaped
 from routeplan.units import m_from_mm
 
 __all__ = ["power_rows"]

@@ -2,66 +2,23 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
-from dataclasses import dataclass
-from typing import Literal, TypeAlias
+from collections.abc import Mapping
 
-__all__ = [
-    "TABLES",
-    "Column",
-    "Json",
-    "Row",
-    "Table",
-    "csv_tables",
-    "flat_rows",
-    "row_of",
-    "shaped",
-    "table",
-]
+from routeplan.sheets.columns import Column, Json, Row, Table
 
-Json: TypeAlias = bool | int | float | str | list["Json"] | dict[str, "Json"] | None
-Row: TypeAlias = dict[str, Json]
-Kind = Literal["text", "number", "integer", "flag", "texts", "rows", "row", "points", "numbers"]
+__all__ = ["HEAD", "TABLES", "Column", "Json", "Row", "Table", "csv_tables", "table"]
 
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Column:
-    """
-    One column: its key, kind, unit, printed digits and meaning.
-
-    `of` names the table that rows nested in it belong to; `may_be_null` says that what cannot be
-    known is null; `is_listed` is false for what only programs read.
-    """
-
-    key: str
-    kind: Kind
-    text: str
-    unit: str = ""
-    digits: int | None = None
-    of: str = ""
-    may_be_null: bool = False
-    is_listed: bool = True
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Table:
-    """
-    One table of a plan.
-
-    `path` says where its rows are in `plan.json`, outer lists first; a CSV also shows the columns
-    `carried` from the rows around them.
-    """
-
-    name: str
-    title: str
-    path: tuple[str, ...]
-    columns: tuple[Column, ...]
-    csv: str = ""
-    carried: tuple[tuple[str, str], ...] = ()
+_PLACEMENTS = ("aerial", "duct", "buried", "surface", "indoor", "bridge", "water", "existing")
+_VERDICTS = ("fits", "fails", "unknown")
 
 
 def _text(key: str, text: str, **more: object) -> Column:
     return Column(key=key, kind="text", text=text, **more)  # type: ignore[arg-type]
+
+
+def _choice(key: str, text: str, *choices: str) -> Column:
+    listed = f"{', '.join(choices[:-1])} or {choices[-1]}"
+    return Column(key=key, kind="text", text=f"{text}: {listed}.", choices=choices)
 
 
 def _number(key: str, text: str, unit: str, digits: int, **more: object) -> Column:
@@ -87,6 +44,18 @@ def _rows(key: str, of: str, text: str) -> Column:
 def _money(key: str, text: str, **more: object) -> Column:
     return _number(key, text, "currency", 2, **more)
 
+
+HEAD = (
+    _count("schema", "Version of this layout."),
+    _text("title", "Title of the run."),
+    _choice("purpose", "Set of defaults", "link", "venue"),
+    _choice("verdict", "Worst of all checks", *_VERDICTS),
+    _choice("units", "What people are shown, this file being SI", "metric", "us"),
+    _text("currency", "Currency of all costs, as the run file names it."),
+    _count("fibres_per_tray", "Splices on a tray."),
+    _text("digest", "SHA-256 of all input files, one after the other."),
+)
+"""What stands at the head of `plan.json`, before its tables."""
 
 _LON = _number("lon", "Longitude, WGS 84.", "deg", 9)
 _LAT = _number("lat", "Latitude, WGS 84.", "deg", 9)
@@ -136,7 +105,7 @@ _TABLES = (
         path=("legs", "stretches"),
         carried=(("leg", "name"),),
         columns=(
-            _text("placement", "How the cable lies."),
+            _choice("placement", "How the cable lies", *_PLACEMENTS),
             _metres("from_ground_m", "Where it begins."),
             _metres("to_ground_m", "Where it ends."),
         ),
@@ -166,6 +135,20 @@ _TABLES = (
         ),
     ),
     Table(
+        name="crossings",
+        title="Crossings",
+        path=("crossings",),
+        columns=(
+            _text("leg", "Leg."),
+            _text("name", "Name."),
+            _choice("crosses", "What is crossed", "road", "rail", "water", "power"),
+            _metres("ground_m", "Middle of it, on the ground from the leg's start."),
+            _metres("width_m", "From edge to edge.", may_be_null=True),
+            _LON,
+            _LAT,
+        ),
+    ),
+    Table(
         name="cables",
         title="Cables",
         path=("cables",),
@@ -186,10 +169,14 @@ _TABLES = (
         columns=(
             _text("leg", "Leg."),
             _text("cable", "Cable."),
-            _text("kind", "site, joint, crossing, loop, reach or vertex."),
+            _choice(
+                "kind",
+                "First that applies",
+                *("site", "joint", "crossing", "loop", "reach", "vertex"),
+            ),
             _text("name", "Name of what is there.", may_be_null=True),
             _text("reach_kind", "Kind of reach point.", may_be_null=True),
-            _text("placement", "Placement of the way on from here."),
+            _choice("placement", "Placement of the way on from here", *_PLACEMENTS),
             _metres("ground_m", "On the ground from the leg's start."),
             _metres("sheath_from_m", "Jacket before the cable stored here."),
             _metres("sheath_to_m", "Jacket after the cable stored here."),
@@ -224,7 +211,7 @@ _TABLES = (
         columns=(
             _text("name", "Name."),
             _metres("length_m", "Length ordered, or of the stock reel."),
-            _text("source", "put-up, to-length or stock."),
+            _choice("source", "How it is come by", "put-up", "to-length", "stock"),
             _metres("used_m", "Needed by its sections."),
             _metres("spare_m", "Left over."),
             _money("cost", "Price."),
@@ -259,7 +246,10 @@ _TABLES = (
         name="ends",
         title="Cable ends",
         path=("joints", "ends"),
-        columns=(_text("section", "Section."), _text("side", "start or end of the section.")),
+        columns=(
+            _text("section", "Section."),
+            _choice("side", "End of the section", "start", "end"),
+        ),
     ),
     Table(
         name="joints",
@@ -274,7 +264,7 @@ _TABLES = (
             _metres("ground_m", "On the ground from the leg's start."),
             _LON,
             _LAT,
-            _text("kind", "splice or mated."),
+            _choice("kind", "How ends are joined", "splice", "mated"),
             Column(key="assumed", kind="flag", text="Whether the place is assumed."),
             _count("splice_count", "Splices."),
             _money("cost", "Closure, visit and splices."),
@@ -293,7 +283,7 @@ _TABLES = (
             _count("position", "Position on the tray."),
             Column(key="in", kind="row", of="fibre_end", text="Fibre coming in."),
             Column(key="out", kind="row", of="fibre_end", may_be_null=True, text="Fibre going on."),
-            _text("kind", "splice, express or stored."),
+            _choice("kind", "What is done with the fibre", "splice", "express", "stored"),
             _text("circuit", "Circuit, empty for a spare."),
             _decibels("limit_db", "Loss to meet, average of both directions."),
         ),
@@ -331,7 +321,7 @@ _TABLES = (
         carried=(("circuit", "circuits.name"),),
         columns=(
             _number("wavelength_nm", "Wavelength.", "nm", 3),
-            _text("direction", "from-to or to-from."),
+            _choice("direction", "Way the light goes", "from-to", "to-from"),
             _decibels("nominal_db", "Sum of means."),
             _decibels("statistical_db", "Means and k standard deviations."),
             _decibels("worst_db", "Everything at its limit."),
@@ -347,7 +337,7 @@ _TABLES = (
             _number("pmd_ps", "Polarisation mode dispersion.", "ps", 3, may_be_null=True),
             _decibels("return_loss_db", "Return loss.", may_be_null=True),
             _number("delay_us", "One-way delay.", "us", 3),
-            _text("verdict", "fits, fails or unknown."),
+            _choice("verdict", "Verdict", *_VERDICTS),
             Column(key="reasons", kind="texts", text="Why."),
             _rows("lines", "budget_lines", "Every contribution."),
         ),
@@ -364,7 +354,7 @@ _TABLES = (
             _rows("fibres", "circuit_fibres", "Fibres in order along it, strand by strand."),
             _metres("glass_m", "Glass of its first fibre."),
             _number("delay_us", "One-way delay at its first wavelength.", "us", 3),
-            _text("verdict", "fits, fails or unknown."),
+            _choice("verdict", "Verdict", *_VERDICTS),
             _rows("budgets", "budgets", "By wavelength and direction."),
             Column(
                 key="power",
@@ -398,7 +388,7 @@ _TABLES = (
             _number("value", "Found.", "", 3, may_be_null=True),
             _number("limit", "Limit.", "", 3, may_be_null=True),
             _text("unit", "Unit of both."),
-            _text("verdict", "fits, fails or unknown."),
+            _choice("verdict", "Verdict", *_VERDICTS),
             _text("source", "Where the limit comes from."),
         ),
     ),
@@ -423,7 +413,7 @@ _TABLES = (
         csv="assumptions.csv",
         columns=(
             _text("name", "Key or matter."),
-            Column(key="value", kind="text", text="Value taken."),
+            Column(key="value", kind="value", text="Value taken."),
             _text("unit", "Unit."),
             _text("source", "Where it comes from."),
             _text("reason", "Why it is taken."),
@@ -441,8 +431,8 @@ _TABLES = (
         path=("areas",),
         columns=(
             _text("name", "Name."),
-            _text("kind", "avoid or permit."),
-            Column(key="rings", kind="points", text="Rings of lon, lat.", is_listed=False),
+            _choice("kind", "What it is", "avoid", "permit"),
+            Column(key="rings", kind="rings", text="Rings of lon, lat.", is_listed=False),
         ),
     ),
     Table(
@@ -464,93 +454,3 @@ def table(name: str) -> Table:
 def csv_tables() -> tuple[Table, ...]:
     """Return the tables that are written as CSV, in file order."""
     return tuple(entry for entry in _TABLES if entry.csv)
-
-
-def shaped(name: str, row: Mapping[str, Json]) -> Row:
-    """
-    Return a row in the catalogue's order, its numbers rounded to the catalogue's digits.
-
-    Raises
-    ------
-    KeyError
-        If the row lacks a column or has one more.
-    """
-    columns = TABLES[name].columns
-    if len(row) != len(columns):
-        extra = set(row) ^ {column.key for column in columns}
-        raise KeyError(f"table {name}: {sorted(extra)} stand in the row or the catalogue only")
-    return {column.key: _rounded(column, row[column.key]) for column in columns}
-
-
-def row_of(name: str, source: object, **more: Json) -> Row:
-    """
-    Return a row whose columns are attributes of `source`, but for those given.
-
-    Parameters
-    ----------
-    name
-        Name of the table.
-    source
-        What has the attributes.
-    more
-        Columns that are named or counted otherwise there.
-    """
-    return {
-        column.key: _rounded(
-            column, more[column.key] if column.key in more else getattr(source, column.key)
-        )
-        for column in TABLES[name].columns
-    }
-
-
-def _rounded(column: Column, value: Json) -> Json:
-    if column.digits is not None and isinstance(value, float):
-        # Adding zero turns -0.0 into 0.0.
-        return round(value, column.digits) + 0.0
-    return value
-
-
-def flat_rows(document: Mapping[str, Json], name: str) -> Iterator[Row]:
-    """
-    Yield the rows of a table as one CSV line each: carried columns first, nested rows dotted.
-
-    Parameters
-    ----------
-    document
-        What `plan.json` holds.
-    name
-        Name of the table.
-    """
-    entry = TABLES[name]
-    for around, row in _walk(document, entry.path, {}):
-        line: Row = {key: around[_full(entry, origin)] for key, origin in entry.carried}
-        for column in entry.columns:
-            if not column.is_listed or column.kind == "rows":
-                continue
-            if column.kind == "row":
-                inner = row[column.key]
-                for nested in TABLES[column.of].columns:
-                    key = f"{column.key}_{nested.key}"
-                    line[key] = inner[nested.key] if isinstance(inner, dict) else None
-            else:
-                line[column.key] = row[column.key]
-        yield line
-
-
-def _full(entry: Table, origin: str) -> str:
-    return origin if "." in origin else f"{entry.path[-2]}.{origin}"
-
-
-def _walk(
-    place: Mapping[str, Json], path: tuple[str, ...], around: dict[str, Json]
-) -> Iterator[tuple[dict[str, Json], dict[str, Json]]]:
-    head, *rest = path
-    found = place[head]
-    for row in found if isinstance(found, list) else [found]:
-        if not isinstance(row, dict):
-            continue
-        if rest:
-            named = {f"{head}.{key}": value for key, value in row.items()}
-            yield from _walk(row, tuple(rest), around | named)
-        else:
-            yield around, row

@@ -16,7 +16,8 @@ from pathlib import Path
 from routeplan.errors import InputError, Problem
 from routeplan.planning import Plan
 from routeplan.sheets.document import plan_document
-from routeplan.sheets.tables import TABLES, Json, Table, csv_tables, flat_rows
+from routeplan.sheets.rows import flat_rows
+from routeplan.sheets.tables import TABLES, Json, Table, csv_tables
 
 __all__ = ["LIST_NAME", "SHEET_NAMES", "csv_text", "json_text", "make_sheets", "write_sheets"]
 
