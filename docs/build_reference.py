@@ -28,7 +28,7 @@ _SECTIONS = {  # heading of each section of a run file, and what a reader has to
         "`[cable]`",
         "The default cable. `measured` is a list of tables, for example "
         "`measured = [ { wavelength_nm = 1310, attenuation_db_per_km = 0.33 } ]`: attenuation of "
-        "the delivered cable, taken as typical and as maximum; `sigma_db_per_km` is 0 unless given.",
+        "the delivered cable, taken as typical and as maximum; `sigma_db_per_km` is 0 if left out.",
     ),
     "cables.NAME": (
         "`[cables.NAME]`",
@@ -80,8 +80,8 @@ interface = "10GBASE-ER"
 
 Names end in their unit: `_m` metres, `_db` decibels, `_nm` nanometres, `_ratio` a share (0.02 is
 2 %). Files are SI whatever `units` says. Keys by placement take a table, for example
-`undulation_ratio = { aerial = 0.005, duct = 0.012 }`. In `loop_m` and `undulation_ratio` a placement
-left out keeps its default; any other table that is given replaces the whole default.
+`undulation_ratio = { aerial = 0.005, duct = 0.012 }`. In `loop_m` and `undulation_ratio` a
+placement left out keeps its default; any other table that is given replaces the whole default.
 
 `purpose` chooses between two sets of defaults and nothing else; a default for a venue run is shown
 where it differs. Editors that read JSON Schema can use
@@ -147,11 +147,11 @@ _SHEET_TEXTS = {
 _SHEETS_MIDDLE = """\
 CSV files are UTF-8, separated by commas, with a point for decimals. Their heads are the keys below,
 with the unit behind where the key itself does not end in it. Rows nested in one column become
-columns of their own (`in_fibre`, `out_fibre`). Text that starts with = + - @, a tab or a return gets
-an apostrophe in front, so that no spreadsheet takes it for a formula; numbers never do.
+columns of their own (`in_fibre`, `out_fibre`). Text that starts with = + - @, a tab or a return
+gets an apostrophe in front, so that no spreadsheet takes it for a formula; numbers never do.
 
-Lengths are whole millimetres written in metres, and totals are their exact sums. Decibels are rounded
-to 0.001, delays to a nanosecond, longitude and latitude to nine decimals. What cannot be known is
+Lengths are whole millimetres written in metres, and totals are their exact sums. Decibels are
+rounded to 0.001, delays to a nanosecond, longitude and latitude to nine decimals. What cannot be known is
 `null`, an empty cell in a CSV. The meaning of each word is in the [glossary](glossary.md).
 
 ## The head of plan.json
@@ -241,7 +241,7 @@ def commands_page() -> str:
     parser = make_parser()
     parts = [_MADE, _COMMANDS_HEAD, _argument_table(_actions(parser))]
     for action in _actions(parser):
-        if not isinstance(action.choices, dict):
+        if not isinstance(action, argparse._SubParsersAction):
             continue
         helps = {choice.dest: choice.help for choice in action._get_subactions()}
         for name, command in action.choices.items():
