@@ -2,12 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-from routeplan.light.attenuation import MeasuredPoint
-from routeplan.light.contributions import glass_spans, loss_lines
+from routeplan.light.contributions import Measured, glass_spans, loss_lines
 from routeplan.light.delay import link_delay_ns
 from routeplan.light.dispersion import dispersion_range_ps_per_nm
 from routeplan.light.interfaces import Optic
@@ -20,6 +19,14 @@ from routeplan.light.power import (
     overload_db,
     printed_db,
     total_loss,
+)
+from routeplan.light.reflections import reflections, return_loss_db
+from routeplan.light.remarks import (
+    hazard_findings,
+    path_findings,
+    penalty_lines,
+    pmd_findings,
+    return_loss_findings,
 )
 from routeplan.light.verdict import Finding, dispersion_findings, power_findings, verdict_of
 
@@ -40,21 +47,33 @@ class Power:
     attenuator_db: float | None
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Judged:
+    """What one wavelength comes to, before reflections and other lanes."""
+
+    lines: tuple[BudgetLine, ...]
+    loss: Loss
+    power: Power
+    dispersion_ps_per_nm: tuple[float, float]
+    findings: tuple[Finding, ...]
+
+
 def circuit_budget(
     path: Path,
     wavelength_nm: float,
     *,
     practice: LossPractice,
     optic: Optic | None = None,
-    measured: Mapping[str, Sequence[MeasuredPoint]] | None = None,
+    measured: Measured | None = None,
+    connector_return_loss_db: float | None = None,
 ) -> Budget:
     """
     Return the budget of one circuit, in one direction at one wavelength.
 
     Nominal, statistical and worst loss; what the interface allows and what is left of it once
-    the practice's margin is kept; overload and the attenuator that mends it; dispersion, PMD and
-    delay; a verdict with its reasons. Where the interface has further lanes, the verdict is on
-    all of them.
+    the practice's margin is kept; overload and the attenuator that mends it; dispersion, PMD,
+    return loss and delay; a verdict with its reasons. Where the interface has further lanes, the
+    verdict is on all of them.
 
     Parameters
     ----------
@@ -67,7 +86,10 @@ def circuit_budget(
     optic
         What sends and receives; None where the circuit names no interface.
     measured
-        Measured attenuation by cable, looked up by the `cable` of each glass step.
+        Measured attenuation by section or cable, looked up by the `section` and then the `cable`
+        of each glass step.
+    connector_return_loss_db
+        Of mated pairs that do not say their own; without it the return loss is not known. [dB]
 
     Returns
     -------
@@ -84,35 +106,44 @@ def circuit_budget(
     .. [1] ITU-T G.652, appendix I: attenuation, splices and connectors of a link add up.
     .. [2] ITU-T G.957: least attenuation and overload.
     """
-    lines = loss_lines(path, wavelength_nm, practice=practice, measured=measured or {})
-    loss = total_loss(lines, sigma_count=practice.sigma_count)
-    power = _power(lines, loss, optic, practice=practice)
+    measured = measured or {}
+    judged = _judge(path, wavelength_nm, practice=practice, optic=optic, measured=measured)
+    returned = reflections(
+        path,
+        wavelength_nm,
+        practice=practice,
+        connector_return_loss_db=connector_return_loss_db,
+        receiver_return_loss_db=optic.rx_return_loss_db if optic else None,
+        measured=measured,
+    )
+    returned_db = return_loss_db(returned)
+    findings = [*judged.findings, *return_loss_findings(returned_db, optic)]
+    if optic and verdict_of(finding.verdict for finding in findings) != "fails":
+        findings += _lane_findings(
+            path, wavelength_nm, practice=practice, optic=optic, measured=measured
+        )
+    findings += hazard_findings(optic)
     spans = glass_spans(path)
-    dispersion = dispersion_range_ps_per_nm(wavelength_nm, spans)
-    findings = power_findings(power, loss, optic, practice=practice)
-    findings += dispersion_findings(dispersion, spans, optic, wavelength_nm=wavelength_nm)
-    if verdict_of(finding.verdict for finding in findings) != "fails":
-        findings += _lane_findings(path, wavelength_nm, practice, optic, measured)
     return Budget(
         circuit=path.circuit,
         wavelength_nm=wavelength_nm,
         direction=path.direction,
-        nominal_db=loss.nominal_db,
-        statistical_db=loss.statistical_db,
-        worst_db=loss.worst_db,
-        available_db=power.available_db,
-        margin_db=power.margin_db,
-        statistical_margin_db=power.statistical_margin_db,
-        overload_db=power.overload_db,
-        attenuator_db=power.attenuator_db,
-        dispersion_min_ps_per_nm=round(dispersion[0], 3) + 0.0,
-        dispersion_max_ps_per_nm=round(dispersion[1], 3) + 0.0,
+        nominal_db=judged.loss.nominal_db,
+        statistical_db=judged.loss.statistical_db,
+        worst_db=judged.loss.worst_db,
+        available_db=judged.power.available_db,
+        margin_db=judged.power.margin_db,
+        statistical_margin_db=judged.power.statistical_margin_db,
+        overload_db=judged.power.overload_db,
+        attenuator_db=judged.power.attenuator_db,
+        dispersion_min_ps_per_nm=round(judged.dispersion_ps_per_nm[0], 3) + 0.0,
+        dispersion_max_ps_per_nm=round(judged.dispersion_ps_per_nm[1], 3) + 0.0,
         pmd_ps=round(link_pmd_ps(spans), 3),
-        return_loss_db=None,
+        return_loss_db=None if returned_db is None else printed_db(returned_db),
         delay_ns=round(link_delay_ns(wavelength_nm, spans)),
         verdict=verdict_of(finding.verdict for finding in findings),
         reasons=tuple(finding.text for finding in findings),
-        lines=lines,
+        lines=judged.lines,
     )
 
 
@@ -143,26 +174,48 @@ def _left_db(available_db: float | None, loss_db: float, kept_db: float) -> floa
     return None if available_db is None else printed_db(available_db - loss_db - kept_db)
 
 
+def _judge(
+    path: Path,
+    wavelength_nm: float,
+    *,
+    practice: LossPractice,
+    optic: Optic | None,
+    measured: Measured,
+) -> _Judged:
+    """Return loss, power and dispersion at one wavelength, and what is to be said of them."""
+    spans = glass_spans(path)
+    dispersion = dispersion_range_ps_per_nm(wavelength_nm, spans)
+    lines = loss_lines(path, wavelength_nm, practice=practice, measured=measured)
+    penalties = penalty_lines(dispersion, optic)
+    loss = total_loss([*lines, *penalties], sigma_count=practice.sigma_count)
+    power = _power(lines, loss, optic, practice=practice)
+    findings = power_findings(power, loss, optic, practice=practice)
+    findings += dispersion_findings(dispersion, spans, optic, wavelength_nm=wavelength_nm)
+    findings += pmd_findings(spans, optic)
+    findings += path_findings(path, wavelength_nm, measured=measured)
+    return _Judged(
+        lines=(*lines, *penalties),
+        loss=loss,
+        power=power,
+        dispersion_ps_per_nm=dispersion,
+        findings=tuple(findings),
+    )
+
+
 def _lane_findings(
     path: Path,
     wavelength_nm: float,
+    *,
     practice: LossPractice,
-    optic: Optic | None,
-    measured: Mapping[str, Sequence[MeasuredPoint]] | None,
+    optic: Optic,
+    measured: Measured,
 ) -> list[Finding]:
     """Return what keeps the interface's other lanes from working, or nothing."""
-    found: list[Finding] = []
-    for lane_nm in optic.other_lanes_nm(wavelength_nm) if optic else ():
-        lines = loss_lines(path, lane_nm, practice=practice, measured=measured or {})
-        loss = total_loss(lines, sigma_count=practice.sigma_count)
-        power = _power(lines, loss, optic, practice=practice)
-        spans = glass_spans(path)
-        dispersion = dispersion_range_ps_per_nm(lane_nm, spans)
-        there = power_findings(power, loss, optic, practice=practice)
-        there += dispersion_findings(dispersion, spans, optic, wavelength_nm=lane_nm)
-        found += [
-            Finding(verdict="fails", text=f"Lane at {lane_nm:g} nm: {finding.text}")
-            for finding in there
-            if finding.verdict == "fails"
-        ]
-    return found
+    return [
+        Finding(verdict="fails", text=f"Lane at {lane_nm:g} nm: {finding.text}")
+        for lane_nm in optic.other_lanes_nm(wavelength_nm)
+        for finding in _judge(
+            path, lane_nm, practice=practice, optic=optic, measured=measured
+        ).findings
+        if finding.verdict == "fails"
+    ]

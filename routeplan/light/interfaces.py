@@ -69,6 +69,7 @@ class Optic:
     dispersion_max_ps_per_nm: float | None = None
     line_width_nm: float | None = None
     return_loss_min_db: float | None = None
+    rx_return_loss_db: float | None = None
     extinction_ratio_min_db: float | None = None
     reach_m: float | None = None
     source: str
@@ -196,8 +197,9 @@ def check_wavelengths(
     pair: OpticPair, wavelengths_nm: Sequence[float], *, where: str
 ) -> list[Problem]:
     """
-    Return what is wrong with the wavelengths of a circuit: each outside every band of its
-    interface, and a direction in which none is sent.
+    Return what is wrong with the wavelengths of a circuit.
+
+    Each outside every band of its interface is a problem, and a direction in which none is sent.
 
     Examples
     --------
