@@ -481,7 +481,8 @@ def wide_span(seed: int) -> SpanProblem:
     chain = [0]
     for _ in range(count - 1):
         chain.append(chain[-1] + rng.choice([0, 1, rng.randint(1, 90)]))
-    tails = [rng.choice((0, 15, rng.randint(0, 120))) for _ in range(count)]
+    tail = rng.choice((0, 0, 4, 120))
+    tails = [rng.choice((0, tail, rng.randint(0, tail))) for _ in range(count)]
     cuts = sorted(rng.sample(range(chain[-1]), 4))
     return SpanProblem(
         chain_mm=tuple(chain),
@@ -492,11 +493,13 @@ def wide_span(seed: int) -> SpanProblem:
         tie_key=tuple(rng.getrandbits(64) for _ in range(count)),
         ordering_ratio=rng.choice([Fraction(0), Fraction(1, 50), Fraction(3, 70)]),
         buying=Buying(
-            put_ups_mm=rng.choice([(), (300, 500), (260, 400, 999)]),
-            made_max_mm=rng.choice([600, 815]),
+            put_ups_mm=rng.choice([(), (150, 999), (110, 390, 999)]),
+            made_max_mm=rng.choice([0, 600, 815]),
             round_up_mm=rng.choice([1, 9, 40, 150]),
-            cable_cents_per_m=rng.choice([Fraction(0), Fraction(100, 3), Fraction(1000)]),
-            reel_each_cents=rng.choice([0, 10, 60]),
+            cable_cents_per_m=rng.choice(
+                [Fraction(0), Fraction(1100, 3), Fraction(1000), Fraction(1000)]
+            ),
+            reel_each_cents=rng.choice([0, 0, 60]),
         ),
         limits=(
             PlacementLimit(placement="duct", most_mm=350, intervals_mm=((cuts[0], cuts[2]),)),
@@ -535,7 +538,7 @@ def by_layers(problem: SpanProblem) -> list[tuple[tuple[int, ...], tuple[int, ..
 def test_equals_plain_dynamic_programming(block: int) -> None:
     """On dozens of places the free, limited and one-fewer optima equal the plainest search."""
     limited = 0
-    for seed in range(block * 20, block * 20 + 20):
+    for seed in range(block * 30, block * 30 + 30):
         problem = wide_span(seed)
         layers = by_layers(problem)
         solved = [found for found in layers if found is not None]
@@ -553,4 +556,4 @@ def test_equals_plain_dynamic_programming(block: int) -> None:
             bound = cheapest_layout(replace(problem, joints_most=most))
             assert (bound and bound.places) == (min(within)[1] if within else None), (seed, most)
             limited += bool(within)
-    assert limited > 5
+    assert limited > 3
