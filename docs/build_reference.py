@@ -11,7 +11,7 @@ from pathlib import Path
 from routeplan.cli import make_parser
 from routeplan.run.names import colour_codes, fibre_types, interface_classes
 from routeplan.run.reference import KeyRow, key_rows, run_file_schema, toml_value
-from routeplan.sheets.tables import TABLES, Column, Table
+from routeplan.sheets.tables import HEAD, TABLES, Column, Table
 from routeplan.sheets.write import LIST_NAME, SHEET_NAMES
 
 __all__ = ["PAGES", "commands_page", "main", "run_file_page", "run_file_schema_text", "sheets_page"]
@@ -151,25 +151,12 @@ columns of their own (`in_fibre`, `out_fibre`). Text that starts with = + - @, a
 gets an apostrophe in front, so that no spreadsheet takes it for a formula; numbers never do.
 
 Lengths are whole millimetres written in metres, and totals are their exact sums. Decibels are
-rounded to 0.001, delays to a nanosecond, longitude and latitude to nine decimals. What cannot be known is
-`null`, an empty cell in a CSV. The meaning of each word is in the [glossary](glossary.md).
+rounded to 0.001, delays to a nanosecond, longitude and latitude to nine decimals. What cannot be
+known is `null`, an empty cell in a CSV. Words are explained in the [glossary](glossary.md).
 
 ## The head of plan.json
 
-| key | what |
-|---|---|
 """
-
-_HEAD_KEYS = {
-    "schema": "1: the version of this layout",
-    "title": "title of the run",
-    "purpose": "link or venue",
-    "verdict": "fits, fails or unknown: the worst of all checks",
-    "units": "metric or us: what people are shown; this file is SI",
-    "currency": "currency of all costs, as the run file names it",
-    "fibres_per_tray": "splices on a tray",
-    "digest": "SHA-256 of all input files, one after the other",
-}
 
 
 def run_file_page() -> str:
@@ -292,7 +279,7 @@ def sheets_page() -> str:
     csv_texts = {entry.csv: entry.title.lower() for entry in TABLES.values() if entry.csv}
     texts = {**csv_texts, **_SHEET_TEXTS}
     files = "".join(f"| `{name}` | {texts[name]} |\n" for name in (*SHEET_NAMES, LIST_NAME))
-    head = "".join(f"| `{key}` | {text} |\n" for key, text in _HEAD_KEYS.items())
+    head = _table(("key", "kind", "what"), [(f"`{c.key}`", c.kind, c.text) for c in HEAD])
     tables = (_sheet_part(entry) for entry in TABLES.values())
     return "\n".join([_MADE, _SHEETS_HEAD + files, _SHEETS_MIDDLE + head, *tables])
 
