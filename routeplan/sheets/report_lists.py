@@ -63,7 +63,7 @@ def legs_html(document: Row) -> str:
         for stretch in rows_at(leg, "stretches")
     ]
     stretch_columns = [
-        words("Leg", "leg"),
+        *([words("Leg", "leg")] if len(legs) > 1 else []),
         Column(head="Placement", cell=lambda row: _placement_cell(text_at(row, "placement"))),
         length("From", "from_ground_m", units=units),
         length("To", "to_ground_m", units=units),
@@ -79,7 +79,8 @@ def _stretch_m(stretch: Row) -> float:
 
 def _placement_cell(placement: str) -> str:
     line = line_svg(line_style(placement), 1, 45, 6)
-    return f'<svg class="line" viewBox="0 0 46 12" aria-hidden="true">{line}</svg>{safe(placement)}'
+    picture = f'<svg class="line" viewBox="0 0 46 12" aria-hidden="true">{line}</svg>'
+    return f'<span class="whole">{picture}{safe(placement)}</span>'
 
 
 def reels_html(document: Row) -> str:

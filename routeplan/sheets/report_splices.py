@@ -132,7 +132,7 @@ def _schedule(splices: Sequence[Row]) -> str:
         return "<p>No fibre is spliced here.</p>"
     columns = _columns()
     heads = (
-        '<tr><th colspan="2"></th><th colspan="4" class="side">in</th><th></th>'
+        '<tr><th></th><th colspan="4" class="side">in</th><th></th>'
         '<th colspan="4" class="side">out</th><th colspan="4"></th></tr><tr>'
         + "".join(f"<th{_class(column)}>{safe(column.head)}</th>" for column in columns)
         + "</tr>"
@@ -150,7 +150,6 @@ def _schedule(splices: Sequence[Row]) -> str:
 
 def _columns() -> list[Column]:
     return [
-        Column(head="Tray", cell=lambda row: str(whole_at(row, "tray")), is_number=True),
         Column(head="Pos.", cell=lambda row: str(whole_at(row, "position")), is_number=True),
         *_end_columns("in"),
         Column(head="", cell=_between),
@@ -178,6 +177,7 @@ def _end_columns(side: str) -> list[Column]:
         return Column(
             head=head,
             cell=lambda row: swatch(text_at(row_at(row, side), key)) if row_at(row, side) else "",
+            is_long=True,
         )
 
     return [

@@ -215,8 +215,8 @@ function showRun(map) {
   const select = (name) => document.querySelector(`select[data-choice="${name}"]`);
   let last = null;
   const strip = new Strip(document.getElementById("strip-chart"), document.getElementById("strip-pointer"),
-    run, (leg, ground) => {
-      const spot = layer.snapped({ leg, ground });
+    run, (leg, ground, point) => {
+      const spot = { leg, ground, point };
       show(spot);
       const at = layer.spotLatLng(spot);
       if (!map.getBounds().pad(-0.02).contains(at)) map.panTo(at, { animate: false });

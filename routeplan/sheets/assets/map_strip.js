@@ -23,7 +23,9 @@ class Strip {
     Object.assign(this, { canvas, cursor, run, onMove, legNumber: 0, curveNumber: 0, ground: null });
     const moved = (event) => {
       const x = event.clientX - canvas.getBoundingClientRect().left;
-      this.onMove(this.legNumber, Math.min(this.leg.length, Math.max(0, this.groundAt(x))));
+      const ground = Math.min(this.leg.length, Math.max(0, this.groundAt(x)));
+      const near = this.leg.points.find((point) => Math.abs(this.xAt(point.ground) - x) < 2);
+      this.onMove(this.legNumber, near ? near.ground : ground, near);
     };
     cursor.addEventListener("pointermove", (event) => {
       if (event.pointerType === "mouse" || event.buttons) moved(event);
