@@ -4,9 +4,8 @@ from __future__ import annotations
 
 import argparse
 import shutil
-import subprocess
-import tempfile
 from collections.abc import Iterator, Sequence
+from importlib.util import find_spec
 from pathlib import Path
 
 from routeplan import plan, read_run
@@ -16,7 +15,8 @@ __all__ = ["demo_runs", "main", "map_text", "take_picture"]
 
 _HERE = Path(__file__).parent
 _BROWSERS = ("chromium", "chromium-browser", "google-chrome", "chrome", "msedge")
-_SIZE = (1280, 800)
+_WIDTH, _HEIGHT = 1280, 800
+_POINTER = (860, 680)  # over the strip chart, so that the readings show a place on the way
 
 
 def demo_runs() -> Iterator[Path]:
@@ -30,29 +30,22 @@ def map_text(run: Path) -> str:
 
 
 def take_picture(page: Path, picture: Path) -> bool:
-    """Take a picture of a page with the browser there is, offline; False if there is none."""
+    """Take a picture of a page, offline; False where there is no browser or no playwright."""
     browser = next(filter(None, map(shutil.which, _BROWSERS)), None)
-    if browser is None:
+    if browser is None or find_spec("playwright") is None:
         return False
-    with tempfile.TemporaryDirectory() as profile:
-        options = [
-            "--headless=new",
-            "--no-sandbox",  # it opens one page of our own making, and root cannot run it otherwise
-            "--disable-gpu",
-            "--hide-scrollbars",
-            "--proxy-server=127.0.0.1:9",  # nothing listens there: no network
-            f"--user-data-dir={profile}",
-            f"--window-size={_SIZE[0]},{_SIZE[1]}",
-            "--virtual-time-budget=5000",
-            f"--screenshot={picture.absolute()}",
-        ]
-        subprocess.run(
-            [browser, *options, page.absolute().as_uri()],
-            check=True,
-            capture_output=True,
-            stdin=subprocess.DEVNULL,
-            timeout=120,
-        )
+    from playwright.sync_api import sync_playwright
+
+    with sync_playwright() as started:
+        # The one page opened is of our own making, and root cannot run a sandbox.
+        chromium = started.chromium.launch(executable_path=browser, args=["--no-sandbox"])
+        context = chromium.new_context(viewport={"width": _WIDTH, "height": _HEIGHT}, offline=True)
+        shown = context.new_page()
+        shown.goto(page.absolute().as_uri())
+        shown.mouse.move(*_POINTER)
+        shown.wait_for_timeout(1000)
+        shown.screenshot(path=picture)
+        chromium.close()
     return True
 
 
@@ -69,7 +62,11 @@ def main(arguments: Sequence[str] | None = None) -> int:
         print(page)
         if not asked.no_pictures:
             picture = page.with_suffix(".png")
-            print(picture if take_picture(page, picture) else "no browser found: no picture")
+            print(
+                picture
+                if take_picture(page, picture)
+                else "no picture: it takes playwright and a Chromium"
+            )
     return 0
 
 
