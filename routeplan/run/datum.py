@@ -59,15 +59,16 @@ def placed_shapes(layer: Layer, *, run_crs: CRS | None, trouble: Trouble) -> lis
     ends = np.cumsum([0, *(len(shape.xy) for shape in layer.shapes)])
     placed = []
     for (shape, is_drawn), start, end in zip(dense, ends, ends[1:], strict=False):
-        own = lonlat[start:end]
+        own = frozen(lonlat[start:end])
+        same = datum_lonlat is lonlat
         if not np.isfinite(own).all():
             _unplaceable(shape, crs, trouble)
             continue
         placed.append(
             PlacedShape(
                 shape=shape,
-                lonlat=frozen(own),
-                datum_lonlat=frozen(datum_lonlat[start:end]),
+                lonlat=own,
+                datum_lonlat=own if same else frozen(datum_lonlat[start:end]),
                 heights_m=_own_heights(heights, start, end),
                 is_drawn=is_drawn,
                 semi_major_m=ellipsoid[0],
@@ -165,14 +166,17 @@ def _on_earth(xy: Floats, crs: CRS) -> tuple[Floats, Floats]:
 
 
 def _wrapped(lonlat: Floats) -> Floats:
-    lon = wrapped(lonlat[:, 0])
-    return lonlat if lon is lonlat[:, 0] else np.column_stack([lon, lonlat[:, 1]])
+    if not (np.abs(lonlat[:, 0]) > 180.0).any():
+        return lonlat
+    return np.column_stack([wrapped(lonlat[:, 0]), lonlat[:, 1]])
 
 
 def _transformed(xy: Floats, crs: CRS, target: str | None) -> Floats:
     transformer = _transformer(crs, target)
     lon, lat = transformer.transform(xy[:, 0], xy[:, 1], errcheck=False)
-    return np.column_stack([wrapped(np.asarray(lon)), lat])
+    lonlat = np.column_stack([lon, lat])
+    lonlat[np.isinf(lonlat)] = np.nan  # how the library marks what it cannot transform
+    return _wrapped(lonlat)
 
 
 @cache

@@ -178,9 +178,9 @@ def _shapes(feature: object, number: int, *, file: str, trouble: Trouble) -> Ite
             )
 
 
-def _fault(trouble: Trouble, source: Source, what: str, value: object = None) -> None:
-    text = "" if value is None else shown(value)
-    trouble.add(GeometryError, Problem(where=str(source), what=what, value=text), file=source.file)
+def _fault(trouble: Trouble, source: Source, what: str, value: object) -> None:
+    problem = Problem(where=str(source), what=what, value=shown(value))
+    trouble.add(GeometryError, problem, file=source.file)
 
 
 def _members(geometry: object, source: Source, trouble: Trouble) -> Iterator[tuple[str, Any]]:

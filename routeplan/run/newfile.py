@@ -36,7 +36,7 @@ _OWN_INTERFACE = """\
 """
 
 
-def new_run_text(geometry_path: str | Path) -> str:
+def new_run_text(geometry_path: str | Path, *, named: str = "") -> str:
     """
     Return the text of a run file for a vector file, to be saved beside it.
 
@@ -47,6 +47,8 @@ def new_run_text(geometry_path: str | Path) -> str:
     ----------
     geometry_path
         The vector file.
+    named
+        What the run file calls it; left out: its own name, for a run file beside it.
 
     Raises
     ------
@@ -54,13 +56,13 @@ def new_run_text(geometry_path: str | Path) -> str:
         If the vector file cannot be planned as it is.
     """
     path = Path(geometry_path)
-    if path.suffix.lower() == ".toml" or not is_plain_text(path.name):
+    if path.suffix.lower() == ".toml" or not is_plain_text(named or path.name):
         problem = Problem(
             where=path.name, what="is no vector file a run file can name", value=shown(path.name)
         )
         raise RunFileError(problem)
     run = read_run(path)
-    parts = [_head(run, path.name), *_sections(), _OWN_INTERFACE, _circuit(run)]
+    parts = [_head(run, named or path.name), *_sections(), _OWN_INTERFACE, _circuit(run)]
     return "\n".join(parts)
 
 

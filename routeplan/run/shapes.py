@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Literal
 import numpy as np
 
 from routeplan.run.model import Floats, Source
+from routeplan.run.trouble import cleaned_text
 
 if TYPE_CHECKING:
     from pyproj import CRS
@@ -66,7 +67,7 @@ def feature_label(name: object, identity: object, number: int) -> str:
     ('"Hill"', 'id 7', '3')
     """
     if isinstance(name, str) and name.strip():
-        short = " ".join(name.split())
+        short = cleaned_text(" ".join(name.split()))
         return f'"{short[:57]}..."' if len(short) > 60 else f'"{short}"'
     if isinstance(identity, str | int) and not isinstance(identity, bool):
         return f"id {str(identity)[:60]}" if abs(_size(identity)) < 10**30 else str(number)
