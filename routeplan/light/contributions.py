@@ -60,8 +60,7 @@ def loss_lines(
         attenuation = attenuation_of(fibre_type, measured.get(key, ()))
         item = f"fibre {fibre_type}, measured {key}" if key else f"fibre {fibre_type}"
         found.append(fibre_line(item, lengths_m, wavelength_nm, attenuation=attenuation))
-    for (item, loss), count in _parts(path, wavelength_nm, practice, measured).items():
-        found.append(_line(item, count, loss))
+    found += _parts(path, wavelength_nm, practice, measured)
     for (one, other), count in _mismatches(path).items():
         loss = fibre_mismatch(find_fibre(one), find_fibre(other), wavelength_nm)
         found.append(_line(f"mode-field mismatch {one} to {other}", count, loss))
@@ -157,12 +156,12 @@ def measured_of(step: Glass, measured: Measured) -> Sequence[MeasuredPoint]:
 
 
 def glass_spans(path: Path) -> tuple[tuple[Fibre, float], ...]:
-    """Return fibre type and glass length [m] of every span of a path, existing ones included."""
-    return tuple(
-        (find_fibre(step.fibre_type), step.glass_m)
-        for step in path.steps
-        if isinstance(step, Glass | ExistingSpan)
-    )
+    """Return every fibre type of a path and its whole length [m], existing spans included."""
+    metres: dict[str, float] = {}
+    for step in path.steps:
+        if isinstance(step, Glass | ExistingSpan):
+            metres[step.fibre_type] = metres.get(step.fibre_type, 0.0) + step.glass_m
+    return tuple((find_fibre(name), glass_m) for name, glass_m in metres.items())
 
 
 def unlike_joints(path: Path) -> Iterator[tuple[str, str, str]]:
@@ -186,17 +185,23 @@ _COMMON = ("splices in joints", "pigtail splices", "connector pairs")
 
 def _parts(
     path: Path, wavelength_nm: float, practice: LossPractice, measured: Measured
-) -> dict[tuple[str, PartLoss], int]:
-    """Return how often each part comes, those of practice first, then in order of the path."""
-    counts: dict[tuple[str, PartLoss], int] = {}
+) -> Iterator[BudgetLine]:
+    """Yield a line for each kind of part: those of practice first, then in order of the path."""
+    counts: dict[str, int] = dict.fromkeys(_COMMON, 0)
+    own: dict[tuple[str, PartLoss], int] = {}
     for step in path.steps:
         if isinstance(step, Glass | ExistingSpan):
             continue
-        loss = step_loss(step, wavelength_nm, practice=practice, measured=measured)
-        if loss is not None:
-            counts[_item(step), loss] = counts.get((_item(step), loss), 0) + 1
-    rank = {item: number for number, item in enumerate(_COMMON)}
-    return dict(sorted(counts.items(), key=lambda entry: rank.get(entry[0][0], len(rank))))
+        item = _item(step)
+        if item in counts:
+            counts[item] += 1
+        elif loss := step_loss(step, wavelength_nm, practice=practice, measured=measured):
+            own[item, loss] = own.get((item, loss), 0) + 1
+    for item, count in counts.items():
+        if count:
+            yield _line(item, count, (_connector if item == _COMMON[2] else _splice)(practice))
+    for (item, loss), count in own.items():
+        yield _line(item, count, loss)
 
 
 def _item(step: Step) -> str:

@@ -110,7 +110,7 @@ def path_findings(path: Path, wavelength_nm: float, *, measured: Measured) -> li
     texts = dict.fromkeys(
         _ceiling_text(step, wavelength_nm, measured)
         for step in path.steps
-        if isinstance(step, Glass)
+        if measured and isinstance(step, Glass)
     )
     found += [Finding(verdict=None, text=text) for text in texts if text]
     return found
