@@ -134,7 +134,7 @@ def _degrees_agree(layer: Layer, xy: Floats, crs: CRS, trouble: Trouble) -> bool
     bad = int(np.argmin(good))
     x, y = xy[:, 0], xy[:, 1]
     if np.abs(xy).max() <= _TURN_DEG:
-        if np.abs(x).max() <= 90.0 and _can_be_degrees(xy[:, ::-1]).all():
+        if good.mean() < 0.5 and np.abs(x).max() <= 90.0 and _can_be_degrees(xy[:, ::-1]).all():
             _swapped(layer, xy, bad, trouble)
             return False
         for at in _first_of_shapes(layer, ~good):

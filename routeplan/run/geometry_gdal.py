@@ -181,7 +181,7 @@ def _said(text: str) -> tuple[str, str]:
     """Return what GDAL said in our words, and in its own where they tell more."""
     if "not recognized as being in a supported file format" in text:
         return "is of no format that can be read, or is damaged", ""
-    if "malformed" in text or "parsing" in text.lower():
+    if any(word in text.lower() for word in ("malformed", "parsing", "not a database")):
         return "is damaged or breaks off before its end", text.partition(";")[0][:300]
     return "cannot be read", text[:300]
 
