@@ -3,16 +3,15 @@
 from __future__ import annotations
 
 import argparse
-import contextlib
-import json
 import os
 import sys
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Callable, Sequence
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NoReturn
 
 from routeplan import __version__
 from routeplan.errors import InputError, Problem, RouteplanError
+from routeplan.terminal import progress, say, say_json, say_json_text, visible
 
 if TYPE_CHECKING:
     from routeplan.planning import Plan
@@ -22,10 +21,22 @@ __all__ = ["main", "make_parser"]
 _EPILOG = """exit codes: 0 nothing fails; 1 planned, all sheets written, some check fails;
 2 the input is wrong or no layout is possible, nothing written."""
 
+_RUN_HELP = "a run file, a folder holding run.toml, or a bare geometry file"
+
+_SHOWN_WARNINGS = 12
+
+
+class _Parser(argparse.ArgumentParser):
+    """A parser whose complaints are problems like all others."""
+
+    def error(self, message: str) -> NoReturn:
+        remedy = f"See {self.prog} --help"
+        raise InputError(Problem(where="command line", what=message, remedy=remedy))
+
 
 def make_parser() -> argparse.ArgumentParser:
     """Return the parser of every command."""
-    parser = argparse.ArgumentParser(
+    parser = _Parser(
         prog="routeplan",
         description="Plan outside-plant singlemode fibre runs, from lengths and reels to light.",
         epilog=_EPILOG,
@@ -59,9 +70,6 @@ def make_parser() -> argparse.ArgumentParser:
     return parser
 
 
-_RUN_HELP = "a run file, a folder holding run.toml, or a bare geometry file"
-
-
 def _add_json(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("--json", action="store_true", help="print the result as JSON on stdout")
 
@@ -75,38 +83,25 @@ def main(argv: Sequence[str] | None = None) -> int:
     argv
         Arguments without the program's name; None takes those of the process.
     """
+    given = sys.argv[1:] if argv is None else list(argv)
     try:
-        arguments = make_parser().parse_args(argv)
-    except SystemExit as stop:  # argparse has said why
-        return stop.code if isinstance(stop.code, int) else 2
-    act: Callable[[argparse.Namespace], int] = arguments.act
-    try:
-        code = act(arguments)
-        sys.stdout.flush()
-        return code
-    except RouteplanError as error:
-        return _complain(error, as_json=getattr(arguments, "json", False))
-    except BrokenPipeError:
-        # Whoever read our output has gone; keep the interpreter from complaining at exit.
-        with contextlib.suppress(OSError, ValueError):
-            os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        arguments = make_parser().parse_args(given)
+        act: Callable[[argparse.Namespace], int] = arguments.act
+        return act(arguments)
+    except SystemExit:  # help or version has been printed
         return 0
+    except RouteplanError as error:
+        return _complain(error, as_json="--json" in given)
     except KeyboardInterrupt:
         return 130
 
 
 def _complain(error: RouteplanError, *, as_json: bool) -> int:
     for problem in error.problems:
-        print(_one_line(str(problem)), file=sys.stderr)
+        say(visible(str(problem)), stream=sys.stderr)
     if as_json:
-        problems = [problem.as_dict() for problem in error.problems]
-        print(json.dumps({"problems": problems}, ensure_ascii=False, indent=1))
+        say_json({"problems": [problem.as_dict() for problem in error.problems]})
     return 2
-
-
-def _one_line(text: str) -> str:
-    """Return text with what could steer a terminal made visible."""
-    return "".join(c if c.isprintable() else repr(c)[1:-1] for c in text)
 
 
 def _plan(arguments: argparse.Namespace) -> int:
@@ -115,7 +110,7 @@ def _plan(arguments: argparse.Namespace) -> int:
     from routeplan.sheets.summary import summary_text
     from routeplan.sheets.write import SHEET_NAMES, write_sheets
 
-    with _progress(3 + len(SHEET_NAMES)) as advance:
+    with progress(2 + len(SHEET_NAMES)) as advance:
         advance("reading")
         run = read_run(arguments.run)
         advance("planning")
@@ -123,11 +118,11 @@ def _plan(arguments: argparse.Namespace) -> int:
         folder = Path(arguments.out) if arguments.out else _default_folder(arguments.run)
         paths = write_sheets(planned, folder, on_sheet=advance)
     if arguments.json:
-        text = next(path for path in paths if path.name == "plan.json").read_text("utf-8")
-        print(text, end="")
+        document = next(path for path in paths if path.name == "plan.json")
+        say_json_text(document.read_text("utf-8").rstrip("\n"))
     else:
-        print(summary_text(planned, folder=folder, names=[path.name for path in paths]), end="")
-        _warn(planned)
+        say(summary_text(planned, folder=folder, names=[path.name for path in paths]))
+    _warn(planned, most=_SHOWN_WARNINGS)
     return 1 if planned.verdict == "fails" else 0
 
 
@@ -137,14 +132,17 @@ def _default_folder(run: str) -> Path:
         return path / "sheets"
     if path.suffix.lower() == ".toml":
         return path.parent / "sheets"
-    return path.parent / f"{path.name.split('.')[0] or path.stem}_sheets"
+    # A layer named behind a bar is not part of the file's own name.
+    file = path if path.exists() else Path(run.rpartition("|")[0] or run)
+    return file.parent / f"{file.stem}_sheets"
 
 
-def _warn(planned: Plan, *, most: int = 12) -> None:
+def _warn(planned: Plan, *, most: int) -> None:
     for where, message in planned.warnings[:most]:
-        print(_one_line(f"warning: {where}: {message}"), file=sys.stderr)
+        say(visible(f"warning: {where}: {message}"), stream=sys.stderr)
     if len(planned.warnings) > most:
-        print(f"warning: and {len(planned.warnings) - most} more, in the report", file=sys.stderr)
+        more = len(planned.warnings) - most
+        say(f"warning: and {more} more, in report.html", stream=sys.stderr)
 
 
 def _check(arguments: argparse.Namespace) -> int:
@@ -152,13 +150,14 @@ def _check(arguments: argparse.Namespace) -> int:
     from routeplan.run import read_run
 
     planned = plan(read_run(arguments.run))
-    if arguments.json:
-        warnings = [{"where": w, "message": m} for w, m in planned.warnings]
-        print(json.dumps({"problems": [], "warnings": warnings}, ensure_ascii=False, indent=1))
-        return 0
-    _warn(planned, most=len(planned.warnings))
     count = len(planned.warnings)
-    print(f"{planned.run.title}: no problem, {count} warning{'' if count == 1 else 's'}")
+    if arguments.json:
+        warnings = [{"where": where, "message": text} for where, text in planned.warnings]
+        say_json({"problems": [], "warnings": warnings})
+    else:
+        noun = "warning" if count == 1 else "warnings"
+        say(f"{visible(planned.run.title)}: no problem, {count} {noun}")
+    _warn(planned, most=count)
     return 0
 
 
@@ -167,10 +166,10 @@ def _new(arguments: argparse.Namespace) -> int:
 
     geometry = Path(arguments.geometry)
     path = Path(arguments.out) if arguments.out else geometry.parent / "run.toml"
-    text = new_run_text(geometry)
+    text = new_run_text(geometry, named=_seen_from(path.parent, geometry))
     try:
-        with path.open("x", encoding="utf-8", newline="\n") as file:
-            file.write(text)
+        with path.open("xb") as file:
+            file.write(text.encode("utf-8", "replace"))
     except OSError as error:
         raise InputError(
             Problem(
@@ -180,32 +179,24 @@ def _new(arguments: argparse.Namespace) -> int:
                 remedy="Choose another file with --out",
             )
         ) from None
-    print(f"wrote {path}")
+    say(visible(f"wrote {path}"))
     return 0
+
+
+def _seen_from(folder: Path, file: Path) -> str:
+    """Return the name of a file as a run file in `folder` has it."""
+    try:
+        parents = os.path.realpath(file.parent), os.path.realpath(folder)
+        return Path(os.path.relpath(*parents), file.name).as_posix()
+    except ValueError:  # on another drive
+        return file.absolute().as_posix()
 
 
 def _tables(arguments: argparse.Namespace) -> int:
     from routeplan.sheets.published import published_json, published_text
 
     if arguments.json:
-        print(json.dumps(published_json(arguments.name), ensure_ascii=False, indent=1))
+        say_json(published_json(arguments.name))
     else:
-        print(published_text(arguments.name), end="")
+        say(published_text(arguments.name).rstrip("\n"))
     return 0
-
-
-@contextlib.contextmanager
-def _progress(total: int) -> Iterator[Callable[[str], None]]:
-    """Yield a function that names the next step; a bar shows after a second, on a terminal only."""
-    if not sys.stderr.isatty():
-        yield lambda _: None
-        return
-    from tqdm import tqdm
-
-    with tqdm(total=total, delay=1.0, leave=False, bar_format="{desc:24}|{bar}|") as bar:
-
-        def advance(name: str) -> None:
-            bar.set_description_str(name)
-            bar.update(1)
-
-        yield advance

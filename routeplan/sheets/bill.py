@@ -6,18 +6,23 @@ from collections import Counter
 from collections.abc import Iterator
 
 from routeplan.planning import Plan
-from routeplan.sheets.tables import Row
+from routeplan.run.defaults import practice_rows
+from routeplan.sheets.columns import Row
 from routeplan.units import amount_from_cents, cents_from_amount, m_from_mm
 
-__all__ = ["bill_rows", "pigtail_counts"]
+__all__ = ["bill_rows", "has_invented_prices", "pigtail_counts"]
+
+_REEL_PRICES = ("costs.cable_per_m", "costs.reel_each")
+_STOCK_PRICES = ("costs.stock_per_m",)
+_JOINT_PRICES = ("costs.joint_each", "costs.splice_each")
 
 
 def bill_rows(planned: Plan) -> Iterator[Row]:
     """
     Yield the lines of the bill: cable on reels, closures with their splices, what light needs.
 
-    Prices are the run's own; parts without one have none. The priced lines add up to the cost of
-    the layout.
+    Prices are the run's own, marked where they are invented defaults; parts without one have
+    none. The priced lines add up to the cost of the layout.
 
     Parameters
     ----------
@@ -29,25 +34,43 @@ def bill_rows(planned: Plan) -> Iterator[Row]:
     yield from _circuit_lines(planned)
 
 
+def has_invented_prices(
+    planned: Plan, keys: tuple[str, ...] = _REEL_PRICES + _JOINT_PRICES
+) -> bool:
+    """Return whether any of these prices is a default that the table calls invented."""
+    invented = {row.name for row in practice_rows() if row.confidence == "invented"}
+    return any(key in invented and key not in planned.run.given for key in keys)
+
+
+def _noted(planned: Plan, note: str, keys: tuple[str, ...]) -> str:
+    return f"{note}; invented default price" if has_invented_prices(planned, keys) else note
+
+
 def _reel_lines(planned: Plan) -> Iterator[Row]:
     makes = {cable.id: cable.make for cable in planned.layout.cables}
     cable_of = {section.id: section.cable for section in planned.layout.sections}
-    reels = {reel.id: reel for reel in planned.layout.reels}
+    # A reel holds one make of cable, however many sections are cut from it.
+    first_section = {cut.reel: cut.section for cut in reversed(planned.layout.cuts)}
     groups: Counter[tuple[str, int, str, int]] = Counter()
-    for cut in planned.layout.cuts:
-        reel = reels[cut.reel]
-        make = makes[cable_of[cut.section]]
+    for reel in planned.layout.reels:
+        make = makes[cable_of[first_section[reel.id]]]
         what = f"Cable, {make.fibre_count} fibres {make.fibre_type}"
         groups[what, reel.length_mm, reel.source, reel.cost_cents] += 1
     for (what, length_mm, source, cents), count in sorted(groups.items()):
+        keys = _STOCK_PRICES if source == "stock" else _REEL_PRICES
         yield {
-            "item": f"{what}, reel of {m_from_mm(length_mm):g} m",
+            "item": f"{what}, reel of {_metres_text(length_mm)} m",
             "quantity": count,
             "unit": "reel",
             "each": amount_from_cents(cents),
             "total": amount_from_cents(cents * count),
-            "note": source,
+            "note": _noted(planned, source, keys),
         }
+
+
+def _metres_text(length_mm: int) -> str:
+    """Return whole millimetres as metres with no more decimals than they need."""
+    return f"{m_from_mm(length_mm):.3f}".rstrip("0").rstrip(".")
 
 
 def _joint_lines(planned: Plan) -> Iterator[Row]:
@@ -61,19 +84,18 @@ def _joint_lines(planned: Plan) -> Iterator[Row]:
             "unit": "joint",
             "each": amount_from_cents(cents),
             "total": amount_from_cents(cents * count),
-            "note": ", ".join(names),
+            "note": _noted(planned, ", ".join(names), _JOINT_PRICES),
         }
     pigtails = sum(pigtail_counts(planned))
     if pigtails:
-        each = cents_from_amount(costs.splice_each)
-        yield {
-            "item": "Pigtail with splice behind a panel",
-            "quantity": pigtails,
-            "unit": "splice",
-            "each": None,
-            "total": None,
-            "note": f"not in the layout's cost; a splice is {amount_from_cents(each):.2f}",
-        }
+        each = amount_from_cents(cents_from_amount(costs.splice_each))
+        note = f"not in the layout's cost; a splice is {each:.2f}"
+        yield _unpriced(
+            "Pigtail with splice behind a panel",
+            pigtails,
+            "splice",
+            _noted(planned, note, ("costs.splice_each",)),
+        )
 
 
 def pigtail_counts(planned: Plan) -> Iterator[int]:
@@ -85,21 +107,20 @@ def pigtail_counts(planned: Plan) -> Iterator[int]:
 
 def _circuit_lines(planned: Plan) -> Iterator[Row]:
     for circuit in planned.circuits:
+        name = circuit.order.name
         if circuit.order.interface:
-            yield _unpriced(
-                f"Optical interface {circuit.order.interface}", 2, "end", circuit.order.name
-            )
-        needed = Counter(
+            yield _unpriced(f"Optical interface {circuit.order.interface}", 2, "end", name)
+        needed = {
             (budget.attenuator_db, budget.direction)
             for budget in circuit.budgets
             if budget.attenuator_db
-        )
+        }
         for attenuator_db, direction in sorted(needed):
             yield _unpriced(
                 f"Fixed attenuator {attenuator_db:g} dB",
                 1,
                 "piece",
-                f"{circuit.order.name}, {direction}, at the receiver",
+                f"{name}, {direction}, at the receiver",
             )
 
 

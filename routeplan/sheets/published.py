@@ -63,14 +63,14 @@ def published_text(name: str | None) -> str:
 def _refuse_unknown(name: str) -> None:
     if name in table_names():
         return
-    near = get_close_matches(name, table_names(), n=1)
+    near = get_close_matches(name[:100], table_names(), n=1)
+    hint = f"Did you mean {near[0]}? " if near else ""
     raise InputError(
         Problem(
             where="tables",
-            what="is not a table",
+            what="there is no table of that name",
             value=repr(name),
-            limit=", ".join(table_names()),
-            remedy=f"Did you mean {near[0]}?" if near else "",
+            remedy=hint + f"There are {', '.join(table_names())}",
         )
     )
 
@@ -101,4 +101,5 @@ def _shown(value: object) -> str:
         return ", ".join(map(_shown, value))
     if isinstance(value, dict):
         return ", ".join(f"{key} {_shown(entry)}" for key, entry in value.items())
-    return f"{value:g}" if isinstance(value, float) else str(value)
+    # Every published digit counts; only the ".0" of a whole number does not.
+    return repr(value).removesuffix(".0") if isinstance(value, float) else str(value)

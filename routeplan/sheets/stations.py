@@ -54,13 +54,14 @@ def _marks(planned: Plan, laid: LaidCable) -> dict[int, list[_Mark]]:
         marks.setdefault(chain_mm, []).append(_Mark(kind=kind, name=name, reach_kind=reach_kind))
 
     way = laid.way
+    own = [joint for joint in planned.layout.joints if joint.mark.cable == way.cable.id]
     node_joints = {joint.node: joint.id for joint in planned.layout.joints if joint.node}
     for at, node_id in ((0, way.cable.start), (way.length_mm, way.cable.end)):
         node = planned.ground.node(node_id)
         reach = node.place.kind if node.place and not node.is_site else None
         put(at, "site" if node.is_site else "joint", node_joints.get(node_id, node.name), reach)
-    for joint in planned.layout.joints:
-        if joint.mark.cable == way.cable.id and joint.node is None:
+    for joint in own:
+        if joint.node is None:
             put(joint.mark.chain_mm, "joint", joint.id)
     for leg, forward, offset in way.legs:
         for point in leg.points:
@@ -70,7 +71,7 @@ def _marks(planned: Plan, laid: LaidCable) -> dict[int, list[_Mark]]:
     for step in laid.steps:
         if step.kind == "loop":
             put(step.chain_mm, "loop", step.name)
-    chosen = {joint.mark.chain_mm for joint in planned.layout.joints}
+    chosen = {joint.mark.chain_mm for joint in own}
     for spot in way.spots:
         if not spot.assumed or spot.chain_mm in chosen:
             reach_kind = None if spot.kind == "assumed" else spot.kind

@@ -8,12 +8,17 @@ from collections.abc import Iterator, Sequence
 from pathlib import Path
 
 from routeplan.light.model import Budget
-from routeplan.planning import Plan
+from routeplan.planning import Plan, assumptions
+from routeplan.sheets.bill import has_invented_prices
+from routeplan.terminal import visible
 from routeplan.units import amount_from_cents, ft_from_m, m_from_mm
 
 __all__ = ["summary_text"]
 
 _COLOURS = {"fits": "\033[32m", "fails": "\033[31m", "unknown": "\033[33m"}
+_REELS_SHOWN = 20
+_BUDGETS_SHOWN = 20
+_NAME_SHOWN = 40
 
 
 def summary_text(planned: Plan, *, folder: Path, names: Sequence[str]) -> str:
@@ -30,91 +35,112 @@ def summary_text(planned: Plan, *, folder: Path, names: Sequence[str]) -> str:
         Their file names.
     """
     lines = [
-        _printable(planned.run.title),
+        visible(planned.run.title),
         "",
-        *_table(list(_length_rows(planned))),
+        *_table(list(_figure_rows(planned))),
         "",
         *_table([["reel", "length", "for", "joint at its end"], *_reel_rows(planned)]),
         "",
         *_light_lines(planned),
         "",
-        f"{folder}: {', '.join(names)}",
+        f"{visible(str(folder))}: {', '.join(names)}",
     ]
-    return "\n".join(line.rstrip() for line in lines) + "\n"
+    return "\n".join(line.rstrip() for line in lines)
 
 
-def _printable(text: str) -> str:
-    return "".join(c if c.isprintable() else " " for c in text)
+def _grouped(number: float, digits: int) -> str:
+    return f"{number:,.{digits}f}".replace(",", " ")
 
 
 def _length(planned: Plan, length_mm: int) -> str:
     metres = m_from_mm(length_mm)
     if planned.run.units == "us":
-        return f"{ft_from_m(metres):,.0f} ft"
-    return f"{metres:,.1f} m".replace(",", " ")
-
-
-def _length_rows(planned: Plan) -> Iterator[list[str]]:
-    layout = planned.layout
-    ground_mm = sum(leg.length_mm for leg in planned.ground.legs)
-    sheath_mm = sum(section.sheath_mm for section in layout.sections)
-    glass_mm = sum(int(rulers.glass_mm[-1]) for rulers in layout.rulers)
-    ordered_mm = sum(reel.length_mm for reel in layout.reels)
-    currency = planned.run.practice.costs.currency
-    proven = "proven least" if layout.proof.optimal else "not proven least"
-    yield ["ground", _length(planned, ground_mm)]
-    yield ["cable", _length(planned, sheath_mm)]
-    yield ["glass", _length(planned, glass_mm)]
-    yield ["to order", f"{_length(planned, ordered_mm)} on {_counted(len(layout.reels), 'reel')}"]
-    yield [
-        "joints",
-        f"{len(layout.joints)}, {_counted(sum(planned.splice_counts.values()), 'splice')}",
-    ]
-    cost = amount_from_cents(layout.proof.cost_cents)
-    yield ["cost", f"{cost:,.2f} {currency}, {proven}".replace(",", " ", cost >= 1000)]
+        return f"{_grouped(ft_from_m(metres), 0)} ft"
+    return f"{_grouped(metres, 1)} m"
 
 
 def _counted(count: int, noun: str) -> str:
     return f"{count} {noun}{'' if count == 1 else 's'}"
 
 
-def _reel_rows(planned: Plan, most: int = 20) -> list[list[str]]:
+def _figure_rows(planned: Plan) -> Iterator[list[str]]:
+    layout = planned.layout
+    bought = [reel for reel in layout.reels if reel.source != "stock"]
+    lengths_mm = {
+        "ground": sum(leg.length_mm for leg in planned.ground.legs),
+        "cable": sum(section.sheath_mm for section in layout.sections),
+        "glass": sum(int(rulers.glass_mm[-1]) for rulers in layout.rulers),
+    }
+    for name, length_mm in lengths_mm.items():
+        yield [name, _length(planned, length_mm)]
+    ordered = _length(planned, sum(reel.length_mm for reel in bought))
+    yield ["to order", f"{ordered} on {_counted(len(bought), 'reel')}"]
+    splices = _counted(sum(planned.splice_counts.values()), "splice")
+    yield ["joints", f"{len(layout.joints)}, {splices}"]
+    yield ["cost", _cost_text(planned)]
+    yield ["assumed", f"{_counted(len(assumptions(planned)), 'value')}, see assumptions.csv"]
+
+
+def _cost_text(planned: Plan) -> str:
+    proof = planned.layout.proof
+    amount = _grouped(amount_from_cents(proof.cost_cents), 2)
+    currency = visible(planned.run.practice.costs.currency)
+    proven = "proven least" if proof.optimal else "not proven least"
+    invented = ", some prices invented" if has_invented_prices(planned) else ""
+    return f"{amount} {currency}, {proven}{invented}"
+
+
+def _short(name: str) -> str:
+    text = visible(name)
+    return text if len(text) <= _NAME_SHOWN else f"{text[: _NAME_SHOWN - 3]}..."
+
+
+def _reel_rows(planned: Plan) -> Iterator[list[str]]:
     layout = planned.layout
     sections = {section.id: section for section in layout.sections}
     reels = {reel.id: reel for reel in layout.reels}
     places = {joint.id: joint for joint in layout.joints}
-    rows = []
-    for cut in layout.cuts[:most]:
+    for cut in layout.cuts[:_REELS_SHOWN]:
         section, reel = sections[cut.section], reels[cut.reel]
         joint = places.get(section.end)
         at = f"{joint.id} {joint.reach_name}" if joint else section.end
         needed = _length(planned, section.needed_mm)
-        rows.append([reel.id, _length(planned, reel.length_mm), needed, _printable(at)])
-    if len(layout.cuts) > most:
-        rows.append(["...", "", "", f"{len(layout.cuts) - most} more in reels.csv"])
-    return rows
+        yield [reel.id, _length(planned, reel.length_mm), needed, _short(at)]
+    if len(layout.cuts) > _REELS_SHOWN:
+        yield ["...", "", "", f"{len(layout.cuts) - _REELS_SHOWN} more in reels.csv"]
 
 
-def _light_lines(planned: Plan) -> list[str]:
-    if not planned.circuits:
-        return ["no circuit"]
-    head = ["circuit", "nm", "way", "nominal", "worst", "in hand", "attenuator", "verdict"]
+def _light_lines(planned: Plan) -> Iterator[str]:
     budgets = [budget for circuit in planned.circuits for budget in circuit.budgets]
-    lines = _table([head, *(_budget_row(planned, budget) for budget in budgets)])
-    reasons = dict.fromkeys(
-        f"{budget.circuit}: {reason}"
-        for budget in budgets
+    if not budgets:
+        yield "no circuit"
+        return
+    # What fails comes first where there is too much to show.
+    shown = sorted(budgets, key=_is_harmless) if len(budgets) > _BUDGETS_SHOWN else budgets
+    head = ["circuit", "nm", "way", "nominal", "worst", "in hand", "attenuator", "verdict"]
+    rows = [_budget_row(planned, budget) for budget in shown[:_BUDGETS_SHOWN]]
+    table_head, *table_rows = _table([head, *rows])
+    yield table_head
+    yield from map(_coloured, table_rows)
+    if len(budgets) > _BUDGETS_SHOWN:
+        yield f"...  {len(budgets) - _BUDGETS_SHOWN} more in loss_budget.csv"
+    yield from dict.fromkeys(
+        visible(f"{_short(budget.circuit)}: {reason}")
+        for budget in shown[:_BUDGETS_SHOWN]
         if budget.verdict != "fits"
         for reason in budget.reasons
     )
-    return [*(_coloured(line) for line in lines), *(_printable(reason) for reason in reasons)]
+
+
+def _is_harmless(budget: Budget) -> bool:
+    return budget.verdict != "fails"
 
 
 def _budget_row(planned: Plan, budget: Budget) -> list[str]:
     on_worst = planned.run.practice.loss.verdict_on == "worst"
     margin = budget.margin_db if on_worst else budget.statistical_margin_db
     return [
-        _printable(budget.circuit),
+        _short(budget.circuit),
         f"{budget.wavelength_nm:g}",
         budget.direction,
         f"{budget.nominal_db:.2f} dB",
@@ -129,11 +155,8 @@ def _coloured(line: str) -> str:
     """Colour the verdict at a line's end, on a terminal only."""
     if not sys.stdout.isatty() or os.environ.get("NO_COLOR"):
         return line
-    for word, colour in _COLOURS.items():
-        if line.rstrip().endswith(word):
-            head = line.rstrip().removesuffix(word)
-            return f"{head}{colour}{word}\033[0m"
-    return line
+    head, _, word = line.rstrip().rpartition(" ")
+    return f"{head} {_COLOURS[word]}{word}\033[0m"
 
 
 def _table(rows: Sequence[Sequence[str]]) -> list[str]:
