@@ -11,6 +11,7 @@ from pathlib import Path
 from routeplan.cli import make_parser
 from routeplan.run.names import colour_codes, fibre_types, interface_classes
 from routeplan.run.reference import KeyRow, key_rows, run_file_schema, toml_value
+from routeplan.sheets.schema import plan_schema_text
 from routeplan.sheets.tables import HEAD, TABLES, Column, Table
 from routeplan.sheets.write import LIST_NAME, SHEET_NAMES
 
@@ -333,6 +334,7 @@ PAGES: dict[str, Callable[[], str]] = {
     "run_file.md": run_file_page,
     "run_file.schema.json": run_file_schema_text,
     "commands.md": commands_page,
+    "plan.schema.json": plan_schema_text,
     "sheets.md": sheets_page,
 }
 

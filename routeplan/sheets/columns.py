@@ -51,7 +51,7 @@ class Table:
     One table of a plan.
 
     `path` says where its rows are in `plan.json`, outer lists first; a CSV also shows the columns
-    `carried` from the rows around them.
+    `carried` from the rows around them. Where `is_single` there is one row and no list.
     """
 
     name: str
@@ -60,3 +60,4 @@ class Table:
     columns: tuple[Column, ...]
     csv: str = ""
     carried: tuple[tuple[str, str], ...] = ()
+    is_single: bool = False

@@ -17,12 +17,10 @@ from routeplan.sheets.cautions import cautions_for
 from routeplan.sheets.power import power_rows
 from routeplan.sheets.rows import row_of, shaped
 from routeplan.sheets.stations import station_rows
-from routeplan.sheets.tables import Json, Row
+from routeplan.sheets.tables import SCHEMA, Json, Row
 from routeplan.units import amount_from_cents, m_from_mm
 
-__all__ = ["SCHEMA", "plan_document"]
-
-SCHEMA = 1
+__all__ = ["plan_document"]
 
 
 def plan_document(planned: Plan) -> dict[str, Json]:

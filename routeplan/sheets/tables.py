@@ -6,7 +6,10 @@ from collections.abc import Mapping
 
 from routeplan.sheets.columns import Column, Json, Row, Table
 
-__all__ = ["HEAD", "TABLES", "Column", "Json", "Row", "Table", "csv_tables", "table"]
+__all__ = ["HEAD", "SCHEMA", "TABLES", "Column", "Json", "Row", "Table", "csv_tables", "table"]
+
+SCHEMA = 1
+"""Version of the layout of `plan.json`."""
 
 _PLACEMENTS = ("aerial", "duct", "buried", "surface", "indoor", "bridge", "water", "existing")
 _VERDICTS = ("fits", "fails", "unknown")
@@ -73,6 +76,7 @@ _TABLES = (
         name="totals",
         title="Totals",
         path=("totals",),
+        is_single=True,
         columns=(
             _metres("ground_m", "Way on the ground, all legs."),
             _metres("sheath_m", "Cable along the jacket, all sections."),
@@ -222,6 +226,7 @@ _TABLES = (
         name="layout",
         title="Layout",
         path=("layout",),
+        is_single=True,
         columns=(
             Column(key="optimal", kind="flag", text="Whether the cost is proven least."),
             _money("cost", "Reels and joints."),
@@ -240,6 +245,7 @@ _TABLES = (
         name="one_fewer",
         title="One joint fewer",
         path=("layout", "one_fewer"),
+        is_single=True,
         columns=(_count("joint_count", "Joints."), _money("cost", "Reels and joints.")),
     ),
     Table(
