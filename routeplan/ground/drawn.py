@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from typing import TypeAlias
 
 import numpy as np
 from numpy.typing import NDArray
@@ -13,7 +14,9 @@ from routeplan.run.model import Floats, Line
 
 __all__ = ["Drawn", "cut_drawn", "draw_line", "joined_drawn", "reversed_drawn", "shape_of"]
 
-_SHAPE_STEP_M = 500.0  # interpolating longitude and latitude over more would leave the geodesic
+Flags: TypeAlias = NDArray[np.bool_]
+
+_SHAPE_STEP_M = 200.0  # between its ends longitude and latitude leave the geodesic by 2 mm at 65 N
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -21,16 +24,19 @@ class Drawn:
     """
     A measured polyline.
 
-    `lonlat` (n, 2) with unwrapped longitude, `heights_m` (n,) or None; `ellipsoid_steps_m` and
-    `ground_steps_m` (n - 1,); `drawn_m` is the ellipsoid length before thinning.
+    `lonlat` (n, 2), `heights_m` (n,) or None; `is_drawn` (n,) or None is False at vertices that
+    nobody drew; `ellipsoid_steps_m` and `ground_steps_m` (n - 1,); `drawn_m` is the ellipsoid
+    length before thinning, `share` the part of its line that it is.
     """
 
     line: Line
     lonlat: Floats
     heights_m: Floats | None
+    is_drawn: Flags | None
     ellipsoid_steps_m: Floats
     ground_steps_m: Floats
     drawn_m: float
+    share: float = 1.0
 
 
 def draw_line(line: Line, *, track_tolerance_m: float) -> Drawn:
@@ -54,19 +60,21 @@ def draw_line(line: Line, *, track_tolerance_m: float) -> Drawn:
     """
     ellipsoid = _ellipsoid_steps_m(line, line.datum_lonlat)
     drawn_m = float(ellipsoid.sum())
-    lonlat, heights = line.lonlat, line.heights_m
+    lonlat, heights, is_drawn = line.lonlat, line.heights_m, line.is_drawn
     if line.is_track and track_tolerance_m > 0:
         keep = _thinned(lonlat, track_tolerance_m)
-        lonlat = lonlat[keep]
-        heights = None if heights is None else heights[keep]
-        ellipsoid = _ellipsoid_steps_m(line, line.datum_lonlat[keep])
+        thin = _ellipsoid_steps_m(line, line.datum_lonlat[keep])
+        if thin.sum() > 0.0:  # else the whole track lies within the tolerance of its start
+            ellipsoid, lonlat = thin, lonlat[keep]
+            heights = None if heights is None else heights[keep]
+            is_drawn = None if is_drawn is None else is_drawn[keep]
     radius = geodesy.mean_radius_m(line.semi_major_m, line.inverse_flattening)
     ground = geodesy.ground_steps_m(ellipsoid, None if line.is_track else heights, radius_m=radius)
-    unwrapped = np.column_stack([geodesy.unwrapped(lonlat[:, 0]), lonlat[:, 1]])
     return Drawn(
         line=line,
-        lonlat=unwrapped,
+        lonlat=lonlat,
         heights_m=heights,
+        is_drawn=is_drawn,
         ellipsoid_steps_m=ellipsoid,
         ground_steps_m=ground,
         drawn_m=drawn_m,
@@ -87,13 +95,26 @@ def _thinned(lonlat: Floats, tolerance_m: float) -> NDArray[np.int64]:
     east, north = geodesy.local_xy_m(lonlat, lon=middle[0], lat=middle[1])
     # The third ordinate carries the index through the simplification.
     line = shapely.LineString(np.column_stack([east, north, np.arange(len(lonlat))]))
-    kept = shapely.get_coordinates(line.simplify(tolerance_m), include_z=True)
-    return np.asarray(kept[:, 2].astype(np.int64))
+    thin = line.simplify(tolerance_m, preserve_topology=False)
+    return np.asarray(shapely.get_coordinates(thin, include_z=True)[:, 2].astype(np.int64))
 
 
 def shape_of(drawn: Drawn) -> tuple[Floats, Floats]:
-    """Return the line with long steps densified, and the fractional index of every point."""
-    return geodesy.densified(drawn.lonlat, step_m=_SHAPE_STEP_M, lengths_m=drawn.ellipsoid_steps_m)
+    """
+    Return the line with long steps densified, and the fractional index of every point.
+
+    The longitude runs on over the antimeridian. All is computed in the canonical direction, so
+    that a line drawn the other way has the same points to the last bit.
+    """
+    is_turned = geodesy.is_turned(drawn.lonlat)
+    one_way = reversed_drawn(drawn) if is_turned else drawn
+    lonlat = one_way.lonlat
+    shape, index = geodesy.densified(
+        np.column_stack([geodesy.unwrapped(lonlat[:, 0]), lonlat[:, 1]]),
+        step_m=_SHAPE_STEP_M,
+        lengths_m=one_way.ellipsoid_steps_m,
+    )
+    return (shape[::-1], len(lonlat) - 1 - index[::-1]) if is_turned else (shape, index)
 
 
 def reversed_drawn(drawn: Drawn) -> Drawn:
@@ -102,6 +123,7 @@ def reversed_drawn(drawn: Drawn) -> Drawn:
         drawn,
         lonlat=drawn.lonlat[::-1],
         heights_m=None if drawn.heights_m is None else drawn.heights_m[::-1],
+        is_drawn=None if drawn.is_drawn is None else drawn.is_drawn[::-1],
         ellipsoid_steps_m=drawn.ellipsoid_steps_m[::-1],
         ground_steps_m=drawn.ground_steps_m[::-1],
     )
@@ -118,29 +140,33 @@ def cut_drawn(drawn: Drawn, at: Sequence[float]) -> list[Drawn]:
     at
         Indices strictly inside the line, rising; 2.25 lies a quarter along the third step. [-]
     """
+    shape = shape_of(drawn)
     parts = []
     begin = 0.0
     total = float(drawn.ellipsoid_steps_m.sum())
     for end in [*at, float(len(drawn.lonlat) - 1)]:
-        part = _part(drawn, begin, end)
+        part = _part(drawn, shape, begin, end)
         share = float(part.ellipsoid_steps_m.sum()) / total if total else 0.0
-        parts.append(replace(part, drawn_m=drawn.drawn_m * share))
+        parts.append(replace(part, drawn_m=drawn.drawn_m * share, share=drawn.share * share))
         begin = end
     return parts
 
 
-def _part(drawn: Drawn, begin: float, end: float) -> Drawn:
+def _part(drawn: Drawn, shape: tuple[Floats, Floats], begin: float, end: float) -> Drawn:
     inner = np.arange(np.floor(begin) + 1, np.ceil(end))
     index = np.concatenate([[begin], inner, [end]])
-    shape, shape_index = shape_of(drawn)
+    points, at = shape
     whole = np.arange(len(drawn.lonlat), dtype=np.float64)
-    lonlat = np.column_stack([np.interp(index, shape_index, shape[:, axis]) for axis in (0, 1)])
+    lonlat = np.column_stack([np.interp(index, at, points[:, axis]) for axis in (0, 1)])
+    lonlat[:, 0] = geodesy.wrapped(lonlat[:, 0])
     lonlat[1:-1] = drawn.lonlat[inner.astype(np.int64)]
-    heights = drawn.heights_m
+    heights, is_drawn = drawn.heights_m, drawn.is_drawn
     return replace(
         drawn,
         lonlat=lonlat,
         heights_m=None if heights is None else np.interp(index, whole, heights),
+        # A cut is a place of its own: a site or another line's end.
+        is_drawn=None if is_drawn is None else np.isin(index, np.flatnonzero(is_drawn)),
         ellipsoid_steps_m=_shared_steps(drawn.ellipsoid_steps_m, index),
         ground_steps_m=_shared_steps(drawn.ground_steps_m, index),
     )
@@ -166,16 +192,30 @@ def joined_drawn(parts: Sequence[Drawn]) -> Drawn:
         return first
     lonlats = [first.lonlat]
     for part in parts[1:]:
-        turn = 360.0 * np.round((lonlats[-1][-1, 0] - part.lonlat[0, 0]) / 360.0)
-        lonlats.append(part.lonlat[1:] + np.array([turn, 0.0]))
+        # The ends may lie a tolerance apart; which of them is taken must not hang on direction.
+        if part.lonlat[0].tolist() < lonlats[-1][-1].tolist():
+            lonlats[-1] = np.vstack([lonlats[-1][:-1], part.lonlat[:1]])
+        lonlats.append(part.lonlat[1:])
     return Drawn(
         line=first.line,
         lonlat=np.concatenate(lonlats),
         heights_m=_joined_heights(parts),
+        is_drawn=_joined_flags(parts),
         ellipsoid_steps_m=np.concatenate([part.ellipsoid_steps_m for part in parts]),
         ground_steps_m=np.concatenate([part.ground_steps_m for part in parts]),
         drawn_m=sum(part.drawn_m for part in parts),
     )
+
+
+def _joined_flags(parts: Sequence[Drawn]) -> Flags | None:
+    """Return which vertices were drawn; the common ones of two lines were."""
+    if all(part.is_drawn is None for part in parts):
+        return None
+    flags = [
+        np.ones(len(part.lonlat), dtype=bool) if part.is_drawn is None else part.is_drawn
+        for part in parts
+    ]
+    return np.concatenate([flags[0], *(flag[1:] for flag in flags[1:])])
 
 
 def _joined_heights(parts: Sequence[Drawn]) -> Floats | None:
@@ -187,7 +227,7 @@ def _joined_heights(parts: Sequence[Drawn]) -> Floats | None:
     ]
     heights = [columns[0]]
     for column in columns[1:]:
-        if np.isnan(heights[-1][-1]):
-            heights[-1] = np.append(heights[-1][:-1], column[0])
+        both = np.fmin(heights[-1][-1:], column[:1])
+        heights[-1] = np.concatenate([heights[-1][:-1], both])
         heights.append(column[1:])
     return np.concatenate(heights)

@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from routeplan.errors import Problem
+from routeplan.geodesy import local_xy_m, wrapped
 from routeplan.ground.drawn import Drawn, cut_drawn, reversed_drawn, shape_of
 from routeplan.ground.locate import Hit, LineIndex, index_lines, near_lines, nearest_m, within_pairs
 from routeplan.run.model import Floats, Place
@@ -56,12 +57,13 @@ def join_lines(drawn: Sequence[Drawn], sites: Sequence[Place], *, joining: Joini
     """
     lines = index_lines([shape_of(line) for line in drawn])
     ends = np.array([line.lonlat[at] for line in drawn for at in (0, -1)])
-    cluster = _clusters(ends, tolerance_m=joining.join_tolerance_m)
+    lengths_m = [float(line.ellipsoid_steps_m.sum()) for line in drawn]
+    cluster = _clusters(ends, lengths_m, tolerance_m=joining.join_tolerance_m)
     cuts: dict[int, list[tuple[float, int]]] = defaultdict(list)
     _cut_at_ends(lines, drawn, ends, cluster=cluster, cuts=cuts, joining=joining)
     junctions = _junction_positions(ends, cluster)
     taken, problems, warnings = _take_sites(
-        lines, sites, ends=ends, cluster=cluster, joining=joining
+        lines, drawn, sites, ends=ends, cluster=cluster, joining=joining
     )
     named: dict[int, Place] = {}
     for place, where in taken:
@@ -71,9 +73,7 @@ def join_lines(drawn: Sequence[Drawn], sites: Sequence[Place], *, joining: Joini
             cuts[where.line].append((where.index, junction))
         else:
             junction = where
-        if junction in named:
-            problems.append(_two_sites(named[junction], place))
-        named.setdefault(junction, place)
+        named[junction] = place
     pieces = tuple(
         piece
         for number, line in enumerate(drawn)
@@ -84,6 +84,8 @@ def join_lines(drawn: Sequence[Drawn], sites: Sequence[Place], *, joining: Joini
             end=int(cluster[2 * number + 1]),
         )
     )
+    pieces, short = _without_stubs(pieces, tolerance_m=joining.join_tolerance_m)
+    warnings.extend(short)
     warnings.extend(_gaps(lines, pieces, junctions, named=named, joining=joining))
     warnings.extend(_doubled_back(drawn))
     return Network(
@@ -95,7 +97,7 @@ def join_lines(drawn: Sequence[Drawn], sites: Sequence[Place], *, joining: Joini
     )
 
 
-def _clusters(ends: Floats, *, tolerance_m: float) -> list[int]:
+def _clusters(ends: Floats, lengths_m: Sequence[float], *, tolerance_m: float) -> list[int]:
     """Return for each line end the number of the junction it belongs to."""
     parent = list(range(len(ends)))
 
@@ -106,16 +108,18 @@ def _clusters(ends: Floats, *, tolerance_m: float) -> list[int]:
         return at
 
     for first, second in within_pairs(ends, radius_m=tolerance_m):
-        low, high = sorted((root(first), root(second)))
-        parent[high] = low
+        # A line hardly longer than the tolerance is no ring.
+        if first // 2 != second // 2 or lengths_m[first // 2] > 2 * tolerance_m:
+            low, high = sorted((root(first), root(second)))
+            parent[high] = low
     numbers: dict[int, int] = {}
     return [numbers.setdefault(root(at), len(numbers)) for at in range(len(ends))]
 
 
 def _junction_positions(ends: Floats, cluster: Sequence[int]) -> Floats:
-    count = max(cluster) + 1
-    positions = np.empty((count, 2))
-    for at in range(len(ends) - 1, -1, -1):
+    """Return for each junction its first end by longitude and latitude: the same however drawn."""
+    positions = np.zeros((max(cluster) + 1, 2))
+    for at in np.lexsort((ends[:, 1], ends[:, 0]))[::-1].tolist():
         positions[cluster[at]] = ends[at]
     return positions
 
@@ -125,67 +129,156 @@ def _cut_at_ends(
     drawn: Sequence[Drawn],
     ends: Floats,
     *,
-    cluster: Sequence[int],
+    cluster: list[int],
     cuts: dict[int, list[tuple[float, int]]],
     joining: Joining,
 ) -> None:
-    """Note a cut on every line that another line's end touches between its own ends."""
+    """
+    Note a cut on every line that another line's end touches between its own ends.
+
+    Where that is no farther along the line than the tolerance from a junction it has already,
+    the two junctions become one.
+    """
     radius = np.full(len(ends), joining.join_tolerance_m)
     for end, hits in enumerate(near_lines(lines, ends, radius_m=radius)):
         for hit in hits:
-            own_ends = (cluster[2 * hit.line], cluster[2 * hit.line + 1])
-            inside = 0.0 < hit.index < len(drawn[hit.line].lonlat) - 1
-            known = any(junction == cluster[end] for _, junction in cuts[hit.line])
-            if inside and not known and cluster[end] not in own_ends:
-                cuts[hit.line].append((hit.index, cluster[end]))
+            number, line, here = hit.line, drawn[hit.line], cluster[end]
+            own_ends = ((0.0, cluster[2 * number]), (np.inf, cluster[2 * number + 1]))
+            known = [*own_ends, *cuts[number]]
+            if any(junction == here for _, junction in known):
+                continue
+            along_m = _along_m(line, hit.index)
+            near = [
+                junction
+                for index, junction in known
+                if abs(_along_m(line, index) - along_m) <= joining.join_tolerance_m
+            ]
+            if near:
+                _merge(cluster, cuts, old=here, new=near[0])
+            else:
+                cuts[number].append((hit.index, here))
+
+
+def _merge(
+    cluster: list[int], cuts: dict[int, list[tuple[float, int]]], *, old: int, new: int
+) -> None:
+    """Make two junctions one."""
+    cluster[:] = [new if junction == old else junction for junction in cluster]
+    for number, known in cuts.items():
+        cuts[number] = [(index, new if at == old else at) for index, at in known]
 
 
 def _take_sites(
     lines: LineIndex,
+    drawn: Sequence[Drawn],
     sites: Sequence[Place],
     *,
     ends: Floats,
     cluster: Sequence[int],
     joining: Joining,
 ) -> tuple[list[tuple[Place, int | Hit]], list[Problem], list[tuple[str, str]]]:
-    """Return where every site goes: a junction, or a place inside a line."""
-    taken: list[tuple[Place, int | Hit]] = []
+    """
+    Return where every site goes: a junction, or a place inside a line.
+
+    The site nearest to a line's end takes it; another one near that end, too, goes to its own
+    place inside a line.
+    """
+    taken: list[tuple[int, int | Hit]] = []
     problems: list[Problem] = []
     warnings: list[tuple[str, str]] = []
     points = np.array([[site.lon, site.lat] for site in sites]).reshape(-1, 2)
     radius = np.full(len(sites), joining.site_distance_max_m)
     near_ends = _nearest_ends(points, ends, radius_m=joining.site_distance_max_m)
-    for number, hits in enumerate(near_lines(lines, points, radius_m=radius)):
+    hits = near_lines(lines, points, radius_m=radius)
+    owner: dict[int, Place] = {}
+    assumed_sites = [bool(site.properties.get("kind_assumed")) for site in sites]
+    for number in sorted(range(len(sites)), key=lambda at: (assumed_sites[at], near_ends[at][1])):
         site = sites[number]
-        assumed = bool(site.properties.get("kind_assumed"))
-        near_end = near_ends[number]
-        if near_end is not None:
-            taken.append((site, cluster[near_end]))
-        elif hits and not assumed:
-            taken.append((site, hits[0]))
+        assumed = assumed_sites[number]
+        end, distance_m = near_ends[number]
+        inside = [hit for hit in hits[number] if _is_inside(hit, drawn[hit.line], joining)]
+        if distance_m <= joining.site_distance_max_m and cluster[end] not in owner:
+            owner[cluster[end]] = site
+            taken.append((number, cluster[end]))
         elif assumed:
-            warnings.append((str(site.source), _left_out(site, bool(hits))))
+            warnings.append((str(site.source), _left_out(site, bool(hits[number]))))
+        elif inside and all(_apart(inside[0], other, drawn, joining) for _, other in taken):
+            taken.append((number, inside[0]))
+        elif distance_m <= joining.site_distance_max_m:
+            problems.append(_two_sites(owner[cluster[end]], site))
+        elif inside:
+            problems.append(_two_sites(_at(inside[0], taken, sites, drawn, joining), site))
         else:
             far_m = nearest_m(lines, points[number])
             problems.append(_far_site(site, far_m, joining.site_distance_max_m))
-    return taken, problems, warnings
+    taken.sort(key=lambda item: item[0])
+    return [(sites[number], where) for number, where in taken], problems, warnings
 
 
-def _nearest_ends(points: Floats, ends: Floats, *, radius_m: float) -> list[int | None]:
-    from routeplan.geodesy import local_xy_m
+def _is_inside(hit: Hit, line: Drawn, joining: Joining) -> bool:
+    """Tell whether a place on a line lies farther from its ends than they are joined over."""
+    reach = _along_m(line, hit.index)
+    return joining.join_tolerance_m < reach < _along_m(line, np.inf) - joining.join_tolerance_m
 
-    nearest: list[int | None] = []
+
+def _apart(hit: Hit, other: int | Hit, drawn: Sequence[Drawn], joining: Joining) -> bool:
+    """Tell whether two sites on one line leave a piece between them."""
+    if not isinstance(other, Hit) or other.line != hit.line:
+        return True
+    line = drawn[hit.line]
+    apart = abs(_along_m(line, hit.index) - _along_m(line, other.index))
+    return apart > joining.join_tolerance_m
+
+
+def _at(
+    hit: Hit,
+    taken: Sequence[tuple[int, int | Hit]],
+    sites: Sequence[Place],
+    drawn: Sequence[Drawn],
+    joining: Joining,
+) -> Place:
+    return next(sites[n] for n, other in taken if not _apart(hit, other, drawn, joining))
+
+
+def _along_m(line: Drawn, index: float) -> float:
+    """Return how far along a line, on the ellipsoid, a fractional index lies."""
+    count = len(line.ellipsoid_steps_m)
+    whole = min(int(min(index, count)), count - 1)
+    share = min(index, count) - whole
+    return float(line.ellipsoid_steps_m[:whole].sum() + share * line.ellipsoid_steps_m[whole])
+
+
+def _nearest_ends(points: Floats, ends: Floats, *, radius_m: float) -> list[tuple[int, float]]:
+    """Return for each point the nearest line end and its distance, infinite beyond the radius."""
+    nearest: list[tuple[int, float]] = []
     for point in points:
         east, north = local_xy_m(ends, lon=point[0], lat=point[1])
         distance = np.hypot(east, north)
         at = int(np.argmin(distance))
-        nearest.append(at if distance[at] <= radius_m else None)
+        near = float(distance[at])
+        nearest.append((at, near if near <= radius_m else np.inf))
     return nearest
+
+
+def _without_stubs(
+    pieces: Sequence[Piece], *, tolerance_m: float
+) -> tuple[tuple[Piece, ...], list[tuple[str, str]]]:
+    """Leave out pieces that begin and end in one junction and are no longer than its size."""
+    kept, warnings = [], []
+    for piece in pieces:
+        length_m = float(piece.drawn.ellipsoid_steps_m.sum())
+        if piece.start == piece.end and length_m <= 2 * tolerance_m:
+            text = f"{length_m:.2f} m of it lie within join_tolerance_m of one node: left out"
+            warnings.append((str(piece.drawn.line.source), text))
+        else:
+            kept.append(piece)
+    return (tuple(kept), warnings) if kept else (tuple(pieces), [])
 
 
 def _position(drawn: Drawn, index: float) -> Floats:
     shape, shape_index = shape_of(drawn)
-    return np.array([np.interp(index, shape_index, shape[:, axis]) for axis in (0, 1)])
+    lon, lat = (np.interp(index, shape_index, shape[:, axis]) for axis in (0, 1))
+    return np.array([wrapped(np.array([lon]))[0], lat])
 
 
 def _pieces(
@@ -326,7 +419,7 @@ def _step_keys(lonlat: Floats) -> NDArray[np.uint64]:
 def _two_sites(first: Place, second: Place) -> Problem:
     return Problem(
         where=str(second.source),
-        what=f'sites "{first.name}" and "{second.name}" take the same end of a line',
+        what=f'sites "{first.name}" and "{second.name}" take the same place on a line',
         remedy="Draw each site's own line, or remove one of the sites",
     )
 

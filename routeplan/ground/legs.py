@@ -6,16 +6,17 @@ import string
 from collections import Counter
 from collections.abc import Iterator, Sequence
 from dataclasses import replace
+from functools import cache
 
 import numpy as np
 
 from routeplan import geodesy
 from routeplan.errors import CrsError, GeometryError, Problem
-from routeplan.ground.drawn import Drawn, draw_line, joined_drawn, shape_of
+from routeplan.ground.drawn import draw_line, joined_drawn, shape_of
 from routeplan.ground.joining import Network, Piece, chains, join_lines
 from routeplan.ground.locate import index_lines, near_lines, nearest_m
 from routeplan.ground.model import Crossing, Ground, Leg, Millimetres, Node, PlacedPoint, Stretch
-from routeplan.run.model import Floats, Place, Run
+from routeplan.run.model import Floats, Place, Placement, Run
 
 __all__ = ["lay_ground", "position_at"]
 
@@ -70,8 +71,8 @@ def _nodes(
 ) -> tuple[list[Node], dict[int, int]]:
     """Return the nodes in run order, and for each junction the place of its node in the list."""
     degree = Counter(j for group in groups for j in (group[0].start, group[-1].end))
-    taken = {place.name for place in network.sites.values()}
-    letters = _free_letters(taken)
+    letters = _free_letters({place.name for place in network.sites.values()})
+    twins: Counter[str] = Counter()
     numbers: dict[int, int] = {}
     nodes: list[Node] = []
     for junction in (j for group in groups for j in (group[0].start, group[-1].end)):
@@ -81,6 +82,8 @@ def _nodes(
         place = network.sites.get(junction)
         assumed = place is None and degree[junction] == 1
         name = place.name if place else next(letters) if assumed else f"Node {len(nodes) + 1}"
+        twins[name] += 1  # points that were only taken for sites may share a name
+        name = name if twins[name] == 1 else f"{name} ({twins[name]})"
         lon, lat = network.junctions[junction]
         nodes.append(
             Node(
@@ -146,20 +149,23 @@ def _leg(
     run: Run, leg_id: str, name: str, *, pieces: Sequence[Piece], ends: tuple[str, str]
 ) -> Leg:
     whole = joined_drawn([piece.drawn for piece in pieces])
-    ground_mm = _whole_millimetres(whole)
+    is_turned = geodesy.is_turned(whole.lonlat)
+    ground_mm = _whole_millimetres(whole.ground_steps_m, is_turned=is_turned)
     shape, shape_index = shape_of(whole)
-    lonlat = np.column_stack([geodesy.wrapped(whole.lonlat[:, 0]), whole.lonlat[:, 1]])
-    grid_m, grid_crs = _grid(run, name, lonlat, shape)
+    shape_mm = np.interp(shape_index, np.arange(len(ground_mm)), ground_mm)
+    grid_m, grid_crs = _grid(run, name, whole.lonlat, middle=_middle(shape, shape_mm))
     return Leg(
         id=leg_id,
         name=name,
         start=ends[0],
         end=ends[1],
-        lonlat=lonlat,
+        lonlat=whole.lonlat,
         heights_m=whole.heights_m,
+        is_drawn=whole.is_drawn,
+        is_turned=is_turned,
         ground_mm=ground_mm,
         shape_lonlat=shape,
-        shape_mm=np.interp(shape_index, np.arange(len(ground_mm)), ground_mm),
+        shape_mm=shape_mm,
         grid_m=grid_m,
         grid_crs=grid_crs,
         ellipsoid_m=float(whole.ellipsoid_steps_m.sum()),
@@ -170,42 +176,42 @@ def _leg(
     )
 
 
-def _whole_millimetres(drawn: Drawn) -> Millimetres:
+def _whole_millimetres(ground_steps_m: Floats, *, is_turned: bool) -> Millimetres:
     """
     Return the ground station of every vertex.
 
-    The running sum is rounded from the end whose coordinates come first, so that a line drawn
-    the other way gets the mirrored stations to the millimetre.
+    The running sum is rounded in the canonical direction, so that a line drawn the other way
+    gets the mirrored stations to the millimetre.
     """
-    steps = drawn.ground_steps_m
-    first, last = drawn.lonlat[0].tolist(), drawn.lonlat[-1].tolist()
-    if first == last:
-        first, last = drawn.lonlat[1].tolist(), drawn.lonlat[-2].tolist()
-    is_turned = first > last
-    reach = np.concatenate([[0.0], np.cumsum(steps[::-1] if is_turned else steps)])
+    steps = ground_steps_m[::-1] if is_turned else ground_steps_m
+    reach = np.concatenate([[0.0], np.cumsum(steps)])
     whole = np.rint(reach * 1000.0).astype(np.int64)
     return np.asarray(whole[-1] - whole[::-1]) if is_turned else whole
 
 
-def _grid(run: Run, name: str, lonlat: Floats, shape: Floats) -> tuple[float, str]:
+def _middle(shape: Floats, shape_mm: Floats) -> tuple[float, float]:
+    """Return the position half-way along a leg."""
+    lon, lat = (np.interp(0.5 * shape_mm[-1], shape_mm, shape[:, axis]) for axis in (0, 1))
+    return float(lon), float(lat)
+
+
+def _grid(run: Run, name: str, lonlat: Floats, *, middle: tuple[float, float]) -> tuple[float, str]:
     crs = run.crs
     if crs is None or not _is_projected(crs):
-        middle = shape[len(shape) // 2]
-        crs = geodesy.utm_crs(float(middle[0]), float(middle[1]))
+        crs = geodesy.utm_crs(*middle)
     grid_m = geodesy.grid_length_m(lonlat, crs)
-    if not np.isfinite(grid_m):
-        if run.crs == crs:
-            raise CrsError(
-                Problem(
-                    where=f'leg "{name}"',
-                    what=f"the grid {crs} does not reach it",
-                    remedy="Name a projected CRS of the region, or leave crs out",
-                )
+    if not np.isfinite(grid_m) and run.crs == crs:
+        raise CrsError(
+            Problem(
+                where=f'leg "{name}"',
+                what=f"the grid {crs} does not reach it",
+                remedy="Name a projected CRS of the region, or leave crs out",
             )
-        grid_m = float("nan")
-    return grid_m, crs
+        )
+    return (grid_m if np.isfinite(grid_m) else float("nan")), crs
 
 
+@cache
 def _is_projected(crs: str) -> bool:
     import pyproj
 
@@ -230,11 +236,18 @@ def _stretches(run: Run, pieces: Sequence[Piece], ground_mm: Millimetres) -> tup
                     placement=placement,
                     start_mm=span[0],
                     end_mm=span[1],
-                    existing_m=line.existing_m if placement == "existing" else None,
-                    existing_db=line.existing_db if placement == "existing" else None,
+                    existing_m=_shared(line.existing_m, piece, placement),
+                    existing_db=_shared(line.existing_db, piece, placement),
                 )
             )
     return tuple(stretches)
+
+
+def _shared(value: float | None, piece: Piece, placement: Placement) -> float | None:
+    """Return what a declared whole of an existing line comes to on one piece of it."""
+    if value is None or placement != "existing":
+        return None
+    return value * piece.drawn.share
 
 
 def _place_points(
@@ -256,7 +269,7 @@ def _place_points(
             problems.append(_far_point(place, far_m, joining.reach_distance_max_m))
             continue
         leg = legs[hits[0].line]
-        ground_mm = round(hits[0].index)
+        ground_mm = _whole_station(leg, hits[0].index)
         at_node = _plain_node_at(leg, nodes, ground_mm, tolerance_mm)
         if at_node is not None and place.kind != "crossing" and nodes[at_node].place is None:
             nodes[at_node] = replace(nodes[at_node], place=place, name=place.name)
@@ -270,6 +283,11 @@ def _place_points(
         for leg, placed in zip(legs, found, strict=True)
     ]
     return legs, nodes, crossings, problems
+
+
+def _whole_station(leg: Leg, station_mm: float) -> int:
+    """Return a whole millimetre, the half rounded in the leg's canonical direction."""
+    return leg.length_mm - round(leg.length_mm - station_mm) if leg.is_turned else round(station_mm)
 
 
 def _station_order(point: PlacedPoint) -> tuple[int, float, float, str]:

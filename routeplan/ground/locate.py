@@ -2,11 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 import numpy as np
-import shapely
 from numpy.typing import NDArray
 
 from routeplan import geodesy
@@ -14,19 +13,29 @@ from routeplan.run.model import Floats
 
 __all__ = ["Hit", "LineIndex", "index_lines", "near_lines", "nearest_m", "within_pairs"]
 
+Whole = NDArray[np.int64]
+
 _M_PER_DEGREE = 110_000.0  # a little less than any degree of latitude, so that boxes are generous
+_BLOCK = 64  # steps that share a box: few enough to test each, enough to leave few boxes
+_AT_ONCE = 1 << 20  # tests held in memory together
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class LineIndex:
-    """The steps of several polylines in a tree; build it with `index_lines`."""
+    """
+    The steps of several polylines, with a box around every 64 of them; see `index_lines`.
 
-    tree: shapely.STRtree
+    Every line is taken in its canonical direction, so that answers do not hang on how it was
+    drawn; `index_begin` and `index_end` may fall.
+    """
+
     begin: Floats
     end: Floats
-    line: NDArray[np.int64]
+    line: Whole
     index_begin: Floats
     index_end: Floats
+    low: Floats
+    high: Floats
     reference_lon: float
 
 
@@ -41,30 +50,37 @@ class Hit:
 
 def index_lines(shapes: Sequence[tuple[Floats, Floats]]) -> LineIndex:
     """
-    Return a tree over polylines given as (lonlat, fractional index) with short steps.
+    Return the steps of polylines given as (lonlat, fractional index), ready to be searched.
 
     Parameters
     ----------
     shapes
-        For each line its points, shape (n, 2) [deg], and their indices, shape (n,). [-]
+        For each line its points with unwrapped longitude and short steps, shape (n, 2) [deg],
+        and their indices, shape (n,). [-]
     """
-    reference = float(shapes[0][0][0, 0])
-    moved = [_near_reference(lonlat, reference) for lonlat, _ in shapes]
+    reference = float(shapes[0][0][:, 0].mean())
+    one_way = [
+        (lonlat[::-1], index[::-1]) if geodesy.is_turned(lonlat) else (lonlat, index)
+        for lonlat, index in shapes
+    ]
+    moved = [_near_reference(lonlat, reference) for lonlat, _ in one_way]
     begin = np.concatenate([lonlat[:-1] for lonlat in moved])
     end = np.concatenate([lonlat[1:] for lonlat in moved])
+    starts = np.arange(0, len(begin), _BLOCK)
     return LineIndex(
-        tree=shapely.STRtree(np.asarray(shapely.linestrings(np.stack([begin, end], axis=1)))),
         begin=begin,
         end=end,
         line=np.repeat(np.arange(len(shapes)), [len(lonlat) - 1 for lonlat in moved]),
-        index_begin=np.concatenate([index[:-1] for _, index in shapes]),
-        index_end=np.concatenate([index[1:] for _, index in shapes]),
+        index_begin=np.concatenate([index[:-1] for _, index in one_way]),
+        index_end=np.concatenate([index[1:] for _, index in one_way]),
+        low=np.minimum.reduceat(np.minimum(begin, end), starts),
+        high=np.maximum.reduceat(np.maximum(begin, end), starts),
         reference_lon=reference,
     )
 
 
 def _near_reference(lonlat: Floats, reference_lon: float) -> Floats:
-    turn = 360.0 * np.round((lonlat[0, 0] - reference_lon) / 360.0)
+    turn = 360.0 * np.round((lonlat[:, 0].mean() - reference_lon) / 360.0)
     return lonlat - [turn, 0.0] if turn else lonlat
 
 
@@ -72,7 +88,8 @@ def near_lines(lines: LineIndex, points: Floats, *, radius_m: Floats) -> list[li
     """
     Return for each point its nearest place on every line within `radius_m`, nearest first.
 
-    Exact to a millimetre for radii up to some hundreds of metres. Costs O(log n) a point.
+    Exact to a millimetre for radii up to some hundreds of metres. Costs a box test for every
+    point and 64 steps, and a distance for every step whose box is near.
 
     Parameters
     ----------
@@ -86,34 +103,90 @@ def near_lines(lines: LineIndex, points: Floats, *, radius_m: Floats) -> list[li
     hits: list[list[Hit]] = [[] for _ in range(len(points))]
     if not len(points):
         return hits
-    turn = 360.0 * np.round((points[:, 0] - lines.reference_lon) / 360.0)
-    moved = np.column_stack([points[:, 0] - turn, points[:, 1]])
-    point, step = lines.tree.query(_boxes(moved, radius_m))
-    if not len(point):
-        return hits
-    share, offset = _feet(lines, moved[point], step)
-    near = offset <= radius_m[point]
-    point, step, share, offset = point[near], step[near], share[near], offset[near]
-    index = lines.index_begin[step] + share * (lines.index_end[step] - lines.index_begin[step])
-    line = lines.line[step]
-    # Ties in distance (a shared vertex) go to the lower line and index: the same every time.
-    for at in np.lexsort((index, line, offset, point)):
-        found = hits[point[at]]
-        if all(hit.line != line[at] for hit in found):
-            found.append(
-                Hit(line=int(line[at]), index=float(index[at]), offset_m=float(offset[at]))
-            )
+    moved = _points_near(points, lines.reference_lon)
+    for point, step in _pairs(lines, moved, radius_m):
+        share, offset = _feet(lines, moved[point], step)
+        near = offset <= radius_m[point]
+        feet = (share[near], offset[near])
+        _note(lines, hits, (point[near], step[near]), feet=feet)
     return hits
 
 
-def _boxes(points: Floats, radius_m: Floats) -> NDArray[np.object_]:
+def _note(
+    lines: LineIndex,
+    hits: list[list[Hit]],
+    pairs: tuple[Whole, Whole],
+    *,
+    feet: tuple[Floats, Floats],
+) -> None:
+    """Add the nearest place on every line to its point's hits."""
+    (point, step), (share, offset) = pairs, feet
+    index = lines.index_begin[step] + share * (lines.index_end[step] - lines.index_begin[step])
+    line = lines.line[step]
+    # Ties in distance (a shared vertex) go to the lower line and step: the same every time.
+    order = np.lexsort((step, line, offset, point))
+    columns = (point[order], line[order], index[order], offset[order])
+    for at, number, where, far in zip(*(column.tolist() for column in columns), strict=True):
+        found = hits[at]
+        if all(hit.line != number for hit in found):
+            found.append(Hit(line=number, index=where, offset_m=far))
+
+
+def _points_near(points: Floats, reference_lon: float) -> Floats:
+    turn = 360.0 * np.round((points[:, 0] - reference_lon) / 360.0)
+    return np.column_stack([points[:, 0] - turn, points[:, 1]])
+
+
+def _pairs(lines: LineIndex, points: Floats, radius_m: Floats) -> Iterator[tuple[Whole, Whole]]:
+    """Yield points and the steps whose boxes lie near them; all of one point come together."""
+    reach = _reach_deg(points, radius_m)
+    low, high = points - reach, points + reach
+    rows = max(1, _AT_ONCE // len(lines.low))
+    for first in range(0, len(points), rows):
+        own = slice(first, first + rows)
+        meets = _meet(low[own, None], high[own, None], lines.low[None], lines.high[None])
+        point, block = np.nonzero(meets)
+        counts = np.bincount(point, minlength=meets.shape[0])
+        ends = np.cumsum(counts)
+        begin = 0
+        while begin < len(point):
+            # As many whole points as fit, and at least one.
+            room = np.searchsorted(ends, begin + _AT_ONCE // _BLOCK, side="right")
+            end = int(ends[max(room - 1, point[begin])])
+            yield _near_steps(lines, low, high, first + point[begin:end], block[begin:end])
+            begin = end
+
+
+def _near_steps(
+    lines: LineIndex, low: Floats, high: Floats, point: Whole, block: Whole
+) -> tuple[Whole, Whole]:
+    step = (block[:, None] * _BLOCK + np.arange(_BLOCK)).ravel()
+    owner = np.repeat(point, _BLOCK)
+    inside = step < len(lines.begin)
+    step, owner = step[inside], owner[inside]
+    begin, end = lines.begin[step], lines.end[step]
+    near = _meet(low[owner], high[owner], np.minimum(begin, end), np.maximum(begin, end))
+    return owner[near], step[near]
+
+
+def _meet(low: Floats, high: Floats, other_low: Floats, other_high: Floats) -> NDArray[np.bool_]:
+    """Tell which boxes meet; the last axis is longitude and latitude."""
+    return np.asarray(
+        (low[..., 0] <= other_high[..., 0])
+        & (other_low[..., 0] <= high[..., 0])
+        & (low[..., 1] <= other_high[..., 1])
+        & (other_low[..., 1] <= high[..., 1])
+    )
+
+
+def _reach_deg(points: Floats, radius_m: Floats) -> Floats:
+    """Return how many degrees a radius is at most, east and north, shape (p, 2)."""
     north = radius_m / _M_PER_DEGREE
-    east = north / np.maximum(np.cos(np.radians(np.minimum(np.abs(points[:, 1]), 89.9))), 1e-3)
-    lon, lat = points[:, 0], points[:, 1]
-    return np.asarray(shapely.box(lon - east, lat - north, lon + east, lat + north))
+    farthest = np.minimum(np.abs(points[:, 1]) + north, 89.999)
+    return np.column_stack([north / np.cos(np.radians(farthest)), north])
 
 
-def _feet(lines: LineIndex, points: Floats, step: NDArray[np.int64]) -> tuple[Floats, Floats]:
+def _feet(lines: LineIndex, points: Floats, step: Whole) -> tuple[Floats, Floats]:
     """Return how far along each step the foot of its point lies (0..1) and the distance."""
     lon, lat = points[:, 0], points[:, 1]
     east0, north0 = geodesy.local_xy_m(lines.begin[step], lon=lon, lat=lat)
@@ -136,11 +209,12 @@ def nearest_m(lines: LineIndex, point: Floats) -> float:
     point
         Longitude and latitude, shape (2,). [deg]
     """
-    turn = 360.0 * np.round((point[0] - lines.reference_lon) / 360.0)
-    moved = np.array([[point[0] - turn, point[1]]])
-    step = np.atleast_1d(lines.tree.nearest(shapely.points(moved)))
-    _, offset = _feet(lines, moved, step)
-    return float(offset[0])
+    moved = _points_near(point[None, :], lines.reference_lon)
+    step = np.arange(len(lines.begin))
+    share, offset = _feet(lines, np.repeat(moved, len(step), axis=0), step)
+    at = int(np.argmin(offset))
+    foot = lines.begin[at] + share[at] * (lines.end[at] - lines.begin[at])
+    return float(geodesy.steps_m(np.stack([moved[0], foot]))[0])
 
 
 def within_pairs(points: Floats, *, radius_m: float) -> list[tuple[int, int]]:
@@ -154,13 +228,18 @@ def within_pairs(points: Floats, *, radius_m: float) -> list[tuple[int, int]]:
     radius_m
         Largest distance of a pair. [m]
     """
-    moved = np.column_stack(
-        [points[:, 0] - 360.0 * np.round((points[:, 0] - points[0, 0]) / 360.0), points[:, 1]]
-    )
-    tree = shapely.STRtree(np.asarray(shapely.points(moved)))
-    first, second = tree.query(_boxes(moved, np.full(len(moved), radius_m)))
-    keep = first < second
-    first, second = first[keep], second[keep]
-    east, north = geodesy.local_xy_m(moved[second], lon=moved[first, 0], lat=moved[first, 1])
-    near = np.hypot(east, north) <= radius_m
-    return sorted(zip(first[near].tolist(), second[near].tolist(), strict=True))
+    moved = _points_near(points, float(points[0, 0]))
+    reach = _reach_deg(moved, np.full(len(moved), radius_m))
+    order = np.argsort(moved[:, 1], kind="stable")
+    north = moved[order, 1]
+    # Sorted by latitude, the candidates of a point are those that follow it within the radius.
+    last = np.searchsorted(north, north + reach[order, 1], side="right")
+    counts = last - np.arange(len(order)) - 1
+    low = np.repeat(np.arange(len(order)), counts)
+    high = np.arange(len(low)) - np.repeat(np.cumsum(counts) - counts, counts) + low + 1
+    first, second = order[low], order[high]
+    east, away = geodesy.local_xy_m(moved[second], lon=moved[first, 0], lat=moved[first, 1])
+    near = np.hypot(east, away) <= radius_m
+    first, second = first[near], second[near]
+    pairs = zip(np.minimum(first, second), np.maximum(first, second), strict=True)
+    return sorted((int(one), int(other)) for one, other in pairs)

@@ -54,7 +54,9 @@ class Leg:
     """
     One continuous way on the ground between two nodes.
 
-    `lonlat` (n, 2), `heights_m` (n,) or None, `ground_mm` (n,) whole millimetres from the start.
+    `lonlat` (n, 2), `heights_m` (n,) or None, `ground_mm` (n,) whole millimetres from the start;
+    `is_drawn` (n,) or None is False at vertices that nobody drew. `is_turned` says that the leg
+    runs against the direction in which halves are rounded, so that a reversed one is mirrored.
     `shape_lonlat` (m, 2) and `shape_mm` (m,) hold the same way with long steps densified and the
     longitude unwrapped: between their points longitude and latitude may be interpolated.
     `grid_m` and `ellipsoid_m` are lengths of the whole leg; `drawn_ellipsoid_m` is the length
@@ -67,6 +69,8 @@ class Leg:
     end: str
     lonlat: Floats
     heights_m: Floats | None
+    is_drawn: NDArray[np.bool_] | None
+    is_turned: bool
     ground_mm: Millimetres
     shape_lonlat: Floats
     shape_mm: Floats
