@@ -2,51 +2,102 @@
 
 from __future__ import annotations
 
-from collections import OrderedDict
-from collections.abc import Callable, Hashable
-from typing import Any, TypeAlias, TypeVar
+from collections.abc import Callable, Hashable, Mapping
+from dataclasses import dataclass, field
+from hashlib import blake2b
+from operator import attrgetter
+from typing import Any, TypeVar
 
 import numpy as np
 from pydantic import BaseModel
 
-__all__ = ["Memo", "fingerprint", "remembered"]
-
-Memo: TypeAlias = OrderedDict[Hashable, Any]
-"""Results by fingerprint, the latest last. Make one with `Memo()` and pass it to `plan`."""
+__all__ = ["Memo", "fingerprint", "remembered", "swept"]
 
 Result = TypeVar("Result")
 
-_MOST = 256  # results kept; the oldest goes first
+_TURNS_KEPT = 3  # what the last plans used: enough to step back, and memory stays bounded
+
+
+@dataclass(slots=True, eq=False)
+class Memo:
+    """
+    Results of earlier plans. Make one with `Memo()` and pass it to every `plan` of a run.
+
+    `results` holds each with the turn it was last used in; `prints` the fingerprint of every
+    frozen thing seen, by its identity, with the thing itself so that the identity stays its own.
+    """
+
+    results: dict[Hashable, tuple[int, Any]] = field(default_factory=dict)
+    prints: dict[int, tuple[int, object, Hashable]] = field(default_factory=dict)
+    turn: int = 0
 
 
 def remembered(
     memo: Memo | None, inputs: tuple[object, ...], compute: Callable[[], Result]
 ) -> Result:
-    """Return the result kept for these inputs, or compute and keep it."""
+    """
+    Return the result kept for these inputs, or compute and keep it.
+
+    Parameters
+    ----------
+    memo
+        Where results are kept, or None to compute.
+    inputs
+        All that the result depends on, and a name of the stage; see `fingerprint`.
+    compute
+        Computes the result.
+    """
     if memo is None:
         return compute()
-    key = fingerprint(inputs)
-    if key in memo:
-        memo.move_to_end(key)
-        kept: Result = memo[key]
-        return kept
-    memo[key] = result = compute()
-    while len(memo) > _MOST:
-        memo.popitem(last=False)
-    return result
+    key = fingerprint(inputs, memo)
+    kept: Result = memo.results[key][1] if key in memo.results else compute()
+    memo.results[key] = (memo.turn, kept)
+    return kept
 
 
-def fingerprint(value: object) -> Hashable:
-    """Return a key that is equal for equal inputs: arrays by their bytes, models by their text."""
-    if isinstance(value, np.ndarray):
-        return (value.shape, value.dtype.str, value.tobytes())
-    if isinstance(value, BaseModel):
-        return value.model_dump_json()
-    if isinstance(value, dict):
-        return tuple((key, fingerprint(entry)) for key, entry in sorted(value.items()))
+def swept(memo: Memo | None) -> None:
+    """Begin the next turn, forgetting what none of the last three used."""
+    if memo is None:
+        return
+    memo.turn += 1
+    oldest = memo.turn - _TURNS_KEPT
+    memo.results = {key: kept for key, kept in memo.results.items() if kept[0] >= oldest}
+    memo.prints = {key: kept for key, kept in memo.prints.items() if kept[0] >= oldest}
+
+
+def fingerprint(value: object, memo: Memo | None = None) -> Hashable:
+    """
+    Return a key that is equal for equal inputs.
+
+    Parameters
+    ----------
+    value
+        Text, numbers, arrays, and tuples, lists, mappings, frozen dataclasses and models of them.
+        What is frozen must not be changed from within either.
+    memo
+        Where the fingerprint of a frozen thing is kept from one time to the next.
+    """
+    if value is None or isinstance(value, str | int | float):
+        return value
     if isinstance(value, tuple | list):
-        return tuple(fingerprint(entry) for entry in value)
-    slots = getattr(type(value), "__dataclass_fields__", None)
-    if slots is not None:
-        return (type(value).__name__, *(fingerprint(getattr(value, name)) for name in slots))
-    return value
+        return tuple([fingerprint(entry, memo) for entry in value])
+    if isinstance(value, Mapping):
+        return tuple([(key, fingerprint(entry, memo)) for key, entry in sorted(value.items())])
+    if isinstance(value, np.ndarray):
+        digest = blake2b(np.ascontiguousarray(value), digest_size=16).digest()
+        return (value.shape, value.dtype.str, digest)
+    known = memo.prints.get(id(value)) if memo else None
+    key = known[2] if known else _content(value, memo)
+    if memo:
+        memo.prints[id(value)] = (memo.turn, value, key)
+    return key
+
+
+def _content(value: object, memo: Memo | None) -> Hashable:
+    if isinstance(value, BaseModel):
+        return (type(value).__name__, value.model_dump_json())
+    names = getattr(type(value), "__dataclass_fields__", None)
+    if names is None:
+        raise TypeError(f"no fingerprint of {type(value).__name__}")
+    fields = attrgetter(*names, "__class__")(value)
+    return (type(value).__name__, *[fingerprint(entry, memo) for entry in fields[:-1]])

@@ -23,7 +23,7 @@ from routeplan.light.interfaces import (
 )
 from routeplan.light.model import Budget, ExistingSpan, Path, Verdict
 from routeplan.light.path import CableTrack, cable_track, circuit_paths
-from routeplan.memo import Memo, remembered
+from routeplan.memo import Memo, remembered, swept
 from routeplan.run.defaults import AssumedValue, assumed_values, default_value
 from routeplan.run.model import Run
 from routeplan.run.practice import CircuitOrder
@@ -86,6 +86,7 @@ def plan(run: Run, *, memo: Memo | None = None) -> Plan:
     InfeasibleError
         If no layout keeps every limit.
     """
+    swept(memo)
     ground = remembered(
         memo, ("ground", run.lines, run.places, run.placement, run.crs, run.practice.joining),
         lambda: lay_ground(run),

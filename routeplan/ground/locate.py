@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from math import isqrt
 
 import numpy as np
 from numpy.typing import NDArray
@@ -16,14 +17,14 @@ __all__ = ["Hit", "LineIndex", "index_lines", "near_lines", "nearest_m", "within
 Whole = NDArray[np.int64]
 
 _M_PER_DEGREE = 110_000.0  # a little less than any degree of latitude, so that boxes are generous
-_BLOCK = 64  # steps that share a box: few enough to test each, enough to leave few boxes
+_BLOCK_LEAST = 16  # steps that share a box, at least: below it boxes cost more than steps
 _AT_ONCE = 1 << 20  # tests held in memory together
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class LineIndex:
     """
-    The steps of several polylines, with a box around every 64 of them; see `index_lines`.
+    The steps of several polylines, with a box around every `block` of them; see `index_lines`.
 
     Every line is taken in its canonical direction, so that answers do not hang on how it was
     drawn; `index_begin` and `index_end` may fall.
@@ -34,6 +35,7 @@ class LineIndex:
     line: Whole
     index_begin: Floats
     index_end: Floats
+    block: int
     low: Floats
     high: Floats
     reference_lon: float
@@ -66,13 +68,15 @@ def index_lines(shapes: Sequence[tuple[Floats, Floats]]) -> LineIndex:
     moved = [_near_reference(lonlat, reference) for lonlat, _ in one_way]
     begin = np.concatenate([lonlat[:-1] for lonlat in moved])
     end = np.concatenate([lonlat[1:] for lonlat in moved])
-    starts = np.arange(0, len(begin), _BLOCK)
+    block = max(_BLOCK_LEAST, isqrt(len(begin)) // 4)
+    starts = np.arange(0, len(begin), block)
     return LineIndex(
         begin=begin,
         end=end,
         line=np.repeat(np.arange(len(shapes)), [len(lonlat) - 1 for lonlat in moved]),
         index_begin=np.concatenate([index[:-1] for _, index in one_way]),
         index_end=np.concatenate([index[1:] for _, index in one_way]),
+        block=block,
         low=np.minimum.reduceat(np.minimum(begin, end), starts),
         high=np.maximum.reduceat(np.maximum(begin, end), starts),
         reference_lon=reference,
@@ -88,8 +92,8 @@ def near_lines(lines: LineIndex, points: Floats, *, radius_m: Floats) -> list[li
     """
     Return for each point its nearest place on every line within `radius_m`, nearest first.
 
-    Exact to a millimetre for radii up to some hundreds of metres. Costs a box test for every
-    point and 64 steps, and a distance for every step whose box is near.
+    Exact to a millimetre for radii up to some hundreds of metres. Costs O(p sqrt(n)) box tests,
+    and a distance for every step whose own box is near.
 
     Parameters
     ----------
@@ -151,7 +155,7 @@ def _pairs(lines: LineIndex, points: Floats, radius_m: Floats) -> Iterator[tuple
         begin = 0
         while begin < len(point):
             # As many whole points as fit, and at least one.
-            room = np.searchsorted(ends, begin + _AT_ONCE // _BLOCK, side="right")
+            room = np.searchsorted(ends, begin + _AT_ONCE // lines.block, side="right")
             end = int(ends[max(room - 1, point[begin])])
             yield _near_steps(lines, low, high, first + point[begin:end], block[begin:end])
             begin = end
@@ -160,10 +164,11 @@ def _pairs(lines: LineIndex, points: Floats, radius_m: Floats) -> Iterator[tuple
 def _near_steps(
     lines: LineIndex, low: Floats, high: Floats, point: Whole, block: Whole
 ) -> tuple[Whole, Whole]:
-    step = (block[:, None] * _BLOCK + np.arange(_BLOCK)).ravel()
-    owner = np.repeat(point, _BLOCK)
-    inside = step < len(lines.begin)
-    step, owner = step[inside], owner[inside]
+    step = (block[:, None] * lines.block + np.arange(lines.block)).ravel()
+    owner = np.repeat(point, lines.block)
+    if block.size and block.max() == len(lines.low) - 1:
+        inside = step < len(lines.begin)
+        step, owner = step[inside], owner[inside]
     begin, end = lines.begin[step], lines.end[step]
     near = _meet(low[owner], high[owner], np.minimum(begin, end), np.maximum(begin, end))
     return owner[near], step[near]
