@@ -96,5 +96,7 @@ def _limit_db(rows: list[BendRow], wavelength_nm: float) -> float:
     first, last = sorted(rows, key=lambda row: row.wavelength_nm)
     if wavelength_nm <= first.wavelength_nm:
         return first.limit_db
+    if wavelength_nm >= last.wavelength_nm:
+        return last.limit_db
     share = (wavelength_nm - first.wavelength_nm) / (last.wavelength_nm - first.wavelength_nm)
     return exp(log(first.limit_db) + share * (log(last.limit_db) - log(first.limit_db)))

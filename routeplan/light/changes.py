@@ -31,6 +31,7 @@ __all__ = ["Change", "Circuit", "deciding_line", "mending_changes", "stretch_lim
 
 _FARTHEST_M = 1_000_000
 _END_PANELS = 2
+_LENGTH_STEPS = 200  # a window between too weak and too strong may be narrow
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -221,9 +222,15 @@ def _less_glass(circuit: Circuit) -> Change | None:
         sum(step.glass_m for step in path.steps if isinstance(step, Glass))
         for path in circuit.paths.values()
     ]
-    fails, fits = 0, int(min(lengths, default=0.0))
-    if fits < 1 or not circuit.fits(partial(stretched, more_m=-fits)):
-        return _least_less(circuit, fits)
+    whole_m = int(min(lengths, default=0.0))
+    fails = 0
+    for number in range(1, _LENGTH_STEPS + 1):
+        fits = whole_m * number // _LENGTH_STEPS
+        if fits > fails and circuit.fits(partial(stretched, more_m=-fits)):
+            break
+        fails = fits
+    else:
+        return None
     while fits - fails > 1:
         middle = (fits + fails) // 2
         if circuit.fits(partial(stretched, more_m=-middle)):
@@ -231,13 +238,3 @@ def _less_glass(circuit: Circuit) -> Change | None:
         else:
             fails = middle
     return Change(kind="length", text=f"{fits} m of glass less would do, joints as they are.")
-
-
-def _least_less(circuit: Circuit, whole_m: int) -> Change | None:
-    """Return the first of even steps that fits: too short may be too strong, and fail as well."""
-    for share in range(1, 20):
-        less_m = whole_m * share // 20
-        if less_m and circuit.fits(partial(stretched, more_m=-less_m)):
-            text = f"About {less_m} m of glass less would do, joints as they are."
-            return Change(kind="length", text=text)
-    return None
