@@ -251,14 +251,14 @@ def _area(area: Row, origin: float) -> dict[str, object]:
 
 def _power(circuit: Row, legs: Sequence[str]) -> list[dict[str, object]]:
     """Return a circuit's loss along the ground, one curve a leg and wavelength, if it is given."""
-    curves: dict[tuple[str, str], list[Row]] = {}
+    curves: dict[tuple[str, float | None], list[Row]] = {}
     for row in rows_at(circuit, "power"):
-        key = (text_at(row, "leg") or (legs[0] if legs else ""), text_at(row, "wavelength_nm"))
+        key = (text_at(row, "leg") or (legs[0] if legs else ""), value_at(row, "wavelength_nm"))
         curves.setdefault(key, []).append(row)
     return [
         {
             "circuit": plain(text_at(circuit, "name")),
-            "wavelength": plain(wavelength),
+            "wavelength": "" if wavelength is None else f"{wavelength:g}",
             "leg": legs.index(leg) if leg in legs else 0,
             "ground": steps((value_at(row, "ground_m") for row in rows), scale=1000),
             "loss": steps((value_at(row, "loss_db") for row in rows), scale=1000),

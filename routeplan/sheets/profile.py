@@ -139,11 +139,11 @@ def _loss(document: Row, leg_number: int, along: _Scale, rows_count: int) -> lis
             for row in rows_at(circuit, "power")
             if text_at(row, "leg") == name or ("leg" not in row and leg_number == 0)
         ]
-        wavelength = text_at(rows[0], "wavelength_nm") if rows else ""
-        rows = [row for row in rows if text_at(row, "wavelength_nm") == wavelength]
+        wavelength_nm = value_at(rows[0], "wavelength_nm") if rows else None
+        rows = [row for row in rows if value_at(row, "wavelength_nm") == wavelength_nm]
         if rows:
             title = f"Loss of {text_at(circuit, 'name')}"
-            title += f" at {wavelength} nm, dB" if wavelength else ", dB"
+            title += ", dB" if wavelength_nm is None else f" at {wavelength_nm:g} nm, dB"
             return _loss_parts(rows, along, rows_count, title)
     return []
 

@@ -134,8 +134,8 @@ def _verdicts(document: Row) -> str:
     for circuit in rows_at(document, "circuits"):
         margins_db = [value_at(row, "margin_db") for row in rows_at(circuit, "budgets")]
         known_db = [margin_db for margin_db in margins_db if margin_db is not None]
-        margin = f"smallest margin {number_text(min(known_db), digits=3)} dB" if known_db else ""
-        said = "; ".join(part for part in (margin, *reasons_of(circuit)[:2]) if part)
+        margin = f"Smallest margin {number_text(min(known_db), digits=3)} dB" if known_db else ""
+        said = " ".join(f"{part.rstrip('.')}." for part in (margin, *reasons_of(circuit)) if part)
         lines.append(
             f"<div><dt>{safe(text_at(circuit, 'name'))}</dt>"
             f"<dd>{verdict_mark(text_at(circuit, 'verdict'))} {safe(said)}</dd></div>"

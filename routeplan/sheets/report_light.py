@@ -51,12 +51,8 @@ def direction_text(circuit: Row, direction: str) -> str:
 
 def _circuit(document: Row, circuit: Row) -> str:
     units = text_at(document, "units")
-    fibres = ", ".join(
-        f"{text_at(row, 'cable')} fibre {text_at(row, 'fibre')}"
-        for row in rows_at(circuit, "fibres")
-    )
     facts = (
-        f"{text_at(circuit, 'from')} to {text_at(circuit, 'to')}; {fibres}; "
+        f"{text_at(circuit, 'from')} to {text_at(circuit, 'to')}; {_fibres_text(circuit)}; "
         f"{length_text(value_at(circuit, 'glass_m'), units=units, digits=3)} of glass; "
         f"delay {number_text(value_at(circuit, 'delay_us'), digits=3)} \N{MICRO SIGN}s one way"
     )
@@ -67,6 +63,17 @@ def _circuit(document: Row, circuit: Row) -> str:
         f"{verdict_mark(text_at(circuit, 'verdict'))}</h3>\n<p>{safe(facts)}</p>\n"
         f"{_overview(circuit, budgets)}"
         f"{f'<ul>{reasons}</ul>' if reasons else ''}\n{_all_lines(circuit, budgets)}</article>\n"
+    )
+
+
+def _fibres_text(circuit: Row) -> str:
+    """Return the fibres a circuit runs on, cable by cable."""
+    by_cable: dict[str, list[str]] = {}
+    for row in rows_at(circuit, "fibres"):
+        by_cable.setdefault(text_at(row, "cable"), []).append(text_at(row, "fibre"))
+    return ", ".join(
+        f"{cable} {'fibre' if len(fibres) == 1 else 'fibres'} {' and '.join(fibres)}"
+        for cable, fibres in by_cable.items()
     )
 
 

@@ -158,7 +158,7 @@ def joints_html(document: Row) -> str:
             ),
         ),
         Column(head="Place", cell=_place_cell),
-        words("Leg", "leg"),
+        *([words("Leg", "leg")] if len(rows_at(document, "legs")) > 1 else []),
         length("Ground station", "ground_m", units=text_at(document, "units")),
         Column(head="How to get there", cell=lambda row: joint_place(document, row)),
         Column(
@@ -199,7 +199,10 @@ def _measured(row: Row, key: str) -> str:
     value = row.get(key)
     if value is None:
         return safe(number_text(None))
-    return f"{_value_text(value)} {safe(text_at(row, 'unit'))}".strip()
+    unit = text_at(row, "unit")
+    if isinstance(value, float) and unit in ("m", "dB") and "limit" in row:
+        return f"{safe(number_text(value, digits=3))} {safe(unit)}"
+    return f"{_value_text(value)} {safe(unit)}".strip()
 
 
 def _value_text(value: object) -> str:

@@ -123,7 +123,7 @@ def test_checks_that_fail_stand_first(document: Row) -> None:
     """Fails, then unknown, then fits, with values and limits in their unit."""
     rows = _rows(_section(report_html(document), "checks"))
     assert [row.split()[1] for row in rows] == ["fails", "unknown", "fits"]
-    assert "61.2 m 60 m" in rows[0]
+    assert "61.200 m 60.000 m" in rows[0]
 
 
 def test_assumptions_warnings_and_cautions_are_all_there(document: Row) -> None:

@@ -114,8 +114,9 @@ const RunLayer = L.Renderer.extend({
       const { y } = map.latLngToLayerPoint([n * step, view.getCenter().lng]);
       ctx.moveTo(this.box[0], Math.round(y) + 0.5);
       ctx.lineTo(this.box[2], Math.round(y) + 0.5);
-      const { x } = map.latLngToLayerPoint(view.getNorthWest());
-      ctx.fillText(`${Math.abs(n * step).toFixed(digits)}° ${n < 0 ? "S" : "N"}`, x + 44, y - 4);
+      const { x, y: top } = map.latLngToLayerPoint(view.getNorthWest());
+      const below = map.getSize().y + top - y;
+      if (y - top > 24 && below > 70) ctx.fillText(`${Math.abs(n * step).toFixed(digits)}° ${n < 0 ? "S" : "N"}`, x + 44, y - 4);
     }
     ctx.stroke();
   },
@@ -264,6 +265,8 @@ const RunLayer = L.Renderer.extend({
     const origin = this._map.getPixelOrigin();
     this.seen = [min.x - origin.x, min.y - origin.y, max.x - origin.x, max.y - origin.y];
     const most = max.x - min.x > 640 ? 42 : 22;
+    this.closed = new Busy(6);
+    this.keepClear([busy, this.closed]);
     labels.sort((a, b) => (b.rank || 0) - (a.rank || 0));
     for (const label of labels) {
       if (!label.text) continue;
@@ -275,12 +278,27 @@ const RunLayer = L.Renderer.extend({
       ctx.textAlign = "left";
       ctx.fillStyle = label.isMinor ? MUTED : INK;
       haloText(ctx, text, spot[0], spot[1], GROUND);
-      busy.take(spot[0] - 2, spot[1] - label.size / 2, spot[0] + width + 2, spot[1] + label.size / 2);
+      for (const grid of [busy, this.closed]) {
+        grid.take(spot[0] - 2, spot[1] - label.size / 2, spot[0] + width + 2, spot[1] + label.size / 2);
+      }
       this.counts.names += 1;
     }
   },
 
-  // Where a name fits beside its point; a joint or site is named in any case.
+  // No name is written under the legend or the buttons.
+  keepClear(grids) {
+    const holder = this._map.getContainer();
+    const home = holder.getBoundingClientRect();
+    for (const part of holder.querySelectorAll(".legend, .leaflet-bar")) {
+      const box = part.getBoundingClientRect();
+      const start = this._map.containerPointToLayerPoint([box.left - home.left, box.top - home.top]);
+      for (const grid of grids) {
+        grid.take(start.x - 6, start.y - 6, start.x + box.width + 6, start.y + box.height + 6);
+      }
+    }
+  },
+
+  // Where a name fits beside its point; a joint or site is named even across a way.
   freeSpot(busy, label, width) {
     const half = label.size / 2 + 1;
     const spots = LABEL_SIDES.map(([dx, dy]) => [
@@ -291,7 +309,8 @@ const RunLayer = L.Renderer.extend({
     const inView = spots.filter(([x, y]) => (
       x > left + 3 && x + width < right - 3 && y - half > top && y + half < bottom));
     const found = inView.find(([x, y]) => busy.isFree(x, y - half, x + width, y + half));
-    return found || (label.rank ? inView[0] || null : null);
+    if (found || !label.rank) return found;
+    return inView.find(([x, y]) => this.closed.isFree(x, y - half, x + width, y + half));
   },
 
   // The place on any shown way nearest to a layer point, within `reach` pixels.

@@ -125,9 +125,12 @@ function otherRows(layer) {
     rows.push(legendRow(layer, "background", line("#b8b2a2"), "streets", ""));
   }
   const names = (ctx) => { ctx.font = `600 12px ${FONT}`; ctx.fillText("Ab", 12, 15); };
-  rows.push(legendRow(layer, "names", names, "names", ""));
-  rows.push(legendRow(layer, "grid", line("#cfcabc"), "degrees", ""));
-  return rows;
+  const switches = [
+    legendRow(layer, "names", names, "names", ""),
+    legendRow(layer, "grid", line("#cfcabc"), "degrees", ""),
+  ];
+  switches.forEach((row) => row.classList.add("switch"));
+  return [...rows, ...switches];
 }
 
 function addLegend(map, layer) {
@@ -136,6 +139,7 @@ function addLegend(map, layer) {
     const box = element("details", "legend");
     box.open = map.getSize().x > 640;
     box.append(element("summary", "", "Legend"), ...legendRows(layer), ...otherRows(layer));
+    box.addEventListener("toggle", () => layer.redraw());
     L.DomEvent.disableClickPropagation(box);
     L.DomEvent.disableScrollPropagation(box);
     return box;
@@ -207,6 +211,33 @@ function addPointer(map) {
   };
 }
 
+// Until the reader moves the map it shows the whole run, whatever becomes of the window; paper has
+// its own size too, and what is seen is drawn anew for it and put back afterwards.
+function keepFitted(map, strip, fit) {
+  let isMoved = false;
+  let seen = null;
+  const holder = map.getContainer();
+  for (const name of ["pointerdown", "wheel", "keydown"]) {
+    holder.addEventListener(name, () => { isMoved = true; }, { passive: true });
+  }
+  const resize = () => {
+    map.invalidateSize({ animate: false });
+    if (!isMoved) fit(); else if (seen) map.fitBounds(seen, { animate: false });
+    strip.paint();
+  };
+  new ResizeObserver(resize).observe(holder);
+  window.addEventListener("beforeprint", () => {
+    seen = map.getBounds().pad(-0.02);
+    document.body.classList.add("printing");
+    resize();
+  });
+  window.addEventListener("afterprint", () => {
+    document.body.classList.remove("printing");
+    resize();
+    seen = null;
+  });
+}
+
 function showRun(map) {
   const run = readRun(JSON.parse(document.getElementById("run-data").textContent));
   const layer = new RunLayer(run, new Set());
@@ -253,15 +284,14 @@ function showRun(map) {
   };
   map.setMinZoom(2).setMaxZoom(20);
   fit();
-  layer.addTo(map);
   addLegend(map, layer);
+  layer.addTo(map);
   fillSelect(select("leg"), run.legs.map((leg) => leg.name), (leg) => show({ leg, ground: 0 }));
   chooseCurves();
   map.on("mousemove", (event) => seek(event, 60));
   map.on("click", (event) => seek(event, 90));
-  new ResizeObserver(() => { map.invalidateSize({ animate: false }); strip.paint(); })
-    .observe(document.querySelector(".strip"));
   strip.paint();
+  keepFitted(map, strip, fit);
   begin();
   window.runSheet = { map, layer, run, strip, fit, show, last: () => last };
   requestAnimationFrame(() => { document.documentElement.dataset.ready = "yes"; });

@@ -232,7 +232,6 @@ class Strip {
 
   paintCursor() {
     const ctx = this.fit(this.cursor);
-    ctx.clearRect(0, 0, this.width, this.height);
     if (this.ground === null || !this.leg) return;
     const x = this.xAt(this.ground);
     ctx.strokeStyle = POINTER;
