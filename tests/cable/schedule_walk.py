@@ -6,11 +6,10 @@ from collections import Counter, defaultdict
 from collections.abc import Sequence
 from itertools import groupby
 
-from small_plants import SmallPlant
-
 from routeplan.cable.model import FibreUse, Splice
 from routeplan.cable.schedule import EXISTING
 from routeplan.run.practice import CircuitOrder
+from tests.cable.small_plants import SmallPlant
 
 
 class Walker:

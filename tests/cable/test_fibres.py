@@ -8,7 +8,6 @@ from itertools import groupby, product
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
-from small_plants import make_cable, make_circuit
 
 from routeplan.cable.fibres import (
     Hop,
@@ -20,6 +19,7 @@ from routeplan.cable.fibres import (
 from routeplan.cable.model import Cable, FibreUse
 from routeplan.errors import InputError
 from routeplan.run.practice import CircuitOrder
+from tests.cable.small_plants import make_cable, make_circuit
 
 NODES = ("a", "b", "c", "d")
 SITES = {node.upper(): node for node in NODES}

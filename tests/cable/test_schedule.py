@@ -9,14 +9,21 @@ from dataclasses import replace
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
-from schedule_walk import check_joints, check_walks
-from small_plants import SmallPlant, cut_cable, make_cable, make_circuit, make_joint, make_plant
 
 from routeplan.cable.fibres import assign_fibres
 from routeplan.cable.model import Cable, FibreUse, Joint, Splice
 from routeplan.cable.schedule import EXISTING, OWNERS_COLOUR, joint_splice_count, splice_rows
 from routeplan.errors import InputError, RangeError
 from routeplan.run.practice import CircuitOrder
+from tests.cable.schedule_walk import check_joints, check_walks
+from tests.cable.small_plants import (
+    SmallPlant,
+    cut_cable,
+    make_cable,
+    make_circuit,
+    make_joint,
+    make_plant,
+)
 
 
 def schedule(
