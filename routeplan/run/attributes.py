@@ -149,20 +149,16 @@ def place_from(placed: PlacedShape, *, number: int, loose: bool, trouble: Troubl
     known, rest = _sorted_properties(shape.properties, PLACE_KEYS, reading)
     role = _word(known, "role", reading)
     crosses = _word(known, "crosses", reading)
-    kind = _word(known, "kind", reading)
-    if kind is None:
-        kind = "crossing" if crosses and not role else "site"
-        if not role and not crosses and "kind" not in known:
-            rest["kind_assumed"] = True
+    kind = _word(known, "kind", reading) or ("crossing" if crosses and not role else "site")
+    if not (role or crosses or "kind" in known):
+        rest["kind_assumed"] = True
     width_m = _number(known, "width_m", reading)
     _check_place(kind, role=role, crosses=crosses, width_m=width_m, known=known, reading=reading)
-    name = _name(known, "name", reading)
-    if name and shape.part > 1:
-        name = f"{name} ({shape.part})"
+    name = _place_name(known, kind, number, "kind_assumed" in rest, reading)
     height = None if placed.heights_m is None else float(placed.heights_m[0])
     factor = _number(known, "joint_cost_factor", reading)
     return Place(
-        name=name or f"{'Point' if 'kind_assumed' in rest else _spoken(kind)} {number}",
+        name=f"{name} ({shape.part})" if shape.part > 1 and known.get("name") else name,
         kind=kind,  # type: ignore[arg-type]
         role=role,
         lon=float(placed.lonlat[0, 0]),
@@ -205,6 +201,10 @@ def area_from(placed: PlacedShape, *, loose: bool, trouble: Trouble) -> Area | N
         properties=rest,
         source=shape.source,
     )
+
+
+def _place_name(known: Known, kind: str, number: int, is_assumed: bool, reading: _Reading) -> str:
+    return _name(known, "name", reading) or f"{'Point' if is_assumed else _spoken(kind)} {number}"
 
 
 def _check_place(

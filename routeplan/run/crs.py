@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from functools import cache
+from functools import lru_cache
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -24,21 +24,25 @@ _NAME_IT = 'Name their CRS, for example crs = "EPSG:27700"'
 _TURN_DEG = 360.0
 
 
-@cache
 def crs_or_none(name: object) -> CRS | None:
     """Return the CRS of that name, code or WKT, or None if there is no such."""
+    if not isinstance(name, str) or not name.strip() or len(name) > 100_000:
+        return None
+    return _crs_named(name.strip())
+
+
+@lru_cache(maxsize=64)
+def _crs_named(name: str) -> CRS | None:
     from pyproj import CRS
     from pyproj.exceptions import ProjError
 
-    if not isinstance(name, str) or not name.strip() or len(name) > 100_000:
-        return None
     try:
-        return CRS.from_user_input(name.strip())
+        return CRS.from_user_input(name)
     except (ProjError, ValueError, TypeError):
         return None
 
 
-@cache
+@lru_cache(maxsize=64)
 def is_wgs84(crs: CRS) -> bool:
     """Tell whether coordinates are degrees on WGS 84 already, with or without heights."""
     if not crs.is_geographic:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
-from functools import cache
+from functools import lru_cache
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -51,19 +51,24 @@ def placed_shapes(layer: Layer, *, run_crs: CRS | None, trouble: Trouble) -> lis
     dense = _dense(layer, crs)
     layer = replace(layer, shapes=[shape for shape, _ in dense])
     xy = _all_xy(layer)
-    lonlat, datum_lonlat = _on_earth(xy, crs)
+    places = _on_earth(layer, xy, crs=crs, trouble=trouble)
+    if places is None:
+        return []
+    lonlat, datum_lonlat = places
     if not is_wgs84(crs):
         _check_place(layer, xy, lonlat, crs=crs, trouble=trouble)
     heights = _heights(layer, crs, trouble)
-    ellipsoid = _ellipsoid(crs)
+    ellipsoid = crs.ellipsoid
+    assert ellipsoid is not None
     ends = np.cumsum([0, *(len(shape.xy) for shape in layer.shapes)])
+    marks = [is_drawn for _, is_drawn in dense]
     placed = []
-    for (shape, is_drawn), start, end in zip(dense, ends, ends[1:], strict=False):
+    for shape, is_drawn, start, end in zip(layer.shapes, marks, ends[:-1], ends[1:], strict=True):
         own = frozen(lonlat[start:end])
-        same = datum_lonlat is lonlat
         if not np.isfinite(own).all():
             _unplaceable(shape, crs, trouble)
             continue
+        same = datum_lonlat is lonlat
         placed.append(
             PlacedShape(
                 shape=shape,
@@ -71,8 +76,8 @@ def placed_shapes(layer: Layer, *, run_crs: CRS | None, trouble: Trouble) -> lis
                 datum_lonlat=own if same else frozen(datum_lonlat[start:end]),
                 heights_m=_own_heights(heights, start, end),
                 is_drawn=is_drawn,
-                semi_major_m=ellipsoid[0],
-                inverse_flattening=ellipsoid[1],
+                semi_major_m=ellipsoid.semi_major_metre,
+                inverse_flattening=ellipsoid.inverse_flattening,
             )
         )
     return placed
@@ -157,12 +162,25 @@ def _dense_shape(shape: Shape, step: float) -> tuple[Shape, NDArray[np.bool_] | 
     return dense, is_drawn
 
 
-def _on_earth(xy: Floats, crs: CRS) -> tuple[Floats, Floats]:
+def _on_earth(
+    layer: Layer, xy: Floats, *, crs: CRS, trouble: Trouble
+) -> tuple[Floats, Floats] | None:
     """Return coordinates on WGS 84 and on the file's own datum, longitudes within -180..180."""
+    from pyproj.exceptions import ProjError
+
     if is_wgs84(crs):
         lonlat = _wrapped(xy)
         return lonlat, lonlat
-    return _transformed(xy, crs, "EPSG:4326"), _transformed(xy, crs, None)
+    try:
+        return _transformed(xy, crs, "EPSG:4326"), _transformed(xy, crs, None)
+    except ProjError:
+        problem = Problem(
+            where=layer.where,
+            what="is in a CRS that cannot be taken to longitude and latitude on the earth",
+            value=crs_label(crs),
+        )
+        trouble.add(CrsError, problem, file=layer.file)
+        return None
 
 
 def _wrapped(lonlat: Floats) -> Floats:
@@ -179,7 +197,7 @@ def _transformed(xy: Floats, crs: CRS, target: str | None) -> Floats:
     return _wrapped(lonlat)
 
 
-@cache
+@lru_cache(maxsize=64)
 def _transformer(crs: CRS, target: str | None):  # type: ignore[no-untyped-def]
     """Return the way from a CRS to another, or to degrees from Greenwich on its own datum."""
     from pyproj import Transformer
@@ -198,12 +216,6 @@ def _own_degrees(crs: CRS) -> object:
     ellipsoid = own.ellipsoid
     axes = {"a": ellipsoid.semi_major_metre, "b": ellipsoid.semi_minor_metre}
     return {"proj": "longlat", **axes, "type": "crs"}
-
-
-def _ellipsoid(crs: CRS) -> tuple[float, float]:
-    ellipsoid = crs.ellipsoid
-    assert ellipsoid is not None
-    return ellipsoid.semi_major_metre, ellipsoid.inverse_flattening
 
 
 def _heights(layer: Layer, crs: CRS, trouble: Trouble) -> Floats | None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import os
 import struct
 import warnings
 from collections import Counter
@@ -64,6 +65,8 @@ def layers_from_gdal(
     if problem is not None:
         trouble.add(GeometryError, problem, file=file)
         return []
+    if path.suffix.lower() == ".shp" and not path.with_suffix(".dbf").is_file():
+        trouble.warn(file, "has no .dbf file beside it: nothing in it has a name or a property")
     names = _layer_names(path, file=file, only=only, trouble=trouble)
     found = (_layer(path, name, file=file, trouble=trouble) for name in names)
     return [layer for layer in found if layer is not None]
@@ -162,19 +165,19 @@ def _called(what: str, path: Path, *, file: str, trouble: Trouble, layer: str | 
             byte = f"byte 0x{error.object[error.start]:02x} in {shown(error.object[:40].hex())}"
             _refuse(trouble, file, "holds text that is not UTF-8", value=byte)
             return None
-        except (RuntimeError, ValueError, OSError, MemoryError) as error:
+        except Exception as error:  # damaged files bring out faults of the library itself
             _refuse(trouble, file, "cannot be read", value=_without_path(error, path)[:300])
             return None
     for warning in caught:
         text = str(warning.message)
         if issubclass(warning.category, RuntimeWarning | UserWarning) and "Measured" not in text:
-            text = text.replace(str(path.absolute()), path.name)
+            text = text.replace(f"{path.absolute().parent}{os.sep}", "")
             trouble.warn(file, text[:300], file=file, kind="the format's reader warns")
     return result
 
 
 def _without_path(error: BaseException, path: Path) -> str:
-    return str(error).replace(str(path.absolute()), path.name)
+    return str(error).replace(f"{path.absolute().parent}{os.sep}", "")
 
 
 def _said(text: str) -> tuple[str, str]:

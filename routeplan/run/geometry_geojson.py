@@ -226,7 +226,9 @@ def _parts(
             continue
         arrays = [_positions(ring, source, trouble) for ring in rings]
         good = [array for array in arrays if array is not None]
-        if len(good) == len(arrays):
+        if any(len(array) == 0 for array in good):
+            trouble.warn(str(source), "has an empty part, left out", file=source.file)
+        elif len(good) == len(arrays):
             yield shape_kind, good
 
 

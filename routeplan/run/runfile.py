@@ -220,7 +220,10 @@ def _mend(merged: Table, path: tuple[str | int, ...], *, unknown: bool) -> None:
         return
     table: Any = merged
     for part in path[:depth]:
-        table = table[part] if isinstance(table, dict | list) else None  # type: ignore[index]
+        try:
+            table = table[part]
+        except (KeyError, IndexError, TypeError):  # mended already, with what it stood in
+            return
     if isinstance(table, dict):
         table.pop(path[depth], None)
         if not unknown:

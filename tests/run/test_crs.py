@@ -111,6 +111,7 @@ def test_a_run_files_geographic_crs_is_that_of_degrees(
     [
         ({"type": "name", "properties": {"name": "EPSG:999999"}}, 'not known ("EPSG:999999")'),
         ({"type": "link", "properties": {"href": "x"}}, "declares a CRS that is not known"),
+        ({"type": "name", "properties": {"name": [1]}}, "declares a CRS that is not known ([1])"),
         ("EPSG:4326", 'declares a CRS that is not known ("EPSG:4326")'),
     ],
 )
@@ -134,6 +135,10 @@ def test_an_unknown_crs_member_is_an_error(
             "is in a CRS that is a local system that has no known place on the earth",
         ),
         ("EPSG:4978", "is in a CRS that is geocentric"),
+        (
+            "+proj=merc +a=3396190 +b=3376200 +type=crs",
+            "is in a CRS that cannot be taken to longitude and latitude on the earth",
+        ),
     ],
 )
 def test_a_crs_without_a_place_on_the_earth_is_an_error(

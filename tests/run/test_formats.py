@@ -301,6 +301,19 @@ def test_a_shapefile_without_a_crs_needs_one_named(
     assert run.lines[0].semi_major_m == 6377563.396
 
 
+def test_a_shapefile_without_its_other_files_is_told(
+    tmp_path: Path, said: Callable[[Path], list[str]]
+) -> None:
+    """Names are lost with the .dbf file, which is warned of; without .shx nothing can be read."""
+    line = a_line((10.0, 50.0, 1.0), (10.0, 50.01, 1.0))
+    path = write_lines(tmp_path / "r.shp", [line], "ESRI Shapefile", "EPSG:4326", name=["a"])
+    path.with_suffix(".dbf").unlink()
+    assert "has no .dbf file beside it" in read_run(path).warnings[0][1]
+    path.with_suffix(".shx").unlink()
+    (message,) = said(path)
+    assert message.startswith("r.shp: cannot be read (Unable to open r.shx")
+
+
 def test_a_shapefile_cut_short_is_an_error(
     tmp_path: Path, said: Callable[[Path], list[str]]
 ) -> None:
