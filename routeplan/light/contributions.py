@@ -6,13 +6,7 @@ from collections.abc import Iterator, Mapping, Sequence
 from math import sqrt
 from typing import TYPE_CHECKING, TypeAlias
 
-from routeplan.light.attenuation import (
-    Attenuation,
-    MeasuredPoint,
-    attenuation_db_per_km,
-    attenuation_of,
-    sigma_db_per_km,
-)
+from routeplan.light.attenuation import Attenuation, MeasuredPoint, attenuation_of, sigma_db_per_km
 from routeplan.light.bends import bend_loss
 from routeplan.light.fibres import Fibre, find_fibre
 from routeplan.light.model import (
@@ -28,6 +22,7 @@ from routeplan.light.model import (
     Step,
 )
 from routeplan.light.power import printed_db
+from routeplan.light.spectrum import attenuation_db_per_km
 from routeplan.light.splices import fibre_mismatch
 
 if TYPE_CHECKING:

@@ -5,9 +5,10 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-from routeplan.light.attenuation import attenuation_db_per_km, attenuation_of, sigma_db_per_km
+from routeplan.light.attenuation import attenuation_of, sigma_db_per_km
 from routeplan.light.model import BudgetLine
 from routeplan.light.power import printed_db
+from routeplan.light.spectrum import attenuation_db_per_km
 from routeplan.tables import load_rows
 
 if TYPE_CHECKING:

@@ -2,17 +2,18 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from math import e, log10
 from typing import TYPE_CHECKING, ClassVar
 
-from routeplan.light.attenuation import MeasuredPoint, attenuation_db_per_km, attenuation_of
+from routeplan.light.attenuation import attenuation_of
 from routeplan.light.constants import constant
-from routeplan.light.contributions import measured_of, step_loss
+from routeplan.light.contributions import Measured, measured_of, step_loss
 from routeplan.light.delay import group_index
 from routeplan.light.fibres import find_fibre
-from routeplan.light.model import ExistingSpan, Glass, Mating, Part, Path
+from routeplan.light.model import ExistingSpan, Glass, Mating, Part, Path, Step
+from routeplan.light.spectrum import attenuation_db_per_km
 from routeplan.tables import load_rows
 
 if TYPE_CHECKING:
@@ -166,7 +167,7 @@ def reflections(
     practice: LossPractice,
     connector_return_loss_db: float | None = None,
     receiver_return_loss_db: float | None = None,
-    measured: Mapping[str, Sequence[MeasuredPoint]] | None = None,
+    measured: Measured | None = None,
 ) -> tuple[Reflection, ...] | None:
     """
     Return everything that sends light back, in order along the path, or None if a pair is unknown.
@@ -198,22 +199,17 @@ def reflections(
     ----------
     .. [1] See `combined_return_loss_db` and `backscatter_return_loss_db`.
     """
+    measured = measured or {}
     found: list[Reflection] = []
     before_db = 0.0
     for step in path.steps:
-        own_db: float | None = None
-        if isinstance(step, Mating):
-            own_db = step.return_loss_db or connector_return_loss_db
-            if own_db is None:
-                return None
-        elif isinstance(step, Part):
-            own_db = step.return_loss_db
-        elif isinstance(step, Glass | ExistingSpan):
-            own_db = _glass_db(step, wavelength_nm, measured or {})
+        own_db = _own_db(step, wavelength_nm, connector_return_loss_db, measured)
+        if own_db is None and isinstance(step, Mating):
+            return None
         if own_db is not None:
             where = step.section if isinstance(step, Glass) else step.where
             found.append(Reflection(where=where, return_loss_db=own_db, before_db=before_db))
-        loss = step_loss(step, wavelength_nm, practice=practice, measured=measured or {})
+        loss = step_loss(step, wavelength_nm, practice=practice, measured=measured)
         before_db += loss.mean_db if loss else 0.0
     if receiver_return_loss_db is not None:
         end = Reflection(
@@ -246,10 +242,26 @@ def return_loss_db(found: Sequence[Reflection] | None) -> float | None:
     return combined_return_loss_db(each.seen_db for each in found)
 
 
+def _own_db(
+    step: Step, wavelength_nm: float, connector_return_loss_db: float | None, measured: Measured
+) -> float | None:
+    """Return the return loss of one step, None if it sends nothing back or that is not known."""
+    match step:
+        case Mating():
+            own_db = step.return_loss_db
+            return connector_return_loss_db if own_db is None else own_db
+        case Part():
+            return step.return_loss_db
+        case Glass() | ExistingSpan():
+            return _glass_db(step, wavelength_nm, measured)
+        case _:
+            return None
+
+
 def _glass_db(
     step: Glass | ExistingSpan,
     wavelength_nm: float,
-    measured: Mapping[str, Sequence[MeasuredPoint]],
+    measured: Measured,
 ) -> float | None:
     points = measured_of(step, measured) if isinstance(step, Glass) else ()
     curve = attenuation_of(step.fibre_type, points).typical

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from routeplan.light.attenuation import attenuation_db_per_km, attenuation_of, ceiling_db_per_km
+from routeplan.light.attenuation import attenuation_of, ceiling_db_per_km
 from routeplan.light.bends import bend_loss
 from routeplan.light.contributions import Measured, measured_of, unlike_joints
 from routeplan.light.fibres import Fibre, find_fibre
@@ -14,6 +14,7 @@ from routeplan.light.model import Bend, BudgetLine, Glass, Path
 from routeplan.light.penalties import dgd_limit_ps, intersymbol_penalty_db, spread_ratio
 from routeplan.light.pmd import link_pmd_ps
 from routeplan.light.power import printed_db
+from routeplan.light.spectrum import attenuation_db_per_km
 from routeplan.light.verdict import Finding
 
 __all__ = [

@@ -8,16 +8,15 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from routeplan.errors import InputError, RangeError
-from routeplan.light.attenuation import (
+from routeplan.light.attenuation import attenuation_of, ceiling_db_per_km, sigma_db_per_km
+from routeplan.light.fibres import fibre_names, find_fibre
+from routeplan.light.spectrum import (
     attenuation_db_per_km,
-    attenuation_of,
-    ceiling_db_per_km,
     infrared_db_per_km,
     loss_curve,
-    sigma_db_per_km,
+    loss_spectrum,
     water_peak_ratio,
 )
-from routeplan.light.fibres import fibre_names, find_fibre
 from tests.light.small_paths import measured
 
 # Which curves the recommendations' ceilings were made for.
@@ -152,6 +151,12 @@ def test_unknown_fibre_type_names_the_nearest() -> None:
         attenuation_of("G652D")
     with pytest.raises(InputError, match="Multimode"):
         attenuation_of("OM3")
+
+
+def test_spectrum_covers_all_bands() -> None:
+    """One value a nanometre from 1260 to 1625."""
+    nm, loss = loss_spectrum(attenuation_of("G.652.D").typical)
+    assert (nm[0], nm[-1], len(nm), len(loss)) == (1260.0, 1625.0, 366, 366)
 
 
 def test_curve_without_points_at_water_has_no_peak() -> None:
