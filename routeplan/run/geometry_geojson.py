@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import gc
 import json
 from collections import Counter
 from collections.abc import Iterator, Mapping
@@ -82,7 +83,7 @@ def _parsed(content: bytes, *, file: str, trouble: Trouble) -> Table | None:
     if text is None:
         return None
     try:
-        root = json.loads(text)
+        root = _loaded(text)
     except json.JSONDecodeError as error:
         place = f"{error.msg} in line {error.lineno}, column {error.colno}"
         if not text[error.pos :].strip() or error.msg.startswith("Unterminated"):
@@ -100,6 +101,17 @@ def _parsed(content: bytes, *, file: str, trouble: Trouble) -> Table | None:
         return root
     _refuse(trouble, file, "is JSON but not GeoJSON", value=shown(root))
     return None
+
+
+def _loaded(text: str) -> object:
+    """Parse JSON with the garbage collector resting: it would search every list in vain."""
+    was_enabled = gc.isenabled()
+    gc.disable()
+    try:
+        return json.loads(text)
+    finally:
+        if was_enabled:
+            gc.enable()
 
 
 def _declared_crs(root: Table, *, file: str, trouble: Trouble) -> CRS | None:
