@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from typing import TypeAlias
 
-__all__ = ["Row", "numbers", "row_at", "rows_at", "text_at", "value_at", "whole_at"]
+__all__ = ["Row", "column_at", "numbers", "row_at", "rows_at", "text_at", "value_at", "whole_at"]
 
 Row: TypeAlias = Mapping[str, object]
 
@@ -36,6 +36,12 @@ def value_at(row: Row, key: str) -> float | None:
     if isinstance(value, bool) or not isinstance(value, int | float):
         return None
     return value
+
+
+def column_at(rows: Iterable[Row], key: str) -> list[float | None]:
+    """Return the number under `key` of every row, None where there is none."""
+    values = [row.get(key) for row in rows]
+    return [value if isinstance(value, int | float) else None for value in values]
 
 
 def whole_at(row: Row, key: str) -> int:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
 
-from routeplan.sheets.lookup import Row, numbers, rows_at, text_at, value_at
+from routeplan.sheets.lookup import Row, column_at, numbers, rows_at, text_at, value_at
 from routeplan.sheets.map_style import LINE_STYLES, POINT_WORDS, line_style
 from routeplan.sheets.text import plain
 
@@ -44,7 +44,7 @@ def map_data(document: Row) -> dict[str, object]:
         "background": [
             _polyline(_lists(line), origin) for line in _lists(document.get("background"))
         ],
-        "power": [row for leg in rows_at(document, "circuits") for row in _power(leg, names)],
+        "power": [row for each in rows_at(document, "circuits") for row in _power(each, names)],
     }
 
 
@@ -168,17 +168,16 @@ def _section_start(name: str, station: Row) -> list[object]:
 
 
 def _column(stations: Sequence[Row], key: str) -> Steps:
-    return steps((value_at(row, key) for row in stations), scale=1000)
+    return steps(column_at(stations, key), scale=1000)
 
 
 def _rises(stations: Sequence[Row], start: str, end: str) -> list[int]:
     """Return the millimetres a ruler gains at each station: loops, tails, entries."""
-    rises = []
-    for row in stations:
-        from_m, to_m = value_at(row, start), value_at(row, end)
-        known = from_m is not None and to_m is not None
-        rises.append(round(to_m * 1000) - round(from_m * 1000) if known else 0)  # type: ignore[operator]
-    return rises
+    pairs = zip(column_at(stations, start), column_at(stations, end), strict=True)
+    return [
+        0 if from_m is None or to_m is None else round(to_m * 1000) - round(from_m * 1000)
+        for from_m, to_m in pairs
+    ]
 
 
 def _code(station: Row) -> int:
@@ -255,15 +254,19 @@ def _power(circuit: Row, legs: Sequence[str]) -> list[dict[str, object]]:
     for row in rows_at(circuit, "power"):
         key = (text_at(row, "leg") or (legs[0] if legs else ""), value_at(row, "wavelength_nm"))
         curves.setdefault(key, []).append(row)
+    for rows in curves.values():
+        if (value_at(rows[0], "ground_m") or 0.0) > (value_at(rows[-1], "ground_m") or 0.0):
+            rows.reverse()  # the circuit runs against the leg; the chart reads along it
     return [
         {
             "circuit": plain(text_at(circuit, "name")),
             "wavelength": "" if wavelength is None else f"{wavelength:g}",
-            "leg": legs.index(leg) if leg in legs else 0,
+            "leg": legs.index(leg),
             "ground": steps((value_at(row, "ground_m") for row in rows), scale=1000),
             "loss": steps((value_at(row, "loss_db") for row in rows), scale=1000),
         }
         for (leg, wavelength), rows in curves.items()
+        if leg in legs
     ]
 
 
@@ -281,7 +284,7 @@ def _vertices(leg: Row) -> list[list[object]]:
 
 def _lists(value: object) -> list[list[object]]:
     """Return the lists in a list: vertices of a line, rings of an area."""
-    return [list(each) for each in value] if isinstance(value, list) else []
+    return [each for each in value if isinstance(each, list)] if isinstance(value, list) else []
 
 
 def _third(vertex: object) -> float | None:

@@ -76,7 +76,8 @@ def _expected_m(document: Row, ground_m: float, ruler: str) -> float:
     here, there = stations[after - 1], stations[after]
     part = (ground_m - here["ground_m"]) / (there["ground_m"] - here["ground_m"])
     start_m: float = here[f"{ruler}_to_m"]
-    return start_m + part * (there[f"{ruler}_from_m"] - start_m)
+    reading_m: float = start_m + part * (there[f"{ruler}_from_m"] - start_m)
+    return reading_m
 
 
 def _counts(page: Page) -> dict[str, int]:

@@ -105,6 +105,23 @@ def test_placements_are_totalled_for_the_legend(document: Row) -> None:
     assert len(placements) == 8
 
 
+def test_loss_against_the_leg_is_read_along_it() -> None:
+    """A circuit that runs from the leg's end is charted from its start, steps in order."""
+    power = [
+        {"leg": "L", "ground_m": ground_m, "loss_db": loss_db}
+        for ground_m, loss_db in ((500.0, 0.1), (200.0, 0.2), (200.0, 0.25), (0.0, 0.3))
+    ]
+    document = {
+        "legs": [{"name": "L"}],
+        "circuits": [{"name": "C", "power": [*power, {"leg": "gone", "ground_m": 1.0}]}],
+    }
+    curves = map_data(document)["power"]
+    assert isinstance(curves, list)
+    assert [curve["leg"] for curve in curves] == [0]
+    assert _sums(curves[0]["ground"]) == [0, 200_000, 200_000, 500_000]
+    assert _sums(curves[0]["loss"]) == [300, 250, 200, 100]
+
+
 def test_a_background_is_carried_as_lines(document: Row) -> None:
     """Streets given as polylines reach the page."""
     document["background"] = [[[-31.4, 46.9], [-31.3, 46.95]]]

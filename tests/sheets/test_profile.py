@@ -49,7 +49,7 @@ def test_the_highest_vertex_is_the_highest_point_drawn(document: Row) -> None:
     line, ground_m = document["legs"][0]["line"], document["legs"][0]["line_ground_m"]
     top_m = max(range(len(line)), key=lambda index: line[index][2])
     edge = next(
-        path.get("d") for path in _parsed(document).iter(f"{SVG}path")
+        path.get("d", "") for path in _parsed(document).iter(f"{SVG}path")
         if path.get("stroke") == "#8b8778" and path.get("fill") == "none"
     )  # fmt: skip
     points = [tuple(map(float, pair.split())) for pair in edge[1:].split("L")]
