@@ -127,6 +127,8 @@ STEM.*. Only files that an earlier `plan` wrote there are replaced or, when they
 removed: their names and SHA-256 sums stand in `sheets.sha256`. If a file in the way is not one of
 them, or was changed since, nothing is written and the file is named. Sheets are made in a folder
 beside DIR first and moved in when all are done, `plan.json` last.
+
+`new` writes `run.toml` beside the geometry, or the file of `--out`, and never over one that is there.
 """
 
 _SHEETS_HEAD = """\
@@ -154,6 +156,8 @@ gets an apostrophe in front, so that no spreadsheet takes it for a formula; numb
 Lengths are whole millimetres written in metres, and totals are their exact sums. Decibels are
 rounded to 0.001, delays to a nanosecond, longitude and latitude to nine decimals. What cannot be
 known is `null`, an empty cell in a CSV. Words are explained in the [glossary](glossary.md).
+
+[plan.schema.json](plan.schema.json) is the JSON Schema of `plan.json`.
 
 ## The head of plan.json
 
