@@ -6,10 +6,10 @@ import json
 import math
 import random
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
-from routeplan.planning import Plan, plan
-from routeplan.run import read_run
+if TYPE_CHECKING:
+    from routeplan.planning import Plan
 
 Row = dict[str, Any]
 
@@ -54,7 +54,19 @@ def write_run(folder: Path, features: list[Row], toml: str = "") -> Path:
 
 def planned(folder: Path, features: list[Row], toml: str = "") -> Plan:
     """Write a run into a folder and plan it."""
-    return plan(read_run(write_run(folder, features, toml)))
+    return _planned(write_run(folder, features, toml))
+
+
+def random_plan(folder: Path, seed: int) -> Plan:
+    """Write a run drawn from a seed into a folder and plan it."""
+    return _planned(random_run(folder, seed))
+
+
+def _planned(path: Path) -> Plan:
+    from routeplan.planning import plan
+    from routeplan.run import read_run
+
+    return plan(read_run(path))
 
 
 DUCT_FEATURES = [
