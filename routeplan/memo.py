@@ -84,7 +84,7 @@ def fingerprint(value: object, memo: Memo | None = None) -> Hashable:
     if isinstance(value, Mapping):
         return tuple([(key, fingerprint(entry, memo)) for key, entry in sorted(value.items())])
     if isinstance(value, np.ndarray):
-        digest = blake2b(np.ascontiguousarray(value), digest_size=16).digest()
+        digest = blake2b(value.tobytes(), digest_size=16).digest()
         return (value.shape, value.dtype.str, digest)
     known = memo.prints.get(id(value)) if memo else None
     key = known[2] if known else _content(value, memo)

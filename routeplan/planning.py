@@ -6,9 +6,11 @@ from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Literal
 
+from routeplan.cable.assembly import fewer_joints, put_together
 from routeplan.cable.fibres import assign_fibres
-from routeplan.cable.layout import LaidCable, fewer_joints, lay_cables, put_together
+from routeplan.cable.layout import LaidCable, lay_cables
 from routeplan.cable.model import FibreUse, Layout, Splice
+from routeplan.cable.rulers import existing_glass_mm
 from routeplan.cable.schedule import joint_splice_count, splice_rows
 from routeplan.cable.way import existing_name
 from routeplan.errors import InputError, Problem
@@ -27,6 +29,7 @@ from routeplan.memo import Memo, remembered, swept
 from routeplan.run.defaults import AssumedValue, assumed_values, default_value
 from routeplan.run.model import Run
 from routeplan.run.practice import CircuitOrder
+from routeplan.units import m_from_mm
 from routeplan.verify import Check, plan_checks
 
 __all__ = ["CircuitPlan", "Plan", "assumptions", "one_fewer", "plan", "splices"]
@@ -230,9 +233,7 @@ def _tracks(laid: Sequence[LaidCable], layout: Layout) -> Iterator[CableTrack]:
                 ExistingSpan(
                     where=existing_name(cable.way, stretch),
                     fibre_type=own.make.fibre_type,
-                    glass_m=(stretch.end_mm - stretch.start_mm) / 1000
-                    if stretch.existing_m is None
-                    else stretch.existing_m,
+                    glass_m=m_from_mm(existing_glass_mm(stretch)),
                     loss_db=stretch.existing_db,
                 ),
             )

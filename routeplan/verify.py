@@ -101,7 +101,8 @@ def _count_checks(run: Run, layout: Layout) -> Iterator[Check]:
     if most is None:
         return
     for cable in layout.cables:
-        count = sum(joint.mark.cable == cable.id for joint in layout.joints)
+        # A joint at a branch node belongs to no one cable; the limit is on those along one.
+        count = sum(j.mark.cable == cable.id and j.node is None for j in layout.joints)
         yield Check(
             kind="joints",
             where=f"cable {cable.name}",

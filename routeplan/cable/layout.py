@@ -2,37 +2,27 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from functools import partial
 
 import numpy as np
 
-from routeplan.cable.model import (
-    Cable,
-    CableEnd,
-    Cut,
-    Joint,
-    Layout,
-    Mark,
-    Proof,
-    Reel,
-    Rulers,
-    Section,
-)
-from routeplan.cable.reels import one_joint_fewer
-from routeplan.cable.rulers import BareRuler, bare_ruler, glass_from_sheath, readings, ruled
+from routeplan.cable.model import Cable, Rulers
+from routeplan.cable.rulers import BareRuler, bare_ruler, ruled
 from routeplan.cable.slack import Step, slack_steps
-from routeplan.cable.spans import LaidSpan, bound_tail_mm, joint_cents, laid_spans, tail_mm
-from routeplan.cable.way import Spot, Way, cable_way, leg_at, positions_on
-from routeplan.errors import InfeasibleError, Problem
-from routeplan.ground.model import Ground, Leg, Node
+from routeplan.cable.spans import LaidSpan, bound_tail_mm, laid_spans, tail_mm
+from routeplan.cable.way import Way, cable_way
+from routeplan.errors import InfeasibleError, Problem, RunFileError
+from routeplan.ground.model import Ground, Leg, Node, Stretch
 from routeplan.memo import Memo, remembered
 from routeplan.run.model import Run
-from routeplan.run.practice import Costs, Practice
-from routeplan.units import cents_from_amount, exact_from_number, mm_from_m
+from routeplan.run.practice import Practice
+from routeplan.run.trouble import listed, nearest_hint, shown
+from routeplan.units import mm_from_m
 
-__all__ = ["LaidCable", "LaidSpan", "fewer_joints", "lay_cables", "put_together"]
+__all__ = ["LaidCable", "lay_cables"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -65,6 +55,8 @@ def lay_cables(run: Run, ground: Ground, *, memo: Memo | None = None) -> tuple[L
 
     Raises
     ------
+    RunFileError
+        If a cable names a leg that there is not.
     InfeasibleError
         If a cable has no layout within its limits; names the stretch and the smallest relaxation.
     """
@@ -137,8 +129,17 @@ def _lay(cable: Cable, leg: Leg, ends: tuple[Node, Node], practice: Practice) ->
         spans=spans,
         parted=parted,
         rulers=rulers,
-        warnings=warnings,
+        warnings=(*warnings, *_short_spans(way)),
     )
+
+
+def _short_spans(way: Way) -> Iterator[tuple[str, str]]:
+    """Yield a warning for every existing span whose declared fibre is shorter than its way."""
+    for stretch in way.stretches:
+        way_m = (stretch.end_mm - stretch.start_mm) / 1000
+        if stretch.existing_m is not None and stretch.existing_m < way_m:
+            where = f'cable "{way.cable.name}", existing from {stretch.start_mm / 1000:.0f} m'
+            yield where, f"its existing_m is {stretch.existing_m:g}, but the way is {way_m:.1f} m"
 
 
 def _end_mm(node: Node, stretch: Stretch, practice: Practice) -> int:

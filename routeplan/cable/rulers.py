@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from routeplan.cable.model import Millimetres, Rulers
 from routeplan.cable.slack import Step
 from routeplan.cable.way import Way
+from routeplan.ground.model import Stretch
 from routeplan.run.model import Placement
 from routeplan.run.practice import Slack
 from routeplan.units import mm_from_m
@@ -19,7 +20,7 @@ __all__ = [
     "BareRuler",
     "bare_ruler",
     "chain_from_reading",
-    "glass_from_sheath",
+    "existing_glass_mm",
     "readings",
     "ruled",
 ]
@@ -146,35 +147,37 @@ def _existing_glass(way: Way, bare: BareRuler) -> list[int]:
     for stretch in way.stretches:
         if stretch.placement != "existing":
             continue
-        inside = [
-            k
-            for k in range(len(glass))
-            if bare.is_existing[k]
-            and stretch.start_mm <= bare.chain_mm[k]
-            and bare.chain_mm[k + 1] <= stretch.end_mm
-        ]
-        total = stretch.end_mm - stretch.start_mm
-        whole = total if stretch.existing_m is None else mm_from_m(stretch.existing_m)
-        reached = 0
-        for k in inside:
-            upto = round(whole * (int(bare.chain_mm[k + 1]) - stretch.start_mm) / total)
-            glass[k] = upto - reached
-            reached = upto
+        first, last = np.searchsorted(bare.chain_mm, [stretch.start_mm, stretch.end_mm]).tolist()
+        along = bare.chain_mm[first : last + 1] - stretch.start_mm
+        reached = _shared_mm(existing_glass_mm(stretch), along.tolist(), is_turned=way.is_turned)
+        glass[first:last] = np.diff(reached).tolist()
     return glass
 
 
-def glass_from_sheath(sheath_mm: int, glass_ratio: float) -> int:
+def existing_glass_mm(stretch: Stretch) -> int:
+    """Return the fibre in an existing span: as declared, else as long as its way. [mm]"""
+    if stretch.existing_m is None:
+        return stretch.end_mm - stretch.start_mm
+    return mm_from_m(stretch.existing_m)
+
+
+def _shared_mm(whole_mm: int, along_mm: Sequence[int], *, is_turned: bool) -> list[int]:
     """
-    Return the fibre in a length of sheath. [mm]
+    Return how much of a whole lies before each of some points, the half rounded either way.
 
     Parameters
     ----------
-    sheath_mm
-        Sheath length. [mm]
-    glass_ratio
-        How much longer the fibre is than the sheath. [-]
+    whole_mm
+        The whole. [mm]
+    along_mm
+        How far along every point lies, rising from 0 to the end. [mm]
+    is_turned
+        Whether the half is rounded down, so that the mirrored points get the mirrored shares.
     """
-    return round(sheath_mm * (1.0 + glass_ratio))
+    total = max(along_mm[-1], 1)
+    up = 0 if is_turned else 1
+    # Twice the share plus one half, rounded down; turned, the exact half stays below.
+    return [(2 * whole_mm * at + total + up - 1) // (2 * total) for at in along_mm]
 
 
 def readings(

@@ -2,12 +2,11 @@
 
 from __future__ import annotations
 
-from collections import defaultdict
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from itertools import pairwise
 
-from routeplan.cable.way import Spot, Way
+from routeplan.cable.way import Spot, Way, is_within
 from routeplan.ground.model import Stretch
 from routeplan.run.practice import Slack
 from routeplan.units import mm_from_m
@@ -15,6 +14,8 @@ from routeplan.units import mm_from_m
 __all__ = ["Step", "slack_steps"]
 
 _LOOP_CROSSES = frozenset({"rail", "water"})
+_LOOP_STRETCHES = frozenset({"bridge", "water"})
+_EXISTING = frozenset({"existing"})
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -44,15 +45,29 @@ def slack_steps(way: Way, *, slack: Slack) -> tuple[tuple[Step, ...], tuple[tupl
     """
     loops, warnings = _loops(way, slack)
     steps = [*loops, *_risers(way, slack), *_racking(way, slack), *_crossing_loops(way, slack)]
-    return tuple(sorted(steps, key=lambda step: (step.chain_mm, step.kind))), tuple(warnings)
+    # On somebody else's span nothing is stored: the cable there is not ours.
+    theirs = is_within(way, [step.chain_mm for step in steps], _EXISTING)
+    own = [step for step, is_theirs in zip(steps, theirs, strict=True) if not is_theirs]
+    warnings.extend(_left_out(way))
+    own.sort(key=lambda step: (step.chain_mm, step.kind, step.name, step.sheath_mm))
+    return tuple(own), tuple(warnings)
+
+
+def _left_out(way: Way) -> Iterator[tuple[str, str]]:
+    spots = [spot for spot in way.spots if spot.loop_m]
+    theirs = is_within(way, [spot.chain_mm for spot in spots], _EXISTING)
+    for spot, is_theirs in zip(spots, theirs, strict=True):
+        if is_theirs:
+            where = f'cable "{way.cable.name}", {spot.name}'
+            yield where, "stands on existing fibre: no loop is put there"
 
 
 def _loops(way: Way, slack: Slack) -> tuple[list[Step], list[tuple[str, str]]]:
-    wanted: dict[int, float] = defaultdict(float)
+    wanted: dict[int, float] = {}
     names: dict[int, str] = {}
     for spot in way.spots:
-        if spot.loop_m:
-            wanted[spot.chain_mm] = max(wanted[spot.chain_mm], spot.loop_m)
+        if spot.loop_m and spot.loop_m > wanted.get(spot.chain_mm, 0.0):
+            wanted[spot.chain_mm] = spot.loop_m
             names[spot.chain_mm] = spot.name
     declared = set(wanted)
     warnings: list[tuple[str, str]] = []
@@ -65,7 +80,7 @@ def _loops(way: Way, slack: Slack) -> tuple[list[Step], list[tuple[str, str]]]:
         fixed = {at for at in declared if stretch.start_mm <= at <= stretch.end_mm}
         chosen, longest_mm = _fewest(stretch, inside, fixed=fixed, every_mm=every_mm)
         for spot in chosen:
-            wanted[spot.chain_mm] = max(wanted[spot.chain_mm], size_m)
+            wanted[spot.chain_mm] = max(wanted.get(spot.chain_mm, 0.0), size_m)
             names[spot.chain_mm] = spot.name
         if longest_mm > every_mm:
             warnings.append((_where(way, stretch), _gap_text(stretch, longest_mm, every_mm)))
@@ -80,11 +95,14 @@ def _loops(way: Way, slack: Slack) -> tuple[list[Step], list[tuple[str, str]]]:
 def _loop_spots(spots: Sequence[Spot], stretch: Stretch) -> list[Spot]:
     """Return one spot for each chain value of the stretch where a loop may be added."""
     found: dict[int, Spot] = {}
+    said: set[int] = set()
     for spot in spots:
-        inside = stretch.start_mm <= spot.chain_mm <= stretch.end_mm
-        if inside and spot.loop_m is None and spot.kind != "assumed":
-            found.setdefault(spot.chain_mm, spot)
-    return [found[at] for at in sorted(found)]
+        if stretch.start_mm <= spot.chain_mm <= stretch.end_mm:
+            if spot.loop_m is not None:
+                said.add(spot.chain_mm)
+            elif spot.kind != "assumed":
+                found.setdefault(spot.chain_mm, spot)
+    return [found[at] for at in sorted(found) if at not in said]
 
 
 def _fewest(
@@ -95,7 +113,7 @@ def _fewest(
     longest_mm = 0
     bounds = sorted({stretch.start_mm, *fixed, stretch.end_mm})
     for begin, end in pairwise(bounds):
-        between = [spot for spot in spots if begin <= spot.chain_mm <= end]
+        between = [spot for spot in spots if begin < spot.chain_mm < end]
         added, gap_mm = _fewest_between(begin, end, between, every_mm=every_mm)
         chosen.extend(added)
         longest_mm = max(longest_mm, gap_mm)
@@ -118,17 +136,19 @@ def _fewest_between(
     best: list[tuple[int, int, int, int]] = [(0, 0, 0, 0)]
     came: list[int] = [-1]
     for j in range(1, len(at)):
-        options = []
+        found: tuple[tuple[int, int, int, int], int] | None = None
         for i in range(j - 1, -1, -1):
             gap = at[j] - at[i]
-            excess, count, squares, key = best[i]
             over = max(0, gap - every_mm)
-            options.append((excess + over, count + 1, squares + gap * gap, key + keys[j], i))
-            if over and options[0][0] <= over:
+            if found and over > found[0][0]:
                 break
-        *score, i = min(options)
-        best.append((score[0], score[1], score[2], score[3]))
-        came.append(i)
+            excess, count, squares, key = best[i]
+            score = (excess + over, count + 1, squares + gap * gap, key + keys[j])
+            if found is None or score < found[0]:
+                found = (score, i)
+        assert found is not None
+        best.append(found[0])
+        came.append(found[1])
     path = [len(at) - 1]
     while came[path[-1]] >= 0:
         path.append(came[path[-1]])
@@ -161,28 +181,26 @@ def _risers(way: Way, slack: Slack) -> Iterator[Step]:
 
 def _racking(way: Way, slack: Slack) -> Iterator[Step]:
     for spot in way.spots:
-        inner = 0 < spot.chain_mm < way.length_mm
-        if spot.kind == "maintenance_hole" and inner and not _is_existing(way, spot.chain_mm):
+        if spot.kind == "maintenance_hole" and 0 < spot.chain_mm < way.length_mm:
             yield from _step(spot.chain_mm, slack.racking_m, "racking", spot.name)
 
 
-def _is_existing(way: Way, chain_mm: int) -> bool:
-    return any(
-        s.placement == "existing" and s.start_mm < chain_mm < s.end_mm for s in way.stretches
-    )
-
-
 def _crossing_loops(way: Way, slack: Slack) -> Iterator[Step]:
-    """Yield a loop on each side of every bridge, and of every rail or water crossing off one."""
-    bridges = [s for s in way.stretches if s.placement == "bridge"]
-    for bridge in bridges:
-        for at in (bridge.start_mm, bridge.end_mm):
-            yield from _step(at, slack.crossing_loop_m, "loop", "bridge")
+    """
+    Yield a loop on each side of everything that takes one: a bridge, rail, water.
+
+    A bridge, or water that the cable lies in, is a stretch; a declared crossing that it meets is
+    the same crossing and counts once.
+    """
+    spans = [s for s in way.stretches if s.placement in _LOOP_STRETCHES]
+    for span in spans:
+        for at in (span.start_mm, span.end_mm):
+            yield from _step(at, slack.crossing_loop_m, "loop", span.placement)
     for crossing in way.crossings:
-        middle = (crossing.start_mm + crossing.end_mm) // 2
-        on_bridge = any(b.start_mm <= middle <= b.end_mm for b in bridges)
-        if crossing.crosses in _LOOP_CROSSES and not on_bridge and not _is_existing(way, middle):
-            for at in (crossing.start_mm, crossing.end_mm):
+        start, end = crossing.start_mm, crossing.end_mm
+        counted = any(s.start_mm <= end and start <= s.end_mm for s in spans)
+        if crossing.crosses in _LOOP_CROSSES and not counted:
+            for at in (start, end):
                 inside = min(max(at, 0), way.length_mm)
                 yield from _step(inside, slack.crossing_loop_m, "loop", crossing.name)
 

@@ -10,10 +10,12 @@ from itertools import pairwise
 import numpy as np
 
 from routeplan.cable.model import Cable, Millimetres
+from routeplan.geodesy import is_turned
 from routeplan.ground.legs import position_at
 from routeplan.ground.model import Leg, Stretch
 from routeplan.run.model import Floats, JointFitness, Place
 from routeplan.run.practice import Practice
+from routeplan.units import mm_from_m
 
 __all__ = ["ChainCrossing", "Spot", "Way", "cable_way", "existing_name", "leg_at", "positions_on"]
 
@@ -82,8 +84,6 @@ def cable_way(cable: Cable, legs: Sequence[tuple[Leg, bool]], *, practice: Pract
     for leg, forward in legs:
         placed.append((leg, forward, offset))
         offset += leg.length_mm
-    first = _end_of(placed[0], at_start=True)
-    last = _end_of(placed[-1], at_start=False)
     way = Way(
         cable=cable,
         legs=tuple(placed),
@@ -91,18 +91,19 @@ def cable_way(cable: Cable, legs: Sequence[tuple[Leg, bool]], *, practice: Pract
         crossings=tuple(sorted(_crossings(placed), key=lambda c: (c.start_mm, c.end_mm, c.name))),
         spots=tuple(spot for leg in placed for spot in _declared_spots(leg)),
         length_mm=offset,
-        is_turned=first > last,
+        is_turned=_is_turned(placed),
     )
-    way = replace(way, spots=tuple(_unfit_where_forbidden(way)))
     way = replace(way, spots=_merged(way.spots, _assumed_poles(way)))
-    spacing_mm = round(practice.joints.assumed_spacing_m * 1000)
+    way = replace(way, spots=tuple(_unfit_where_forbidden(way)))
+    spacing_mm = max(1, mm_from_m(practice.joints.assumed_spacing_m))
     return replace(way, spots=_merged(way.spots, _assumed_spots(way, spacing_mm)))
 
 
-def _end_of(placed: tuple[Leg, bool, int], *, at_start: bool) -> list[float]:
-    leg, forward, _ = placed
-    end: list[float] = leg.lonlat[0 if at_start == forward else -1].tolist()
-    return end
+def _is_turned(placed: Sequence[tuple[Leg, bool, int]]) -> bool:
+    leg, forward, _ = placed[0]
+    if len(placed) == 1:
+        return leg.is_turned == forward
+    return is_turned(np.concatenate([leg.lonlat[:: 1 if way else -1] for leg, way, _ in placed]))
 
 
 def _chain(placed: tuple[Leg, bool, int], ground_mm: int) -> int:
@@ -163,15 +164,39 @@ def _tie_key(lon: float, lat: float, name: str) -> int:
 
 def _unfit_where_forbidden(way: Way) -> Iterator[Spot]:
     """Yield the spots; none on a bridge, in water, on an existing span or a crossing is fit."""
-    for spot in way.spots:
-        banned = spot.fitness != "no" and _is_forbidden(way, spot.chain_mm, _NO_JOINT)
-        yield replace(spot, fitness="no") if banned else spot
+    forbidden = is_within(way, [spot.chain_mm for spot in way.spots], _NO_JOINT, crossings=True)
+    for spot, banned in zip(way.spots, forbidden, strict=True):
+        yield replace(spot, fitness="no") if banned and spot.fitness != "no" else spot
 
 
-def _is_forbidden(way: Way, chain_mm: int, placements: frozenset[str]) -> bool:
-    return any(
-        s.start_mm < chain_mm < s.end_mm and s.placement in placements for s in way.stretches
-    ) or any(c.start_mm <= chain_mm <= c.end_mm for c in way.crossings)
+def is_within(
+    way: Way, chain_mm: Sequence[int], placements: frozenset[str], *, crossings: bool = False
+) -> list[bool]:
+    """
+    Tell which chain values lie in stretches of some placements: in them, not on their bounds.
+
+    Parameters
+    ----------
+    way
+        The cable's way.
+    chain_mm
+        Chain values, shape (n,). [mm]
+    placements
+        The placements. A bound between two stretches of them counts as within.
+    crossings
+        Whether being on a crossing, its edges included, counts as well.
+    """
+    at = np.asarray(chain_mm, dtype=np.int64)
+    within = np.zeros(len(at), dtype=bool)
+    outside = np.zeros(len(at), dtype=bool)
+    for stretch in way.stretches:
+        touches = (stretch.start_mm <= at) & (at <= stretch.end_mm)
+        (within if stretch.placement in placements else outside)[touches] = True
+    within &= ~outside
+    for crossing in way.crossings if crossings else ():
+        within |= (crossing.start_mm <= at) & (at <= crossing.end_mm)
+    flags: list[bool] = within.tolist()
+    return flags
 
 
 def _merged(spots: Sequence[Spot], more: Sequence[Spot]) -> tuple[Spot, ...]:
@@ -196,10 +221,11 @@ def _assumed_poles(way: Way) -> list[Spot]:
 
 
 def _vertices_mm(way: Way) -> Millimetres:
-    chains = [
-        offset + (leg.ground_mm if forward else leg.length_mm - leg.ground_mm)
-        for leg, forward, offset in way.legs
-    ]
+    """Return the chain values of all vertices that somebody drew."""
+    chains = []
+    for leg, forward, offset in way.legs:
+        own = leg.ground_mm if leg.is_drawn is None else leg.ground_mm[leg.is_drawn]
+        chains.append(offset + (own if forward else leg.length_mm - own))
     return np.concatenate(chains)
 
 
@@ -210,7 +236,8 @@ def _assumed_spots(way: Way, spacing_mm: int) -> list[Spot]:
     for begin, end in pairwise(fit):
         parts = -(-(end - begin) // spacing_mm)
         chains.extend(_shared_out(begin, end, parts, is_turned=way.is_turned))
-    allowed = [at for at in chains if not _is_forbidden(way, at, _NO_ASSUMED)]
+    banned = is_within(way, chains, _NO_ASSUMED, crossings=True)
+    allowed = [at for at, is_banned in zip(chains, banned, strict=True) if not is_banned]
     aerial = [s for s in way.stretches if s.placement == "aerial"]
     on_poles = [at for at in allowed if any(s.start_mm <= at <= s.end_mm for s in aerial)]
     return [
