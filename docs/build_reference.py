@@ -128,7 +128,7 @@ removed: their names and SHA-256 sums stand in `sheets.sha256`. If a file in the
 them, or was changed since, nothing is written and the file is named. Sheets are made in a folder
 beside DIR first and moved in when all are done, `plan.json` last.
 
-`new` writes `run.toml` beside the geometry, or the file of `--out`, and never over one that is there.
+`new` writes `run.toml` beside the geometry, or the file of `--out`, never over one that is there.
 """
 
 _SHEETS_HEAD = """\
