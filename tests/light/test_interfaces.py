@@ -19,7 +19,7 @@ from routeplan.light.interfaces import (
 )
 from routeplan.run.practice import Interface
 from routeplan.tables import load_rows
-from tests.light.small_paths import optic
+from tests.light.small_paths import optic, published
 
 ROWS: tuple[Optic, ...] = load_rows("interfaces", Optic)
 ETHERNET = [row for row in ROWS if row.family == "Ethernet"]
@@ -156,3 +156,16 @@ def test_names_are_unique_and_hold_the_pair() -> None:
     assert len(set(names)) == len(names)
     assert "1000BASE-BX10" in names
     assert "10GBASE-ER" in names
+
+
+@pytest.mark.parametrize("row", published("sdh_attenuation.csv"), ids=lambda r: r["code"])
+def test_attenuation_range_of_synchronous_interfaces(row: dict[str, str]) -> None:
+    """Most = launch - sensitivity - penalty; least = launch - overload; both as published."""
+    found = find_interface(row["code"], {}).at_from
+    assert found.tx_max_dbm is not None
+    assert found.rx_overload_dbm is not None
+    assert found.available_db == pytest.approx(float(row["most_db"]), abs=1e-9)
+    assert found.tx_max_dbm - found.rx_overload_dbm == pytest.approx(float(row["least_db"]))
+    assert found.channel_loss_min_db == float(row["least_db"])
+    limit = row["dispersion_ps_per_nm"]
+    assert found.dispersion_max_ps_per_nm == (float(limit) if limit else None)
