@@ -6,6 +6,8 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+import numpy as np
+
 from routeplan.errors import GeometryError, Problem
 from routeplan.run.attributes import area_from, line_from, place_from
 from routeplan.run.datum import placed_shapes
@@ -13,14 +15,20 @@ from routeplan.run.geometry_checks import check_together
 from routeplan.run.geometry_gdal import layers_from_gdal
 from routeplan.run.geometry_geojson import layers_from_geojson
 from routeplan.run.geometry_gpx import layers_from_gpx
-from routeplan.run.model import Area, Line, Place
+from routeplan.run.model import Area, Floats, Line, Place
 from routeplan.run.shapes import Layer
 from routeplan.run.trouble import Trouble
 
 if TYPE_CHECKING:
     from pyproj import CRS
 
-__all__ = ["VECTOR_SUFFIXES", "Geometry", "file_bytes", "geometry_from_files"]
+__all__ = [
+    "VECTOR_SUFFIXES",
+    "Geometry",
+    "background_from_files",
+    "file_bytes",
+    "geometry_from_files",
+]
 
 VECTOR_SUFFIXES = (".geojson", ".json", ".gpx", ".kml", ".kmz", ".gpkg", ".shp", ".shz", ".zip")
 """Suffixes by which a vector file is found beside a run file that names none."""
@@ -71,6 +79,45 @@ def geometry_from_files(
         )
         trouble.add(GeometryError, problem)
     return geometry
+
+
+def background_from_files(
+    names: tuple[str, ...],
+    folder: Path,
+    *,
+    run_crs: CRS | None,
+    geometry: Geometry,
+    trouble: Trouble,
+) -> tuple[Floats, ...]:
+    """
+    Read the lines and outlines that a map is drawn on; their bytes are noted in `geometry`.
+
+    Parameters
+    ----------
+    names
+        File names as the run file has them.
+    folder
+        What relative names are relative to.
+    run_crs
+        The run file's `crs`, for files that do not say.
+    geometry
+        Where the bytes read are noted.
+    trouble
+        Where problems are noted.
+
+    Returns
+    -------
+    lonlat
+        WGS 84 polylines, each of shape (n, 2). [deg]
+    """
+    return tuple(
+        ring
+        for name in names
+        for layer in _layers(name, folder, geometry, trouble)
+        for placed in placed_shapes(layer, run_crs=run_crs, trouble=trouble)
+        for ring in np.split(placed.lonlat, placed.shape.ring_starts[1:])
+        if len(ring) > 1
+    )
 
 
 def file_bytes(path: Path, *, file: str, trouble: Trouble) -> bytes | None:

@@ -155,7 +155,8 @@ class Run:
 
     `given` holds the dotted keys the user set (`slack.entry_m`); every other value of `practice`
     and `cable` is a default and is listed as an assumption. `digest` is the SHA-256 of all input
-    bytes. `warnings` are (where, message) pairs from reading.
+    bytes. `background` holds polylines that the map is drawn on and nothing else looks at.
+    `warnings` are (where, message) pairs from reading.
     """
 
     title: str
@@ -173,4 +174,5 @@ class Run:
     practice: Practice
     given: frozenset[str]
     digest: str
+    background: tuple[Floats, ...] = ()
     warnings: tuple[tuple[str, str], ...] = ()

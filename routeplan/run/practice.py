@@ -53,7 +53,7 @@ Decibels: TypeAlias = Annotated[float, Field(ge=0, le=100)]
 PowerDbm: TypeAlias = Annotated[float, Field(ge=-100, le=50)]
 Count: TypeAlias = Annotated[int, Field(ge=0, le=1000)]
 WavelengthNm: TypeAlias = Annotated[float, Field(ge=1260, le=1625)]
-Name: TypeAlias = Annotated[str, Field(min_length=1, max_length=200)]
+Name: TypeAlias = Annotated[str, Field(min_length=1, max_length=500)]
 MetresByPlacement: TypeAlias = Mapping[OwnPlacement, PositiveMetres]
 
 
@@ -288,6 +288,10 @@ class RunHead(_Model):
     )
     crs: Name | None = Field(
         default=None, description="CRS of files that do not say, and the grid to report in."
+    )
+    background: Annotated[tuple[Annotated[str, Field(min_length=1)], ...], Strict(False)] = Field(
+        default=(),
+        description="Vector files of streets or a coast, drawn thin on the map and nothing else.",
     )
     placement: AnyPlacement = Field(description="Placement of lines that do not say.")
     units: Literal["metric", "us"] = Field(

@@ -3,12 +3,19 @@
 from __future__ import annotations
 
 import hashlib
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 from routeplan.errors import CrsError, Problem, RunFileError
 from routeplan.run.crs import crs_or_none, unusable
-from routeplan.run.geometry import VECTOR_SUFFIXES, Geometry, file_bytes, geometry_from_files
+from routeplan.run.geometry import (
+    VECTOR_SUFFIXES,
+    Geometry,
+    background_from_files,
+    file_bytes,
+    geometry_from_files,
+)
 from routeplan.run.model import Run
 from routeplan.run.runfile import Declared, declared_from_text
 from routeplan.run.trouble import Trouble, listed, shown
@@ -68,7 +75,16 @@ def _read(path: Path, trouble: Trouble) -> Run | None:
         trouble=trouble,
     )
     geometry.contents.insert(0, content)
-    return None if trouble.problems else _run(declared, geometry, names, trouble)
+    background = background_from_files(
+        head.background if head else (),
+        path.parent,
+        run_crs=run_crs,
+        geometry=geometry,
+        trouble=trouble,
+    )
+    if trouble.problems:
+        return None
+    return replace(_run(declared, geometry, names, trouble), background=background)
 
 
 def _refuse(trouble: Trouble, where: str, what: str, *, value: str = "", remedy: str = "") -> None:

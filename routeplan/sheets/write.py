@@ -7,6 +7,8 @@ from collections.abc import Callable, Mapping
 from functools import partial
 from pathlib import Path
 
+import numpy as np
+
 from routeplan.planning import Plan
 from routeplan.sheets.columns import Json
 from routeplan.sheets.csv_text import csv_text
@@ -68,7 +70,7 @@ def make_sheets(planned: Plan, *, on_sheet: Callable[[str], None] | None = None)
     document = plan_document(planned)
     makers: dict[str, Callable[[], str]] = {
         **{entry.csv: partial(csv_text, document, entry) for entry in csv_tables()},
-        "map.html": partial(map_html, document),
+        "map.html": partial(map_html, document | {"background": _background(planned)}),
         "report.html": partial(report_html, document),
         "plan.json": partial(json_text, document),
     }
@@ -78,6 +80,11 @@ def make_sheets(planned: Plan, *, on_sheet: Callable[[str], None] | None = None)
         if on_sheet:
             on_sheet(name)
     return sheets
+
+
+def _background(planned: Plan) -> list[Json]:
+    """Return the polylines under the map, to the decimetre."""
+    return [np.round(line, 6).tolist() for line in planned.run.background]
 
 
 def json_text(document: Mapping[str, Json]) -> str:
