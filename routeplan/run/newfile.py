@@ -18,6 +18,7 @@ __all__ = ["new_run_text"]
 _SHOWN_NAMES = 30
 _EXAMPLES = {  # keys without a default, as they would be written
     "crs": '"EPSG:27700"',
+    "background": "[]",
     "cable.measured": "[ { wavelength_nm = 1310, attenuation_db_per_km = 0.33 } ]",
     "joints.max_count": "40",
     "joints.max_section_m": "{ duct = 6000 }",
