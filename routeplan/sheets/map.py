@@ -7,6 +7,7 @@ import re
 from collections.abc import Mapping
 from functools import cache
 from hashlib import sha256
+from importlib.metadata import distribution
 from importlib.resources import files
 from typing import TYPE_CHECKING
 
@@ -200,7 +201,14 @@ def _asset(name: str) -> str:
 def _leaflet_js() -> str:
     folder = files("js_lib_leaflet") / "static" / "js_lib_leaflet"
     text = (folder / "leaflet.js").read_text("utf-8")
-    return re.sub(r"//# sourceMappingURL=\S*\s*$", "", text)
+    return f"/*\n{_leaflet_licence()}\n*/\n" + re.sub(r"//# sourceMappingURL=\S*\s*$", "", text)
+
+
+def _leaflet_licence() -> str:
+    """Return Leaflet's licence, which asks to go with every copy of it."""
+    package = distribution("django-js-lib-leaflet")
+    found = package.read_text("LICENSE") or package.read_text("licenses/LICENSE") or ""
+    return found.strip().replace("*/", "")
 
 
 @cache

@@ -232,8 +232,29 @@ def test_a_phone_shows_everything_without_sideways_scrolling(open_html: Any, doc
 def test_us_units_show_feet_beside_metres(open_html: Any, document: Row) -> None:
     """Every reading has its feet in brackets."""
     document["units"] = "us"
-    readings = _hover(open_html(map_html(document)).page, 9_137.0)
+    page = open_html(map_html(document)).page
+    readings = _hover(page, 9_137.0)
     assert all("ft)" in readings[name] for name in ("ground", "sheath", "glass", "height"))
+
+
+@pytest.mark.parametrize(("units", "width"), [("metric", 1280), ("us", 1280), ("us", 390)])
+def test_readings_never_move_the_map(open_html: Any, document: Row, units: str, width: int) -> None:
+    """Whatever is read, the map keeps its size: it must not slip away under the pointer."""
+    document["units"] = units
+    page = open_html(map_html(document), width=width, height=844).page
+    size = page.locator(".folium-map").bounding_box()
+    loop = next(row for row in document["stations"] if row["kind"] == "loop")
+    for ground_m in (0.0, loop["ground_m"], 9_137.0, 20_000.0):
+        page.evaluate("(ground) => runSheet.show({ leg: 0, ground })", ground_m * 1000)
+        assert page.locator(".folium-map").bounding_box() == size
+
+
+def test_the_drawing_stays_sharp_after_a_jump(open_html: Any, document: Row) -> None:
+    """The canvas lies on whole pixels whatever the view was set to."""
+    page = open_html(map_html(document)).page
+    page.evaluate(LOOK_AT, 3_210_000)
+    moved = page.evaluate("document.getElementById('run-canvas').style.transform")
+    assert re.fullmatch(r"translate3d\(-?\d+px, -?\d+px, 0px\)", moved)
 
 
 def test_a_run_over_the_antimeridian_is_drawn_in_one_piece(open_html: Any, document: Row) -> None:

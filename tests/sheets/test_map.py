@@ -187,6 +187,13 @@ def test_invented_prices_are_marked_beside_the_cost(document: Row) -> None:
     assert "with invented prices" not in map_html(document)
 
 
+def test_the_licence_goes_with_the_library(document: Row) -> None:
+    """Leaflet's terms ask that its copyright and conditions go with every copy."""
+    html = map_html(document)
+    assert "Redistribution and use in source and binary forms" in html
+    assert "Volodymyr Agafonkin" in html or "Vladimir Agafonkin" in html
+
+
 def test_an_empty_document_still_gives_a_page() -> None:
     """Whatever is missing is left out, not an error."""
     assert "<h1>Run</h1>" in map_html({})

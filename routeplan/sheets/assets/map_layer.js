@@ -24,6 +24,11 @@ const RunLayer = L.Renderer.extend({
 
   _updatePaths() {},
 
+  // Drawn anew at whole pixels; the usual way leaves the canvas between two pixels, and blurred.
+  _reset() {
+    this._update();
+  },
+
   _update() {
     if (this._map._animatingZoom && this._bounds) return;
     L.Renderer.prototype._update.call(this);

@@ -11,7 +11,7 @@ function grouped(value, digits) {
 function metresText(mm, units) {
   if (mm === null) return "\u2013";
   const text = `${grouped(mm / 1000, 1)}\u00a0m`;
-  return units === "us" ? `${text} (${grouped((mm / 1000) * FEET_PER_M, 0)}\u00a0ft)` : text;
+  return units === "us" ? `${text}\n(${grouped((mm / 1000) * FEET_PER_M, 0)}\u00a0ft)` : text;
 }
 
 function rangeText(pair, units) {
