@@ -122,7 +122,7 @@ function otherRows(layer) {
   const rows = [element("hr")];
   if (run.areas.length) rows.push(legendRow(layer, "areas", area, "areas", run.areas.length));
   if (run.background.length) {
-    rows.push(legendRow(layer, "background", line("#b8b2a2"), "streets", ""));
+    rows.push(legendRow(layer, "background", line("#b8b2a2"), "background", ""));
   }
   const names = (ctx) => { ctx.font = `600 12px ${FONT}`; ctx.fillText("Ab", 12, 15); };
   const switches = [
