@@ -8,11 +8,13 @@ from dataclasses import asdict
 from difflib import get_close_matches
 
 from routeplan.errors import InputError, Problem
+from routeplan.run.trouble import shown
 from routeplan.tables import load_meta, raw_rows, table_names
 
 __all__ = ["published_json", "published_text"]
 
 _WIDE = 28  # a cell wider than this goes on lines of its own
+_PAGE = 140  # a table wider than this is shown row by row
 
 
 def published_json(name: str | None) -> dict[str, object]:
@@ -69,7 +71,7 @@ def _refuse_unknown(name: str) -> None:
         Problem(
             where="tables",
             what="there is no table of that name",
-            value=repr(name),
+            value=shown(name),
             remedy=hint + f"There are {', '.join(table_names())}",
         )
     )
@@ -87,13 +89,31 @@ def _row_lines(rows: tuple[Mapping[str, object], ...]) -> Iterator[str]:
     } | {"source", "confidence"}
     keys = [key for key in dict.fromkeys(k for row in cells for k in row) if key not in long]
     widths = {key: max([len(key), *(len(row.get(key, "")) for row in cells)]) for key in keys}
+    if sum(widths.values()) + 2 * len(widths) > _PAGE:
+        yield from _row_blocks(cells, long)
+        return
     yield "  ".join(f"{key:{widths[key]}}" for key in keys).rstrip()
     for row in cells:
         yield "  ".join(f"{row.get(key, ''):{widths[key]}}" for key in keys).rstrip()
-        for key in (k for k in row if k in long):
-            yield from textwrap.wrap(
-                f"{key}: {row[key]}", width=96, initial_indent="    ", subsequent_indent="      "
-            )
+        yield from _long_lines(row, long)
+
+
+def _row_blocks(cells: list[dict[str, str]], long: set[str]) -> Iterator[str]:
+    """Yield each row as a block: what it is called, its short values, its long ones."""
+    for row in cells:
+        first, *rest = (key for key in row if key not in long)
+        yield row[first]
+        yield from _indented("; ".join(f"{key} {row[key]}" for key in rest))
+        yield from _long_lines(row, long)
+
+
+def _long_lines(row: Mapping[str, str], long: set[str]) -> Iterator[str]:
+    for key in (key for key in row if key in long):
+        yield from _indented(f"{key}: {row[key]}")
+
+
+def _indented(text: str) -> list[str]:
+    return textwrap.wrap(text, width=96, initial_indent="    ", subsequent_indent="      ")
 
 
 def _shown(value: object) -> str:

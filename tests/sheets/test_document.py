@@ -18,8 +18,8 @@ Row = dict[str, Any]
 
 # What plan.json promises to hold at least, key by key.
 PROMISED = {
-    "": "schema title purpose totals nodes legs cables stations sections reels layout joints splices "
-    "circuits checks assumptions warnings",
+    "": "schema title purpose totals nodes legs cables stations sections reels layout joints "
+    "splices circuits checks assumptions warnings",
     "totals": "ground_m sheath_m glass_m ordered_m stock_m reel_count section_count joint_count "
     "closure_count splice_count pigtail_splice_count cost",
     "nodes": "name role lon lat",
@@ -135,7 +135,7 @@ def test_reels_hold_their_sections(many_documents: list[Row]) -> None:
 
 
 def test_layout_proves_its_cost(many_documents: list[Row]) -> None:
-    """The bound never exceeds the cost and equals it where that is optimal; one fewer is one fewer."""
+    """The bound never exceeds the cost and equals the optimum; one fewer is one fewer."""
     for document in many_documents:
         layout = document["layout"]
         assert cents(layout["lower_bound"]) <= cents(layout["cost"])

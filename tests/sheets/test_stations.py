@@ -110,7 +110,7 @@ def test_assumed_places_show_only_where_used(tmp_path: Any) -> None:
 
 
 def test_existing_fibre_has_no_section(tmp_path: Any) -> None:
-    """Along somebody's fibre no section is named, its metres count as glass, and joints bound it."""
+    """Along somebody's fibre no section is named, and its metres count as glass only."""
     features = [
         line([equator(0), equator(1000)], placement="duct", leg="Leg"),
         line(
