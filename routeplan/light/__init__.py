@@ -1,5 +1,5 @@
 """
-Whether it works: attenuation, dispersion, delay, interfaces and the budget of a circuit.
+Whether it works: attenuation, dispersion, reflections, delay, interfaces and budgets.
 
 What the pipeline needs, in order of use:
 
@@ -12,12 +12,18 @@ What the pipeline needs, in order of use:
     interfaces.channels(pair or None, wavelengths_nm) -> tuple[Channel(direction, wavelength_nm,
         optic)]                                                         what is to be computed
     budget.circuit_budget(path, wavelength_nm, practice=run.practice.loss, optic=channel.optic,
-        measured={cable id: make.measured}) -> Budget                   path of that direction
+        measured={section or cable id: make.measured}) -> Budget        path of that direction
     budget.circuit_verdict(budgets) -> "fits" | "fails" | "unknown"
+    circuits.circuit_budgets(paths, pair, wavelengths_nm, practice=...)  all of them at once
+    circuits.closing_interfaces(paths, practice=...)                    for interface = "any"
+    changes.Circuit(...), mending_changes, stretch_limit_m, deciding_line
 
 Set `cable` on a path's `Glass` steps (any id) where that cable has measured points. One fibre
 working both ways ("1000BASE-BX10") is two interfaces that belong together: list both wavelengths,
-and each direction has the one its end sends.
+and each direction has the one its end sends. Splices and matings may carry their own `loss`;
+`Part` and `Bend` are steps of a path like any other.
 
-Formulas, on floats or arrays: `attenuation`, `dispersion`, `delay`, `pmd`, `power`.
+Formulas, on floats and, where they are arithmetic, on arrays: `spectrum`, `attenuation`,
+`dispersion`, `delay`, `pmd`, `power`, `splices`, `connectors`, `bends`, `penalties`,
+`reflections`, `hazard`, `timing`, `life`, `grid`, `polarity`, `rf`.
 """

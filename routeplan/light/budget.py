@@ -66,6 +66,7 @@ def circuit_budget(
     optic: Optic | None = None,
     measured: Measured | None = None,
     connector_return_loss_db: float | None = None,
+    allowances: Sequence[BudgetLine] = (),
 ) -> Budget:
     """
     Return the budget of one circuit, in one direction at one wavelength.
@@ -90,6 +91,9 @@ def circuit_budget(
         of each glass step.
     connector_return_loss_db
         Of mated pairs that do not say their own; without it the return loss is not known. [dB]
+    allowances
+        Lines for the years to come, as `life` gives them. They count as losses but do not protect
+        the receiver, which has to stand the light of the first day.
 
     Returns
     -------
@@ -107,7 +111,14 @@ def circuit_budget(
     .. [2] ITU-T G.957: least attenuation and overload.
     """
     measured = measured or {}
-    judged = _judge(path, wavelength_nm, practice=practice, optic=optic, measured=measured)
+    judged = _judge(
+        path,
+        wavelength_nm,
+        practice=practice,
+        optic=optic,
+        measured=measured,
+        allowances=allowances,
+    )
     returned = reflections(
         path,
         wavelength_nm,
@@ -120,7 +131,12 @@ def circuit_budget(
     findings = [*judged.findings, *return_loss_findings(returned_db, optic)]
     if optic and verdict_of(finding.verdict for finding in findings) != "fails":
         findings += _lane_findings(
-            path, wavelength_nm, practice=practice, optic=optic, measured=measured
+            path,
+            wavelength_nm,
+            practice=practice,
+            optic=optic,
+            measured=measured,
+            allowances=allowances,
         )
     findings += hazard_findings(optic)
     spans = glass_spans(path)
@@ -181,12 +197,13 @@ def _judge(
     practice: LossPractice,
     optic: Optic | None,
     measured: Measured,
+    allowances: Sequence[BudgetLine],
 ) -> _Judged:
     """Return loss, power and dispersion at one wavelength, and what is to be said of them."""
     spans = glass_spans(path)
     dispersion = dispersion_range_ps_per_nm(wavelength_nm, spans)
     lines = loss_lines(path, wavelength_nm, practice=practice, measured=measured)
-    penalties = penalty_lines(dispersion, optic)
+    penalties = (*penalty_lines(dispersion, optic), *allowances)
     loss = total_loss([*lines, *penalties], sigma_count=practice.sigma_count)
     power = _power(lines, loss, optic, practice=practice)
     findings = power_findings(power, loss, optic, practice=practice)
@@ -209,13 +226,19 @@ def _lane_findings(
     practice: LossPractice,
     optic: Optic,
     measured: Measured,
+    allowances: Sequence[BudgetLine],
 ) -> list[Finding]:
     """Return what keeps the interface's other lanes from working, or nothing."""
     return [
         Finding(verdict="fails", text=f"Lane at {lane_nm:g} nm: {finding.text}")
         for lane_nm in optic.other_lanes_nm(wavelength_nm)
         for finding in _judge(
-            path, lane_nm, practice=practice, optic=optic, measured=measured
+            path,
+            lane_nm,
+            practice=practice,
+            optic=optic,
+            measured=measured,
+            allowances=allowances,
         ).findings
         if finding.verdict == "fails"
     ]

@@ -14,12 +14,14 @@ from routeplan.light.fibres import DispersionBound, Fibre
 __all__ = [
     "dispersion_range_ps_per_nm",
     "dispersion_range_ps_per_nm_km",
+    "linear_range_ps_per_nm_km",
     "pulse_spread_ps",
     "sellmeier_ps_per_nm_km",
 ]
 
 Quantity = TypeVar("Quantity", float, NDArray[np.float64])
 _M_PER_KM = 1000.0
+_LINEAR_NM = 1550.0  # what the linear limits are named for
 
 
 def sellmeier_ps_per_nm_km(
@@ -137,6 +139,44 @@ def dispersion_range_ps_per_nm(
         least += low * glass_m / _M_PER_KM
         greatest += high * glass_m / _M_PER_KM
     return least, greatest
+
+
+def linear_range_ps_per_nm_km(wavelength_nm: float, fibre: Fibre) -> tuple[float, float] | None:
+    """
+    Return the bounds that a recommendation sets as straight lines through 1550 nm.
+
+    They are another thing than the four corners of the Sellmeier form, and budgets do not use
+    them; delivered fibre is held against them.
+
+    Parameters
+    ----------
+    wavelength_nm
+        Vacuum wavelength, 1460 to 1625. [nm]
+    fibre
+        Fibre type.
+
+    Returns
+    -------
+    linear_range_ps_per_nm_km
+        Least and greatest, or None where the type has no such limits. [ps/(nm km)]
+
+    References
+    ----------
+    .. [1] ITU-T G.652 (11/2016), table 2, from memory.
+
+    Examples
+    --------
+    >>> from routeplan.light.fibres import find_fibre
+    >>> [round(bound, 3) for bound in linear_range_ps_per_nm_km(1625.0, find_fibre("G.652.D"))]
+    [17.05, 23.625]
+    """
+    least, greatest = fibre.linear_1550_min_ps_per_nm_km, fibre.linear_1550_max_ps_per_nm_km
+    flat, steep = fibre.linear_slope_min_ps_per_nm2_km, fibre.linear_slope_max_ps_per_nm2_km
+    if least is None or greatest is None or flat is None or steep is None:
+        return None
+    offset_nm = wavelength_nm - _LINEAR_NM
+    rises = (flat * offset_nm, steep * offset_nm)
+    return least + min(rises), greatest + max(rises)
 
 
 def pulse_spread_ps(dispersion_ps_per_nm: Quantity, line_width_nm: float) -> Quantity:

@@ -104,6 +104,10 @@ class Fibre:
     zero_dispersion_max_nm: float | None = None
     slope_min_ps_per_nm2_km: float | None = None
     slope_max_ps_per_nm2_km: float | None = None
+    linear_1550_min_ps_per_nm_km: float | None = None
+    linear_1550_max_ps_per_nm_km: float | None = None
+    linear_slope_min_ps_per_nm2_km: float | None = None
+    linear_slope_max_ps_per_nm2_km: float | None = None
     attenuation: tuple[AttenuationRow, ...]
     ceilings: tuple[AttenuationCeiling, ...]
     dispersion_bounds: tuple[DispersionBound, ...]

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from dataclasses import dataclass
-from math import sqrt
+from math import log10, sqrt
 from typing import TypeVar
 
 import numpy as np
@@ -17,6 +17,7 @@ __all__ = [
     "AttenuatorRow",
     "Loss",
     "attenuator_db",
+    "average_dbm",
     "least_loss_db",
     "longest_glass_km",
     "overload_db",
@@ -115,6 +116,37 @@ def total_loss(lines: Iterable[BudgetLine], *, sigma_count: float) -> Loss:
         worst_db=printed_db(worst_db),
         is_capped=printed_db(statistical_db) > printed_db(worst_db),
     )
+
+
+def average_dbm(modulation_dbm: float, extinction_db: float) -> float:
+    r"""
+    Return the average power of light whose modulation amplitude is given.
+
+    .. math:: P = OMA \, \frac{r + 1}{2 (r - 1)}
+
+    Parameters
+    ----------
+    modulation_dbm
+        Optical modulation amplitude: the one level less the zero level. [dBm]
+    extinction_db
+        Extinction ratio, above 0. [dB]
+
+    Returns
+    -------
+    average_dbm
+        3 dB under the amplitude for full extinction, more for less. [dBm]
+
+    References
+    ----------
+    .. [1] IEEE 802.3, clause 52: sensitivities are stated both ways.
+
+    Examples
+    --------
+    >>> round(average_dbm(-15.09, 9.0), 1)
+    -17.0
+    """
+    ratio = 10.0 ** (extinction_db / 10.0)
+    return modulation_dbm + 10.0 * log10((ratio + 1.0) / (2.0 * (ratio - 1.0)))
 
 
 def least_loss_db(lines: Iterable[BudgetLine], *, sigma_count: float) -> float:

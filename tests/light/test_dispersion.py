@@ -8,6 +8,7 @@ import pytest
 from routeplan.light.dispersion import (
     dispersion_range_ps_per_nm,
     dispersion_range_ps_per_nm_km,
+    linear_range_ps_per_nm_km,
     pulse_spread_ps,
     sellmeier_ps_per_nm_km,
 )
@@ -97,5 +98,8 @@ def test_spans_of_unlike_fibre_add_up() -> None:
 
 def test_linear_limits_of_the_2016_edition_are_not_the_envelope() -> None:
     """13.3 and 18.6 at 1550 nm bound a straight line, not the Sellmeier form: 13.23 and 18.01."""
-    found = dispersion_range_ps_per_nm_km(1550.0, find_fibre("G.652.D"))
-    assert found != pytest.approx((13.3, 18.6), abs=0.05)
+    fibre = find_fibre("G.652.D")
+    assert linear_range_ps_per_nm_km(1550.0, fibre) == (13.3, 18.6)
+    assert linear_range_ps_per_nm_km(1625.0, fibre) == pytest.approx((17.05, 23.625))
+    assert dispersion_range_ps_per_nm_km(1550.0, fibre) != pytest.approx((13.3, 18.6), abs=0.05)
+    assert linear_range_ps_per_nm_km(1550.0, find_fibre("G.656")) is None

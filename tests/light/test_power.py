@@ -10,6 +10,7 @@ from hypothesis import strategies as st
 from routeplan.light.model import BudgetLine
 from routeplan.light.power import (
     attenuator_db,
+    average_dbm,
     least_loss_db,
     longest_glass_km,
     overload_db,
@@ -107,6 +108,16 @@ def test_overload_is_with_the_least_loss() -> None:
     """4 dBm through 5 dB just meets a receiver that stands -1 dBm; arrays work the same."""
     assert overload_db(4.0, 5.0, -1.0) == 0.0
     assert overload_db(np.array([4.0, 6.0]), np.array([5.0, 5.0]), -1.0).tolist() == [0.0, 2.0]
+
+
+def test_average_power_is_not_modulation_amplitude() -> None:
+    """0.031 mW of amplitude at an extinction of 9 dB is 0.0200 mW on average, -17.0 dBm."""
+    found_dbm = average_dbm(10.0 * np.log10(0.031), 9.0)
+    assert found_dbm == pytest.approx(-17.0, abs=0.005)
+    # The source takes the ratio as 7.94 and prints 0.01997.
+    assert 10.0 ** (found_dbm / 10.0) == pytest.approx(0.01997, abs=1e-5)
+    # 10GBASE-ER: -14.1 dBm of amplitude is no average; at 3 dB of extinction it is -12.3 dBm.
+    assert average_dbm(-14.1, 3.0) == pytest.approx(-12.3, abs=0.05)
 
 
 def test_printed_figures_have_no_minus_zero() -> None:
