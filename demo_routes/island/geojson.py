@@ -40,8 +40,10 @@ def link_text() -> str:
         properties = {"name": stretch.name, "placement": stretch.placement}
         line = _with_heights(stretch.line, deck=stretch.placement == "bridge")
         features.append(_feature("LineString", line, properties))
-    for point in link_points():
-        features.append(_feature("Point", _with_heights(point.xy[None])[0], point.properties))
+    features.extend(
+        _feature("Point", _with_heights(point.xy[None])[0], point.properties)
+        for point in link_points()
+    )
     for ring, named in link_areas():
         features.append(_feature("Polygon", [_flat(ring)], named))
     return _text(features)

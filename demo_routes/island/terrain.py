@@ -71,7 +71,7 @@ def _shore_ratio(angle: Floats) -> Floats:
 
 
 def inland_ratio(xy: Floats) -> Floats:
-    """Return how far inside the coast a place lies: 0 on it, negative at sea, about 1 at the middle."""
+    """Return how far inside the coast a place lies: 0 on it, negative at sea, 1 in the middle."""
     east, north = xy[..., 0] / _HALF_EAST_M, xy[..., 1] / _HALF_NORTH_M
     return _shore_ratio(np.arctan2(north, east)) - np.hypot(east, north)
 

@@ -100,7 +100,7 @@ def test_every_circuit_arrives(
     try:
         uses = assign(plant, circuits)
     except InputError as error:
-        assert "has too few fibres" in str(error)
+        assert "has too few fibres" in str(error)  # noqa: PT017  refusing is as good an answer
         return
     assert len({(use.cable, use.fibre) for use in uses}) == len(uses)
     rows = schedule(plant, uses, fibres_per_tray=fibres_per_tray)

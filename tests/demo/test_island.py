@@ -301,7 +301,7 @@ def test_areas_are_met_and_avoided() -> None:
 
 
 def test_run_file_names_what_the_route_holds() -> None:
-    """The circuits of the run file run between the sites of the route, on interfaces it can know."""
+    """The circuits of the run file join sites of the route, on interfaces it can know."""
     run = tomllib.loads((DEMO / "quenmoor_link/run.toml").read_text(encoding="utf-8"))
     sites = {f["properties"]["name"] for f in link("Point") if "role" in f["properties"]}
     assert run["geometry"] == ["route.geojson"]
