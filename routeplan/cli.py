@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import contextlib
 import os
 import sys
 from collections.abc import Callable, Sequence
@@ -100,7 +101,8 @@ def _complain(error: RouteplanError, *, as_json: bool) -> int:
     for problem in error.problems:
         say(visible(str(problem)), stream=sys.stderr)
     if as_json:
-        say_json({"problems": [problem.as_dict() for problem in error.problems]})
+        with contextlib.suppress(InputError):  # nobody can be told where stdout is gone
+            say_json({"problems": [problem.as_dict() for problem in error.problems]})
     return 2
 
 

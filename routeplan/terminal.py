@@ -10,6 +10,8 @@ import sys
 from collections.abc import Callable, Iterator
 from typing import TextIO
 
+from routeplan.errors import InputError, Problem
+
 __all__ = ["progress", "say", "say_json", "say_json_text", "visible"]
 
 _UNUSUAL = re.compile(r"[^\n -~]")
@@ -42,14 +44,23 @@ def say(text: str, *, stream: TextIO | None = None) -> None:
         What to print, without the last newline.
     stream
         Where to, by default stdout.
+
+    Raises
+    ------
+    InputError
+        If stdout cannot be written to, for example on a full disk.
     """
     out = sys.stdout if stream is None else stream
     coding = getattr(out, "encoding", None) or "utf-8"
     try:
         out.write(text.encode(coding, "backslashreplace").decode(coding) + "\n")
         out.flush()
-    except BrokenPipeError:
+    except OSError as error:
         _plug(out)
+        if stream is None and not isinstance(error, BrokenPipeError):
+            reason = error.strerror or str(error)
+            problem = Problem(where="standard output", what="cannot be written to", value=reason)
+            raise InputError(problem) from None
 
 
 def _plug(out: TextIO) -> None:
@@ -97,7 +108,7 @@ def progress(total: int) -> Iterator[Callable[[str], None]]:
     with tqdm(total=total, delay=1.0, leave=False, bar_format="{desc:24}|{bar}|") as bar:
 
         def advance(name: str) -> None:
-            bar.set_description_str(name)
+            bar.set_description_str(name, refresh=False)
             bar.update(1)
 
         yield advance
