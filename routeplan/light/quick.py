@@ -13,6 +13,7 @@ def quick_path(
     fibre_type: str,
     splices: int,
     connector_pairs: int,
+    pigtail_splices: int = 0,
     parts: tuple[Part, ...] = (),
 ) -> Path:
     """
@@ -25,9 +26,11 @@ def quick_path(
     fibre_type
         Its type.
     splices
-        Splices, joints and pigtails alike; the glass is in one section more. [-]
+        Splices in joints; the glass is in one section more. [-]
     connector_pairs
-        Mated pairs. [-]
+        Mated pairs, shared between the two ends. [-]
+    pigtail_splices
+        Splices behind the panels, shared likewise. [-]
     parts
         Further parts, such as a splitter.
 
@@ -42,11 +45,14 @@ def quick_path(
     """
     steps: list[Step] = [Mating(where="panel")] * (connector_pairs - connector_pairs // 2)
     steps += parts
+    pigtail = SpliceStep(where="panel", is_pigtail=True)
+    steps += [pigtail] * (pigtail_splices - pigtail_splices // 2)
     for number in range(splices + 1):
         if number:
             steps.append(SpliceStep(where=f"J{number}"))
         section = f"S{number + 1}"
         piece_m = glass_m / (splices + 1)
         steps.append(Glass(section=section, fibre=1, fibre_type=fibre_type, glass_m=piece_m))
+    steps += [pigtail] * (pigtail_splices // 2)
     steps += [Mating(where="panel")] * (connector_pairs // 2)
     return Path(circuit="quick", direction="from-to", steps=tuple(steps))

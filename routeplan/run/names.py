@@ -33,14 +33,24 @@ def colour_codes() -> tuple[str, ...]:
 
 @cache
 def interface_classes() -> dict[str, InterfaceClass]:
-    """Return the interfaces of the table by name."""
-    return {
-        row["name"]: InterfaceClass(
-            wavelengths_nm=tuple(row["wavelengths_nm"]),
-            bands_nm=tuple((low, high) for low, high in row["bands_nm"]),
+    """
+    Return the interfaces of the table by name.
+
+    Where two of one name but for its last part belong together on one fibre, each has the light
+    of both, and so has the name they share.
+    """
+    rows = {row["name"]: row for row in _rows("interfaces")}
+    found: dict[str, InterfaceClass] = {}
+    for name, row in rows.items():
+        ends = [row, rows[row["mate"]]] if row.get("mate") else [row]
+        light = InterfaceClass(
+            wavelengths_nm=tuple(sorted(nm for end in ends for nm in end["wavelengths_nm"])),
+            bands_nm=tuple((low, high) for end in ends for low, high in end["bands_nm"]),
         )
-        for row in _rows("interfaces")
-    }
+        found[name] = light
+        if row.get("mate"):
+            found.setdefault(name.rpartition("-")[0], light)
+    return found
 
 
 def _rows(table: str) -> list[dict[str, Any]]:

@@ -23,7 +23,7 @@ from routeplan.run.runfile_checks import check_declared, refuse_unbuilt, wavelen
 from routeplan.run.runfile_messages import note_errors
 from routeplan.run.trouble import Trouble
 
-__all__ = ["Declared", "declared_from_text", "parsed_toml"]
+__all__ = ["Declared", "declared_from_table", "declared_from_text", "parsed_toml"]
 
 Table: TypeAlias = dict[str, Any]
 Model = TypeVar("Model", bound=BaseModel)
@@ -65,6 +65,11 @@ def declared_from_text(content: bytes, *, file: str, trouble: Trouble) -> Declar
     raw = parsed_toml(content, file=file, trouble=trouble)
     if raw is None:
         return Declared(head=None, practice=None, cable=None)
+    return declared_from_table(raw, file=file, trouble=trouble)
+
+
+def declared_from_table(raw: Table, *, file: str, trouble: Trouble) -> Declared:
+    """Return what a run file's table says; everything wrong with it is noted in `trouble`."""
     given = frozenset(_given_keys(raw))
     refuse_unbuilt(raw, file=file, trouble=trouble)
     merged = _merged(raw)

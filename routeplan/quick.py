@@ -1,0 +1,138 @@
+"""A budget with no map: so much glass, so many splices and connectors, an optic at each end."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
+
+from routeplan.light.budget import circuit_verdict
+from routeplan.light.changes import Change, Circuit, mending_changes, stretch_limit_m
+from routeplan.light.circuits import Closing, circuit_budgets, closing_interfaces
+from routeplan.light.interfaces import OpticPair, find_interface
+from routeplan.light.model import Budget, Direction, Path, Verdict
+from routeplan.light.quick import quick_path
+
+if TYPE_CHECKING:
+    from routeplan.run.defaults import AssumedValue
+    from routeplan.run.practice import Interface, Loss
+
+__all__ = ["ANY", "QuickAnswer", "QuickOrder", "quick_answer"]
+
+ANY = "any"
+"""Name that asks for every interface that closes."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class QuickOrder:
+    """
+    What is asked: the path, what stands at its ends, and the practice it is judged by.
+
+    `joints_from` says where the number of splices comes from, `assumed` what was not said.
+    """
+
+    glass_m: float
+    sheath_m: float
+    splices: int
+    joints_from: str
+    fibre_type: str
+    fibre_count: int
+    interface: str | None
+    wavelengths_nm: tuple[float, ...]
+    practice: Loss
+    own: Mapping[str, Interface]
+    assumed: tuple[AssumedValue, ...]
+
+    @property
+    def pair(self) -> OpticPair | None:
+        """What stands at the two ends, None where no interface or any is named."""
+        if self.interface in (None, ANY):
+            return None
+        return find_interface(self.interface or "", self.own)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class QuickAnswer:
+    """
+    Budgets and verdict; what would mend a failing one, how far a fitting one could be stretched.
+
+    `closing` holds the interfaces that close where any was asked for, least capable first.
+    """
+
+    order: QuickOrder
+    budgets: tuple[Budget, ...]
+    verdict: Verdict
+    changes: tuple[Change, ...] = ()
+    stretch_m: int | None = None
+    closing: tuple[Closing, ...] = ()
+
+
+def quick_answer(order: QuickOrder) -> QuickAnswer:
+    """
+    Return budgets and verdict of a path with no map behind it, by the formulas of a plan.
+
+    Parameters
+    ----------
+    order
+        What is asked. With any interface, its wavelengths are those each has to send; none: each
+        at its own.
+
+    Raises
+    ------
+    RangeError
+        If a wavelength is outside 1260 to 1625 nm.
+    """
+    paths = _paths(order)
+    if order.interface == ANY:
+        return _any_interface(order, paths)
+    pair = order.pair
+    budgets = circuit_budgets(paths, pair, order.wavelengths_nm, practice=order.practice)
+    verdict = circuit_verdict(budgets)
+    answer = QuickAnswer(order=order, budgets=budgets, verdict=verdict)
+    if pair is None:
+        return answer
+    circuit = Circuit(
+        paths=paths,
+        pair=pair,
+        wavelengths_nm=order.wavelengths_nm,
+        practice=order.practice,
+        measured={},
+    )
+    if verdict == "fails":
+        changes = mending_changes(circuit, own=order.own, fibre_count=order.fibre_count)
+        return replace(answer, changes=changes)
+    return replace(answer, stretch_m=stretch_limit_m(circuit))
+
+
+def _paths(order: QuickOrder) -> dict[Direction, Path]:
+    there = quick_path(
+        order.glass_m,
+        fibre_type=order.fibre_type,
+        splices=order.splices,
+        connector_pairs=order.practice.connector_pairs,
+        pigtail_splices=order.practice.pigtail_splices,
+    )
+    back = replace(there, direction="to-from", steps=there.steps[::-1])
+    return {"from-to": there, "to-from": back}
+
+
+def _any_interface(order: QuickOrder, paths: Mapping[Direction, Path]) -> QuickAnswer:
+    """Return the interfaces that close; the budgets of the path itself have none."""
+    closing = closing_interfaces(
+        paths,
+        practice=order.practice,
+        own=order.own,
+        wavelengths_nm=order.wavelengths_nm,
+        fibre_count=order.fibre_count,
+    )
+    from routeplan.run.defaults import default_value
+
+    usual_nm = default_value("circuit.wavelengths_nm")
+    assert isinstance(usual_nm, tuple)
+    wavelengths_nm = order.wavelengths_nm or tuple(float(nm) for nm in usual_nm)
+    return QuickAnswer(
+        order=order,
+        budgets=circuit_budgets(paths, None, wavelengths_nm, practice=order.practice),
+        verdict="fits" if closing else "fails",
+        closing=closing,
+    )
