@@ -356,7 +356,8 @@ def grid_length_m(lonlat: Floats, crs: str) -> float:
     """
     transformer, unit_m = _to_grid(crs)
     x, y = transformer.transform(lonlat[:, 0], lonlat[:, 1])
-    return float(np.sum(np.hypot(np.diff(x), np.diff(y)))) * unit_m
+    with np.errstate(invalid="ignore"):  # the difference of two infinities
+        return float(np.sum(np.hypot(np.diff(x), np.diff(y)))) * unit_m
 
 
 @lru_cache(maxsize=64)

@@ -20,6 +20,7 @@ from routeplan.run.model import Floats, Place, Placement, Run
 
 __all__ = ["lay_ground", "position_at"]
 
+_SCALE_RATIO = 0.01  # house rule: national grids and UTM zones keep within a third of it
 _STEEP_RATIO = 0.01  # house rule: more than this from slope alone looks like noise in the heights
 
 
@@ -60,7 +61,7 @@ def lay_ground(run: Run) -> Ground:
     problems = [*network.problems, *_name_problems(groups, names), *problems]
     if problems:
         raise GeometryError(problems)
-    warnings = (*network.warnings, *_leg_warnings(groups, names))
+    warnings = (*network.warnings, *_leg_warnings(groups, names), *_grid_warnings(legs))
     return Ground(
         nodes=tuple(nodes), legs=tuple(legs), crossings=tuple(crossings), warnings=warnings
     )
@@ -375,4 +376,15 @@ def _leg_warnings(
                 f'leg "{name}"',
                 f"its track measured {drawn:.1f} m and {flat:.1f} m once thinned; the thinned "
                 "length is used",
+            )
+
+
+def _grid_warnings(legs: Sequence[Leg]) -> Iterator[tuple[str, str]]:
+    for leg in legs:
+        excess = leg.grid_m / leg.ellipsoid_m - 1.0 if leg.ellipsoid_m else 0.0
+        if abs(excess) > _SCALE_RATIO:
+            yield (
+                f'leg "{leg.name}"',
+                f"its length in the grid {leg.grid_crs} is {100 * excess:+.1f} % off the true one; "
+                "that grid is no measure here, and nothing is ordered by it",
             )

@@ -92,8 +92,8 @@ def near_lines(lines: LineIndex, points: Floats, *, radius_m: Floats) -> list[li
     """
     Return for each point its nearest place on every line within `radius_m`, nearest first.
 
-    Good to a millimetre for points within 50 m of a line, to centimetres within 200 m. Costs O(p sqrt(n)) box tests,
-    and a distance for every step whose own box is near.
+    Good to a millimetre for points within 50 m of a line, to centimetres within 200 m.
+    Costs O(p sqrt(n)) box tests, and a distance for every step whose own box is near.
 
     Parameters
     ----------
