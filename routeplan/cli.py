@@ -12,6 +12,7 @@ from typing import TYPE_CHECKING, NoReturn
 
 from routeplan import __version__
 from routeplan.errors import InputError, Problem, RouteplanError
+from routeplan.quick_options import OPTIONS
 from routeplan.terminal import progress, say, say_json, say_json_text, visible
 
 if TYPE_CHECKING:
@@ -63,6 +64,14 @@ def make_parser() -> argparse.ArgumentParser:
         "--out", metavar="FILE", help="run file to write (default: run.toml beside it)"
     )
     new.set_defaults(act=_new)
+
+    budget = commands.add_parser("budget", help="work out a loss budget with no map")
+    for option in OPTIONS:
+        is_list = "append" if option.is_repeated else "store"
+        help_text = option.text.replace("%", "%%")
+        budget.add_argument(option.label, metavar=option.metavar, action=is_list, help=help_text)
+    _add_json(budget)
+    budget.set_defaults(act=_budget)
 
     tables = commands.add_parser("tables", help="show the published numbers with their sources")
     tables.add_argument("name", metavar="NAME", nargs="?", help="one table; left out: list them")
@@ -192,6 +201,20 @@ def _seen_from(folder: Path, file: Path) -> str:
         return Path(os.path.relpath(*parents), file.name).as_posix()
     except ValueError:  # on another drive
         return file.absolute().as_posix()
+
+
+def _budget(arguments: argparse.Namespace) -> int:
+    from routeplan.quick import quick_answer
+    from routeplan.quick_options import order_from_options
+    from routeplan.sheets.quick_budget import quick_json, quick_text
+
+    given = {option.name: getattr(arguments, option.name) for option in OPTIONS}
+    answer = quick_answer(order_from_options(given))
+    if arguments.json:
+        say_json(quick_json(answer))
+    else:
+        say(quick_text(answer))
+    return 1 if answer.verdict == "fails" else 0
 
 
 def _tables(arguments: argparse.Namespace) -> int:

@@ -2,25 +2,26 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 from routeplan.light.budget import circuit_verdict
-from routeplan.light.changes import Change, Circuit, mending_changes, stretch_limit_m
+from routeplan.light.changes import Change, Circuit, mending_changes, stretch_limit_m, stretched
 from routeplan.light.circuits import Closing, circuit_budgets, closing_interfaces
 from routeplan.light.interfaces import OpticPair, find_interface
 from routeplan.light.model import Budget, Direction, Path, Verdict
 from routeplan.light.quick import quick_path
+from routeplan.quick_options import ANY
 
 if TYPE_CHECKING:
     from routeplan.run.defaults import AssumedValue
     from routeplan.run.practice import Interface, Loss
 
-__all__ = ["ANY", "QuickAnswer", "QuickOrder", "quick_answer"]
+__all__ = ["QuickAnswer", "QuickOrder", "quick_answer"]
 
-ANY = "any"
-"""Name that asks for every interface that closes."""
+_FIGURE = re.compile(r"-?\d+(\.\d+)?")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -56,7 +57,8 @@ class QuickAnswer:
     """
     Budgets and verdict; what would mend a failing one, how far a fitting one could be stretched.
 
-    `closing` holds the interfaces that close where any was asked for, least capable first.
+    `stretch_ended_by` says what fails a metre on. `closing` holds the interfaces that close where
+    any was asked for, least capable first.
     """
 
     order: QuickOrder
@@ -64,6 +66,7 @@ class QuickAnswer:
     verdict: Verdict
     changes: tuple[Change, ...] = ()
     stretch_m: int | None = None
+    stretch_ended_by: str = ""
     closing: tuple[Closing, ...] = ()
 
 
@@ -101,7 +104,28 @@ def quick_answer(order: QuickOrder) -> QuickAnswer:
     if verdict == "fails":
         changes = mending_changes(circuit, own=order.own, fibre_count=order.fibre_count)
         return replace(answer, changes=changes)
-    return replace(answer, stretch_m=stretch_limit_m(circuit))
+    stretch_m = stretch_limit_m(circuit)
+    ended_by = "" if stretch_m is None else _failure(circuit, stretch_m + 1)
+    return replace(answer, stretch_m=stretch_m, stretch_ended_by=ended_by)
+
+
+def _failure(circuit: Circuit, more_m: int) -> str:
+    """Return what is said of a stretched circuit that was not said before; it fails by that."""
+    before, after = (
+        circuit_budgets(
+            {way: stretched(path, length_m) for way, path in circuit.paths.items()},
+            circuit.pair,
+            circuit.wavelengths_nm,
+            practice=circuit.practice,
+        )
+        for length_m in (more_m - 1, more_m)
+    )
+    for fitting, failing in zip(before, after, strict=True):
+        said = {_FIGURE.sub("", reason) for reason in fitting.reasons}
+        for reason in failing.reasons:
+            if failing.verdict == "fails" and _FIGURE.sub("", reason) not in said:
+                return reason
+    return ""
 
 
 def _paths(order: QuickOrder) -> dict[Direction, Path]:

@@ -9,13 +9,16 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, Literal, TypeAlias
 
 from routeplan.errors import InputError, Problem
-from routeplan.quick import ANY, QuickOrder
 
 if TYPE_CHECKING:
+    from routeplan.quick import QuickOrder
     from routeplan.run.defaults import AssumedValue, Purpose
     from routeplan.run.runfile import Declared
 
-__all__ = ["OPTIONS", "Option", "order_from_options"]
+__all__ = ["ANY", "OPTIONS", "Option", "order_from_options"]
+
+ANY = "any"
+"""Name that asks for every interface that closes."""
 
 Given: TypeAlias = Mapping[str, str | Sequence[str] | None]
 
@@ -289,7 +292,7 @@ def _option_at(where: str, values: Mapping[str, Any]) -> str:
     if own:
         labels[_OWN] = own[0]
     parts = re.split(r"[.,] ?", where.partition(_FILE)[2])
-    return next((labels[part] for part in reversed(parts) if part in labels), _FILE)
+    return next((labels[part] for part in reversed(parts) if part in labels), where)
 
 
 _BAND_KEYS = ("wavelength_nm", "wavelength_min_nm", "wavelength_max_nm")
@@ -316,6 +319,8 @@ def _light_problems(declared: Declared) -> Iterator[Problem]:
 
 
 def _order(values: Mapping[str, Any], declared: Declared) -> QuickOrder:
+    from routeplan.quick import QuickOrder
+
     assert declared.practice
     assert declared.cable
     (circuit,) = declared.circuits
@@ -361,7 +366,7 @@ def _assumed(values: Mapping[str, Any], declared: Declared) -> Iterator[AssumedV
     from routeplan.run.defaults import AssumedValue, default_value, practice_rows
 
     purpose: Purpose = "venue" if values.get("purpose") == "venue" else "link"
-    used = {"purpose", "cable.fibre_type", "circuit.fibre_count"}
+    used = {"purpose", "cable.fibre_type", "circuit.fibre_count", *_USED_LOSS}
     if "splices" not in values or "sheath_km" in values:
         used.add("cable.glass_over_sheath_ratio")
     if "splices" not in values and "reel_km" not in values:
@@ -374,7 +379,7 @@ def _assumed(values: Mapping[str, Any], declared: Declared) -> Iterator[AssumedV
     for row in practice_rows():
         section, _, key = row.name.partition(".")
         full = f"{named.get(section, section)}.{key}" if key else section
-        if (row.name in used or section == "loss") and full not in declared.given:
+        if row.name in used and full not in declared.given:
             value = default_value(row.name, purpose)
             yield AssumedValue(
                 name=row.name,
@@ -383,6 +388,24 @@ def _assumed(values: Mapping[str, Any], declared: Declared) -> Iterator[AssumedV
                 source=row.source,
                 reason=row.reason,
             )
+
+
+_USED_LOSS = tuple(
+    f"loss.{key}"
+    for key in (
+        "splice_mean_db",
+        "splice_sigma_db",
+        "splice_limit_db",
+        "connector_mean_db",
+        "connector_sigma_db",
+        "connector_limit_db",
+        "connector_pairs",
+        "pigtail_splices",
+        "sigma_count",
+        "margin_db",
+        "verdict_on",
+    )
+)
 
 
 def _listed(value: object) -> str:

@@ -10,9 +10,9 @@ import numpy as np
 from routeplan.cable.layout import LaidCable
 from routeplan.cable.model import FibreEnd, Joint
 from routeplan.ground.model import Crossing, Leg
-from routeplan.light.model import Budget
 from routeplan.planning import CircuitPlan, Plan, assumptions, one_fewer, splices
 from routeplan.sheets.bill import bill_rows, pigtail_counts
+from routeplan.sheets.budget_rows import budget_row
 from routeplan.sheets.cautions import cautions_for
 from routeplan.sheets.power import power_rows
 from routeplan.sheets.rows import row_of, shaped
@@ -268,16 +268,6 @@ def _circuit(planned: Plan, circuit: CircuitPlan) -> Row:
         glass_m=sum(getattr(step, "glass_m", 0.0) for step in circuit.paths[0].steps),
         delay_us=circuit.budgets[0].delay_ns / 1000,
         verdict=circuit.verdict,
-        budgets=[_budget(budget) for budget in circuit.budgets],
+        budgets=[budget_row(budget) for budget in circuit.budgets],
         power=list(power_rows(planned, circuit)),
-    )
-
-
-def _budget(budget: Budget) -> Row:
-    return row_of(
-        "budgets",
-        budget,
-        delay_us=budget.delay_ns / 1000,
-        reasons=list(budget.reasons),
-        lines=[row_of("budget_lines", line) for line in budget.lines],
     )
