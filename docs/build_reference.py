@@ -19,43 +19,23 @@ __all__ = ["PAGES", "commands_page", "main", "run_file_page", "run_file_schema_t
 
 _MADE = "<!-- Made from the code by docs/build_reference.py: change the code, then run it. -->"
 
-_SECTIONS = {  # heading of each section of a run file, and what a reader has to know first
-    "": ("Top of the file", ""),
-    "joining": (
-        "`[joining]`",
-        "How lines become legs and points find them: [lengths](lengths.md).",
-    ),
-    "cable": (
-        "`[cable]`",
-        "The default cable. `measured` is a list of tables, for example "
-        "`measured = [ { wavelength_nm = 1310, attenuation_db_per_km = 0.33 } ]`: attenuation of "
-        "the delivered cable, taken as typical and as maximum; `sigma_db_per_km` is 0 if left out.",
-    ),
-    "cables.NAME": (
-        "`[cables.NAME]`",
-        "Another cable, named NAME, for the leg in `legs` or for lines whose `cable` is NAME. Keys "
-        "left out are those of `[cable]`. One leg for each cable in this version.",
-    ),
-    "slack": ("`[slack]`", "What each figure does: [slack and rulers](slack_and_rulers.md)."),
-    "reels": ("`[reels]`", "How they are chosen: [reels and joints](reels_and_joints.md)."),
-    "joints": ("`[joints]`", ""),
-    "costs": (
-        "`[costs]`",
-        "The default prices are invented, so that a first plan can weigh reels against joints; "
-        "every sheet says so. Replace them with your own before an order is placed.",
-    ),
-    "loss": ("`[loss]`", "How the figures are added up: [light](light.md)."),
-    "interface.NAME": (
-        "`[interface.NAME]`",
-        "An optical interface of your own, for circuits to name. Give its light as "
-        "`wavelength_nm`, or as `wavelength_min_nm` and `wavelength_max_nm`; what may be lost as "
-        "`channel_loss_db`, or as `tx_min_dbm` and `rx_sensitivity_dbm`.",
-    ),
-    "circuit": (
-        "`[[circuit]]`",
-        "One light path; the heading stands once for each. Where `wavelengths_nm` is left out and "
-        "an interface is named, the wavelengths are the interface's.",
-    ),
+_INTRODUCTIONS = {  # what a reader has to know before the keys of a section of a run file
+    "joining": "How lines become legs and points find them: [lengths](lengths.md).",
+    "cable": "The default cable. `measured` is a list of tables, for example "
+    "`measured = [ { wavelength_nm = 1310, attenuation_db_per_km = 0.33 } ]`: attenuation of "
+    "the delivered cable, taken as typical and as maximum; `sigma_db_per_km` is 0 if left out.",
+    "cables.NAME": "Another cable, named NAME, for the leg in `legs` or for lines whose `cable` is "
+    "NAME. Keys left out are those of `[cable]`. One leg for each cable in this version.",
+    "slack": "What each figure does: [slack and rulers](slack_and_rulers.md).",
+    "reels": "How they are chosen: [reels and joints](reels_and_joints.md).",
+    "costs": "The default prices are invented, so that a first plan can weigh reels and joints; "
+    "every sheet says so. Replace them with your own before an order is placed.",
+    "loss": "How the figures are added up: [light](light.md).",
+    "interface.NAME": "An optical interface of your own, for circuits to name. Give its light as "
+    "`wavelength_nm`, or as `wavelength_min_nm` and `wavelength_max_nm`; what may be lost as "
+    "`channel_loss_db`, or as `tx_min_dbm` and `rx_sensitivity_dbm`.",
+    "circuit": "One light path; the heading stands once for each. Where `wavelengths_nm` is left "
+    "out and an interface is named, the wavelengths are the interface's.",
 }
 
 _RUN_FILE_HEAD = """\
@@ -169,10 +149,17 @@ def run_file_page() -> str:
     rows = key_rows()
     parts = [_MADE, _RUN_FILE_HEAD]
     for section, own in itertools.groupby(rows, key=lambda row: row.section):
-        heading, text = _SECTIONS[section]
-        parts += [f"## {heading}\n", *([text + "\n"] if text else []), _key_table(own)]
+        text = _INTRODUCTIONS.get(section)
+        parts += [f"## {_heading(section)}\n", *([text + "\n"] if text else []), _key_table(own)]
     parts += [_names_part(), _NOT_YET, "## Defaults, and why\n", _default_table(rows)]
     return "\n".join(parts)
+
+
+def _heading(section: str) -> str:
+    if not section:
+        return "Top of the file"
+    head = run_file_schema()["properties"][section.partition(".")[0]]
+    return f"`[[{section}]]`" if head.get("type") == "array" else f"`[{section}]`"
 
 
 def _key_table(rows: Iterable[KeyRow]) -> str:

@@ -78,14 +78,14 @@ def test_a_made_page_is_fresh(name: str) -> None:
 
 def test_every_key_of_a_run_file_is_documented() -> None:
     """Each field of the models stands in the table under its own heading."""
-    headings = {"": "Top of the file", "cables": "`[cables.NAME]`", "circuit": "`[[circuit]]`"}
-    headings["interface"] = "`[interface.NAME]`"
     text = page("run_file.md")
     for section, key in keys_of(RunFile):
         if (section, key) == ("cable", "legs"):  # for a named cable only
             continue
-        heading = headings.get(section, f"`[{section}]`")
-        assert f"| `{key}` |" in part(text, heading), f"{section}.{key}"
+        forms = (f"`[{section}]`", f"`[[{section}]]`", f"`[{section}.NAME]`")
+        headings = forms if section else ("Top of the file",)
+        below = "".join(part(text, heading) for heading in headings)
+        assert f"| `{key}` |" in below, f"{section}.{key}"
 
 
 def test_the_schema_takes_the_demo_and_refuses_a_slip_of_the_pen() -> None:
