@@ -9,7 +9,13 @@ from collections.abc import Callable, Iterable, Iterator, Sequence
 from pathlib import Path
 
 from routeplan.cli import make_parser
-from routeplan.run.names import colour_codes, fibre_types, interface_classes
+from routeplan.run.names import (
+    colour_codes,
+    connector_grades,
+    fibre_types,
+    interface_classes,
+    optical_parts,
+)
 from routeplan.run.reference import KeyRow, key_rows, run_file_schema, toml_value
 from routeplan.sheets.schema import plan_schema_text
 from routeplan.sheets.tables import HEAD, TABLES, Column, Table
@@ -30,12 +36,30 @@ _INTRODUCTIONS = {  # what a reader has to know before the keys of a section of 
     "reels": "How they are chosen: [reels and joints](reels_and_joints.md).",
     "costs": "The default prices are invented, so that a first plan can weigh reels and joints; "
     "every sheet says so. Replace them with your own before an order is placed.",
-    "loss": "How the figures are added up: [light](light.md).",
+    "loss": "How the figures are added up: [light](light.md). `connector_grade` stands instead of "
+    "`connector_mean_db`, `connector_sigma_db` and `connector_limit_db`.",
+    "panel": "What is mated at one site: every mated pair there, of every circuit. Give `grade` or "
+    "`measured_db`; with neither, pairs lose what `[loss]` says. An angled end (APC) on a flat one "
+    "is an error.",
+    "joint": "What the splices lose in the joint that stands at a place: as measured, or as "
+    "assumed where that differs from `[loss]`. If no joint ends up there a warning says so.",
+    "section": "Measured attenuation of one section of cable, which goes before that of its cable. "
+    "Plan once to learn the names of sections.",
     "interface.NAME": "An optical interface of your own, for circuits to name. Give its light as "
     "`wavelength_nm`, or as `wavelength_min_nm` and `wavelength_max_nm`; what may be lost as "
-    "`channel_loss_db`, or as `tx_min_dbm` and `rx_sensitivity_dbm`.",
+    "`channel_loss_db`, or as `tx_min_dbm` and `rx_sensitivity_dbm`. `channel_loss_db` alone is "
+    "enough: it is then taken to work at any wavelength. With `rf = true` it carries radio "
+    "frequency on the light's amplitude, where a decibel of light is two of signal.",
     "circuit": "One light path; the heading stands once for each. Where `wavelengths_nm` is left "
-    "out and an interface is named, the wavelengths are the interface's.",
+    "out and an interface is named, the wavelengths are the interface's. "
+    '`interface = "any"` lists every interface that closes the circuit, at its own wavelengths '
+    "unless some are given. A pair of fibres is taken to have crossed leads at both ends and to be "
+    "rolled once on the way.",
+    "circuit.part": "A passive part in the way of the circuit above it: a row of the table "
+    '`optical_parts`, or one of your own with `kind = "own"` and `loss_db`. Where a part is a '
+    "`cwdm` pair every wavelength has to have a channel of the coarse grid to itself.",
+    "circuit.bend": "Fibre of the circuit above it that is wound or bent. A radius tighter than "
+    "the fibre type is made for is a failing check.",
 }
 
 _RUN_FILE_HEAD = """\
@@ -72,7 +96,7 @@ where it differs. Editors that read JSON Schema can use
 _NOT_YET = """\
 ## Not in this version
 
-`terrain`, `reels.stock`, `"stock"` in `reels.buy`, `interface = "any"` and more than one leg in
+`terrain`, `reels.stock`, `"stock"` in `reels.buy` and more than one leg in
 `cables.NAME.legs` are refused, not ignored.
 """
 
@@ -189,7 +213,9 @@ def _names_part() -> str:
         "## Names the file can use\n",
         f"- `cable.fibre_type`: {_listed(fibre_types())}.",
         f"- `cable.colour_code`: {_listed(colour_codes())}.",
-        f"- `circuit.interface`: one of `[interface.NAME]`, or {_listed(interface_classes())}.",
+        f"- `loss.connector_grade`, `panel.grade`: {_listed(connector_grades())}.",
+        f"- `circuit.part.name`: {_listed(optical_parts())}.",
+        f"- `circuit.interface`: `any`, one of `[interface.NAME]`, or {_listed(interface_classes())}.",
         "\n`routeplan tables fibres`, `colours` and `interfaces` show them with sources.\n",
     ]
     return "\n".join(lines)

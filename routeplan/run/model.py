@@ -9,7 +9,8 @@ from typing import Literal, TypeAlias
 import numpy as np
 from numpy.typing import NDArray
 
-from routeplan.run.practice import CableMake, CircuitOrder, Interface, Practice
+from routeplan.run.optics import CircuitOrder, Interface, JointFigures, Panel, SectionFigures
+from routeplan.run.practice import CableMake, Practice
 
 __all__ = [
     "AREA_KINDS",
@@ -174,5 +175,8 @@ class Run:
     practice: Practice
     given: frozenset[str]
     digest: str
+    panels: tuple[Panel, ...] = ()
+    joints: tuple[JointFigures, ...] = ()
+    sections: tuple[SectionFigures, ...] = ()
     background: tuple[Floats, ...] = ()
     warnings: tuple[tuple[str, str], ...] = ()

@@ -8,7 +8,15 @@ from functools import cache
 from importlib.resources import files
 from typing import Any
 
-__all__ = ["InterfaceClass", "colour_codes", "fibre_types", "interface_classes"]
+__all__ = [
+    "InterfaceClass",
+    "attenuator_steps_db",
+    "colour_codes",
+    "connector_grades",
+    "fibre_types",
+    "interface_classes",
+    "optical_parts",
+]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -51,6 +59,25 @@ def interface_classes() -> dict[str, InterfaceClass]:
         if row.get("mate"):
             found.setdefault(name.rpartition("-")[0], light)
     return found
+
+
+@cache
+def connector_grades() -> dict[str, dict[str, float]]:
+    """Return the connector grades of the table: mean, sigma and limit by name. [dB]"""
+    keys = ("mean_db", "sigma_db", "limit_db")
+    return {row["name"]: {key: row[key] for key in keys} for row in _rows("connectors")}
+
+
+@cache
+def optical_parts() -> tuple[str, ...]:
+    """Return the passive parts of the table."""
+    return tuple(row["name"] for row in _rows("optical_parts"))
+
+
+@cache
+def attenuator_steps_db() -> tuple[float, ...]:
+    """Return the fixed attenuators that are in stock, least first. [dB]"""
+    return tuple(sorted(row["loss_db"] for row in _rows("attenuators")))
 
 
 def _rows(table: str) -> list[dict[str, Any]]:

@@ -23,6 +23,21 @@ _EXAMPLES = {  # keys without a default, as they would be written
     "joints.max_count": "40",
     "joints.max_section_m": "{ duct = 6000 }",
 }
+_OTHERWISE = ("loss.connector_grade",)  # instead of the keys before it
+_LISTS = ("panel", "joint", "section", "circuit")  # headings that stand once for each entry
+_SITES_AND_JOINTS = """\
+# What is mated at a site, what the splices of one joint lose, what a section was measured at:
+# [[panel]]
+# site = "A"
+# grade = "grade B"                # of the table connectors; or measured_db
+# polish = "APC"                   # lead_polish, where the patch lead's is another
+# [[joint]]
+# place = "H1"
+# measured_db = 0.04               # or splice_mean_db, splice_sigma_db, splice_limit_db
+# [[section]]
+# name = "S1"
+# measured = [ { wavelength_nm = 1310, attenuation_db_per_km = 0.33 } ]
+"""
 _OWN_INTERFACE = """\
 # An optical interface of your own, to be named by a circuit:
 # [interface.own-link]
@@ -63,8 +78,8 @@ def new_run_text(geometry_path: str | Path, *, named: str = "") -> str:
         )
         raise RunFileError(problem)
     run = read_run(path)
-    parts = [_head(run, named or path.name), *_sections(), _OWN_INTERFACE, _circuit(run)]
-    return "\n".join(parts)
+    own = (_SITES_AND_JOINTS, _OWN_INTERFACE, _circuit(run))
+    return "\n".join([_head(run, named or path.name), *_sections(), *own])
 
 
 def _head(run: Run, file: str) -> str:
@@ -84,7 +99,8 @@ def _head(run: Run, file: str) -> str:
 
 def _sections() -> Iterator[str]:
     for section, rows in itertools.groupby(key_rows(), key=lambda row: row.section):
-        if section and section not in ("cables.NAME", "interface.NAME", "circuit"):
+        is_named = section in ("cables.NAME", "interface.NAME")
+        if section and not is_named and section.partition(".")[0] not in _LISTS:
             yield "\n".join([f"[{section}]", *(_commented(row) for row in rows), ""])
 
 
@@ -94,7 +110,8 @@ def _commented(row: KeyRow) -> str:
     unit = f" [{row.unit}]" if row.unit not in ("", "-") else ""
     reason = f" ({row.reason})" if row.reason else ""
     venue = "" if row.venue is None else f"    # venue: {toml_value(row.venue)}"
-    return f"# {row.description}{unit}{reason}\n# {row.key} = {value}{venue}"
+    either = "or " if row.name in _OTHERWISE else ""
+    return f"# {row.description}{unit}{reason}\n# {either}{row.key} = {value}{venue}"
 
 
 def _circuit(run: Run) -> str:

@@ -11,7 +11,29 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Annotated, Literal, TypeAlias
 
-from pydantic import AfterValidator, BaseModel, ConfigDict, Field, Strict
+from pydantic import AfterValidator, Field, Strict
+
+from routeplan.run.fields import (
+    Count,
+    Decibels,
+    Metres,
+    Money,
+    Name,
+    PositiveMetres,
+    Ratio,
+    Section,
+    rising,
+    without_repeats,
+)
+from routeplan.run.optics import (
+    CircuitOrder,
+    Finish,
+    Interface,
+    JointFigures,
+    MeasuredAttenuation,
+    Panel,
+    SectionFigures,
+)
 
 __all__ = [
     "CableMake",
@@ -35,35 +57,10 @@ AnyPlacement = Literal[
 OwnPlacement = Literal["aerial", "duct", "buried", "surface", "indoor", "bridge", "water"]
 
 
-def _without_repeats(values: tuple[float, ...]) -> tuple[float, ...]:
-    if len(set(values)) < len(values):
-        raise ValueError("a value stands twice")
-    return values
-
-
-def _rising(values: tuple[float, ...]) -> tuple[float, ...]:
-    return tuple(sorted(_without_repeats(values)))
-
-
-Metres: TypeAlias = Annotated[float, Field(ge=0, le=100_000)]
-PositiveMetres: TypeAlias = Annotated[float, Field(gt=0, le=1_000_000)]
-Ratio: TypeAlias = Annotated[float, Field(ge=0, le=0.5)]
-Money: TypeAlias = Annotated[float, Field(ge=0, le=1e9)]
-Decibels: TypeAlias = Annotated[float, Field(ge=0, le=100)]
-PowerDbm: TypeAlias = Annotated[float, Field(ge=-100, le=50)]
-Count: TypeAlias = Annotated[int, Field(ge=0, le=1000)]
-WavelengthNm: TypeAlias = Annotated[float, Field(ge=1260, le=1625)]
-Name: TypeAlias = Annotated[str, Field(min_length=1, max_length=500)]
 MetresByPlacement: TypeAlias = Mapping[OwnPlacement, PositiveMetres]
 
 
-class _Model(BaseModel):
-    model_config = ConfigDict(
-        frozen=True, extra="forbid", strict=True, allow_inf_nan=False, validate_by_name=True
-    )
-
-
-class Joining(_Model):
+class Joining(Section):
     """How lines become legs and points find them."""
 
     join_tolerance_m: Metres = Field(description="Line ends nearer than this are one node. [m]")
@@ -76,19 +73,7 @@ class Joining(_Model):
     track_tolerance_m: Metres = Field(description="How far thinning may move a recorded track. [m]")
 
 
-class MeasuredAttenuation(_Model):
-    """Attenuation of the delivered cable as measured at one wavelength."""
-
-    wavelength_nm: WavelengthNm = Field(description="Vacuum wavelength. [nm]")
-    attenuation_db_per_km: float = Field(
-        gt=0, le=10, description="Attenuation, taken as typical and as maximum. [dB/km]"
-    )
-    sigma_db_per_km: float = Field(
-        default=0.0, ge=0, le=10, description="Standard deviation between sections. [dB/km]"
-    )
-
-
-class CableMake(_Model):
+class CableMake(Section):
     """What cable is ordered."""
 
     fibre_count: int = Field(ge=1, le=6912, description="Fibres in the cable. [-]")
@@ -106,7 +91,7 @@ class CableMake(_Model):
     )
 
 
-class Slack(_Model):
+class Slack(Section):
     """Spare cable, and how much longer cable is than the way it lies on."""
 
     joint_tail_m: Metres = Field(description="Each cable end at a joint. [m]")
@@ -129,22 +114,22 @@ class Slack(_Model):
     ordering_ratio: Ratio = Field(description="Ordered beyond what the ruler says. [-]")
 
 
-class Reels(_Model):
+class Reels(Section):
     """How cable can be bought."""
 
     buy: Annotated[
         tuple[Literal["to-length", "put-ups"], ...],
         Strict(False),
-        AfterValidator(_without_repeats),
+        AfterValidator(without_repeats),
     ] = Field(min_length=1, description="Ways of buying: to-length, put-ups.")
-    put_ups_m: Annotated[tuple[PositiveMetres, ...], Strict(False), AfterValidator(_rising)] = (
-        Field(min_length=1, max_length=100, description="Lengths the maker sells. [m]")
+    put_ups_m: Annotated[tuple[PositiveMetres, ...], Strict(False), AfterValidator(rising)] = Field(
+        min_length=1, max_length=100, description="Lengths the maker sells. [m]"
     )
     max_m: PositiveMetres = Field(description="To-length: longest piece made. [m]")
     round_up_m: PositiveMetres = Field(description="To-length: ordered in steps of. [m]")
 
 
-class Joints(_Model):
+class Joints(Section):
     """Where joints may be, and how many."""
 
     assumed_spacing_m: PositiveMetres = Field(
@@ -160,7 +145,7 @@ class Joints(_Model):
     fibres_per_tray: Literal[12, 24] = Field(description="Splices a closure's tray holds. [-]")
 
 
-class Costs(_Model):
+class Costs(Section):
     """What things cost, in one currency."""
 
     currency: Annotated[str, Field(min_length=1, max_length=12)] = Field(
@@ -176,7 +161,7 @@ class Costs(_Model):
     )
 
 
-class Loss(_Model):
+class Loss(Section):
     """What splices and connectors lose, and what is kept in hand."""
 
     splice_mean_db: Decibels = Field(description="Mean loss of a splice. [dB]")
@@ -185,6 +170,11 @@ class Loss(_Model):
     connector_mean_db: Decibels = Field(description="Mean loss of a mated pair. [dB]")
     connector_sigma_db: Decibels = Field(description="Standard deviation of a pair. [dB]")
     connector_limit_db: Decibels = Field(description="Loss a mated pair has to meet. [dB]")
+    connector_grade: Name | None = Field(
+        default=None,
+        description="Grade of all pairs, of the table `connectors`, instead of the three figures.",
+    )
+    connector_polish: Finish = Field(description="Polish of all pairs: PC, UPC or APC.")
     connector_pairs: Count = Field(description="Mated pairs in a circuit. [-]")
     pigtail_splices: Count = Field(description="Pigtail splices in a circuit. [-]")
     sigma_count: float = Field(
@@ -194,9 +184,11 @@ class Loss(_Model):
     verdict_on: Literal["worst", "statistical"] = Field(
         description="The loss that verdicts are on: worst or statistical."
     )
+    repairs_count: Count = Field(description="Repairs expected over the life. [-]")
+    repair_cable_m: Metres = Field(description="New cable put in by a repair. [m]")
 
 
-class Practice(_Model):
+class Practice(Section):
     """The house rules of a run."""
 
     joining: Joining
@@ -207,69 +199,7 @@ class Practice(_Model):
     loss: Loss
 
 
-class Interface(_Model):
-    """An optical interface of one's own: by channel loss, or by power and sensitivity."""
-
-    wavelength_nm: WavelengthNm | None = Field(
-        default=None, description="Wavelength, where there is one only. [nm]"
-    )
-    wavelength_min_nm: WavelengthNm | None = Field(
-        default=None, description="Shortest wavelength of its band. [nm]"
-    )
-    wavelength_max_nm: WavelengthNm | None = Field(
-        default=None, description="Longest wavelength of its band. [nm]"
-    )
-    tx_min_dbm: PowerDbm | None = Field(default=None, description="Least launch power. [dBm]")
-    tx_max_dbm: PowerDbm | None = Field(
-        default=None, description="Most launch power; left out: overload unknown. [dBm]"
-    )
-    rx_sensitivity_dbm: PowerDbm | None = Field(
-        default=None, description="Least power the receiver needs. [dBm]"
-    )
-    rx_overload_dbm: PowerDbm | None = Field(
-        default=None, description="Most power the receiver stands. [dBm]"
-    )
-    channel_loss_db: Decibels | None = Field(
-        default=None, description="Largest channel insertion loss, penalty included. [dB]"
-    )
-    penalty_db: Decibels = Field(description="Power penalty on the sensitivity basis. [dB]")
-    dispersion_max_ps_per_nm: float | None = Field(
-        default=None, gt=0, le=1e6, description="Most dispersion borne. [ps/nm]"
-    )
-    bit_rate_gbps: float | None = Field(
-        default=None, gt=0, le=1e5, description="Line rate. [Gbit/s]"
-    )
-
-    @property
-    def band_nm(self) -> tuple[float, float]:
-        """Return the shortest and the longest wavelength [nm]."""
-        if self.wavelength_nm is not None:
-            return self.wavelength_nm, self.wavelength_nm
-        assert self.wavelength_min_nm is not None
-        assert self.wavelength_max_nm is not None
-        return self.wavelength_min_nm, self.wavelength_max_nm
-
-
-class CircuitOrder(_Model):
-    """One light path asked for: between which sites, on how many fibres, for what light."""
-
-    name: Name = Field(description="Name, unique in the run.")
-    from_: Name | None = Field(
-        default=None, alias="from", description="Site; left out: an end of the longest leg."
-    )
-    to: Name | None = Field(
-        default=None, description="Site; left out: the other end of the longest leg."
-    )
-    fibre_count: Literal[1, 2] = Field(description="Fibres of the circuit. [-]")
-    interface: Name | None = Field(
-        default=None, description="Interface, of the table `interfaces` or one's own."
-    )
-    wavelengths_nm: Annotated[
-        tuple[WavelengthNm, ...], Strict(False), AfterValidator(_without_repeats)
-    ] = Field(min_length=1, max_length=200, description="Wavelengths to be used. [nm]")
-
-
-class RunHead(_Model):
+class RunHead(Section):
     """The keys at the top of a run file."""
 
     title: Annotated[str, Field(min_length=1, max_length=500)] | None = Field(
@@ -314,6 +244,15 @@ class RunFile(RunHead):
     loss: Loss
     interface: Mapping[Name, Interface] = Field(
         default_factory=dict, description="Interfaces of one's own by name."
+    )
+    panel: Annotated[tuple[Panel, ...], Strict(False)] = Field(
+        default=(), description="What is mated at a site, where it differs from practice."
+    )
+    joint: Annotated[tuple[JointFigures, ...], Strict(False)] = Field(
+        default=(), description="Splices in one joint, where they differ from practice."
+    )
+    section: Annotated[tuple[SectionFigures, ...], Strict(False)] = Field(
+        default=(), description="Sections of cable whose attenuation was measured."
     )
     circuit: Annotated[tuple[CircuitOrder, ...], Strict(False)] = Field(
         default=(), description="Circuits; none: one between the ends of the longest leg."

@@ -12,7 +12,19 @@ from routeplan.run.practice import RunFile
 __all__ = ["KeyRow", "key_rows", "run_file_schema", "toml_value"]
 
 _HEADINGS = {"cables": "cables.NAME", "interface": "interface.NAME"}
-_TYPES = {"number": "number", "integer": "whole number", "string": "text"}
+_COMPLETE = (  # tables that make no sense without some of their keys
+    "CircuitBend",
+    "JointFigures",
+    "MeasuredAttenuation",
+    "Panel",
+    "SectionFigures",
+)
+_TYPES = {
+    "boolean": "true or false",
+    "number": "number",
+    "integer": "whole number",
+    "string": "text",
+}
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -55,7 +67,19 @@ def key_rows() -> tuple[KeyRow, ...]:
             if not (name == "cable" and key == "legs"):
                 row = practice.get(f"{'cable' if name == 'cables' else name}.{key}")
                 found.append(_row(_HEADINGS.get(name, name), key, own, row))
+        if name == "circuit":
+            found += _nested_rows(name, section, schema["$defs"])
     return tuple(found)
+
+
+def _nested_rows(
+    name: str, section: Mapping[str, Any], defs: Mapping[str, Any]
+) -> Iterator[KeyRow]:
+    """Yield the keys of the tables within the entries of a section."""
+    for key, entry in section["properties"].items():
+        if nested := _table(entry, defs):
+            for inner, own in nested["properties"].items():
+                yield _row(f"{name}.{key}", inner, own, None)
 
 
 def run_file_schema() -> dict[str, Any]:
@@ -70,7 +94,7 @@ def run_file_schema() -> dict[str, Any]:
             if f"{name}.{key}" in practice:
                 own["default"] = practice[f"{name}.{key}"]
     for table in (schema, *schema["$defs"].values()):
-        if table.get("title") != "MeasuredAttenuation":
+        if table.get("title") not in _COMPLETE:
             table.pop("required", None)
     return schema
 
@@ -137,7 +161,10 @@ def _type_of(entry: Mapping[str, Any]) -> str:
         items = entry["items"]
         return "list of tables" if "$ref" in items else f"list of {_type_of(items)}"
     if entry.get("type") == "object":
-        return f"table of {_type_of(entry['additionalProperties'])} by placement"
+        by = (
+            " by placement" if "propertyNames" in entry and "enum" in entry["propertyNames"] else ""
+        )
+        return f"table of {_type_of(entry['additionalProperties'])}{by}"
     return _TYPES.get(str(entry.get("type")), "table")
 
 

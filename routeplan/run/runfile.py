@@ -4,21 +4,16 @@ from __future__ import annotations
 
 import tomllib
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import Any, TypeAlias, TypeVar
 
 from pydantic import BaseModel, ValidationError
 
 from routeplan.errors import Problem, RunFileError
 from routeplan.run.defaults import MERGED_BY_PLACEMENT, Purpose, default_value, practice_rows
-from routeplan.run.practice import (
-    CableMake,
-    CircuitOrder,
-    Interface,
-    Practice,
-    RunFile,
-    RunHead,
-)
+from routeplan.run.names import connector_grades
+from routeplan.run.optics import CircuitOrder, Interface, JointFigures, Panel, SectionFigures
+from routeplan.run.practice import CableMake, Practice, RunFile, RunHead
 from routeplan.run.runfile_checks import check_declared, refuse_unbuilt, wavelengths_of
 from routeplan.run.runfile_messages import note_errors
 from routeplan.run.trouble import Trouble
@@ -46,6 +41,9 @@ class Declared:
     cables: Mapping[str, CableMake] = field(default_factory=dict)
     interfaces: Mapping[str, Interface] = field(default_factory=dict)
     circuits: tuple[CircuitOrder, ...] = ()
+    panels: tuple[Panel, ...] = ()
+    joints: tuple[JointFigures, ...] = ()
+    sections: tuple[SectionFigures, ...] = ()
     given: frozenset[str] = frozenset()
 
 
@@ -75,7 +73,19 @@ def declared_from_table(raw: Table, *, file: str, trouble: Trouble) -> Declared:
     merged = _merged(raw)
     declared = _validated(merged, file=file, trouble=trouble, given=given)
     check_declared(declared, file=file, trouble=trouble)
-    return declared
+    return _graded(declared)
+
+
+def _graded(declared: Declared) -> Declared:
+    """Return what was declared with the figures of a connector grade where one is named."""
+    practice = declared.practice
+    figures = connector_grades().get((practice and practice.loss.connector_grade) or "")
+    if practice is None or figures is None:
+        return declared
+    named = {f"connector_{key}": value for key, value in figures.items()}
+    loss = practice.loss.model_copy(update=named)
+    given = declared.given | {f"loss.{key}" for key in named}
+    return replace(declared, practice=practice.model_copy(update={"loss": loss}), given=given)
 
 
 def parsed_toml(content: bytes, *, file: str, trouble: Trouble) -> Table | None:
@@ -194,6 +204,9 @@ def _validated(merged: Table, *, file: str, trouble: Trouble, given: frozenset[s
         cables=whole.cables,
         interfaces=whole.interface,
         circuits=whole.circuit,
+        panels=whole.panel,
+        joints=whole.joint,
+        sections=whole.section,
         given=given,
     )
 
@@ -204,15 +217,16 @@ def _sound_parts(merged: Table, error: ValidationError, *, given: frozenset[str]
         _mend(merged, detail["loc"], unknown=detail["type"] == "extra_forbidden")
     head = {key: value for key, value in merged.items() if key in RunHead.model_fields}
     practice = {key: merged[key] for key in _PRACTICE_PARTS}
-    circuits = merged["circuit"] if isinstance(merged["circuit"], list) else []
-    sound = (_model_or_none(CircuitOrder, item) for item in circuits)
     return Declared(
         head=_model_or_none(RunHead, head),
         practice=_model_or_none(Practice, practice),
         cable=_model_or_none(CableMake, merged["cable"]),
         cables=_sound_models(CableMake, merged["cables"]),
         interfaces=_sound_models(Interface, merged["interface"]),
-        circuits=tuple(circuit for circuit in sound if circuit is not None),
+        circuits=_sound_list(CircuitOrder, merged["circuit"]),
+        panels=_sound_list(Panel, merged.get("panel")),
+        joints=_sound_list(JointFigures, merged.get("joint")),
+        sections=_sound_list(SectionFigures, merged.get("section")),
         given=given,
     )
 
@@ -241,6 +255,11 @@ def _model_or_none(model: type[Model], data: object) -> Model | None:
         return model.model_validate(data)
     except ValidationError:
         return None
+
+
+def _sound_list(model: type[Model], items: object) -> tuple[Model, ...]:
+    found = (_model_or_none(model, item) for item in (items if isinstance(items, list) else ()))
+    return tuple(each for each in found if each is not None)
 
 
 def _sound_models(model: type[Model], tables: object) -> dict[str, Model]:

@@ -9,6 +9,8 @@ from typing import TYPE_CHECKING, Any, TypeGuard
 
 from routeplan.errors import Problem, RunFileError
 from routeplan.run.names import colour_codes, fibre_types, interface_classes
+from routeplan.run.optics import ANY_INTERFACE
+from routeplan.run.optics_checks import measured_problems, optics_problems
 from routeplan.run.practice import CableMake, CircuitOrder, Interface, Loss, Slack
 from routeplan.run.trouble import Trouble, is_plain_text, listed, nearest_hint, shown
 
@@ -93,12 +95,6 @@ def _unbuilt(raw: dict[str, Any]) -> Iterator[tuple[str, str, str]]:
             cable["legs"] = legs[:1]
             remedy = "Name one leg for each cable."
             yield f"cables.{name}.legs", shown(legs), remedy
-    circuits = raw.get("circuit")
-    for number, circuit in enumerate(circuits if isinstance(circuits, list) else (), start=1):
-        if isinstance(circuit, dict) and circuit.get("interface") == "any":
-            del circuit["interface"]
-            where = f"circuit {shown(circuit.get('name', number))}, interface"
-            yield where, '"any"', "Name one interface, or leave the key out."
 
 
 def _unbuilt_stock(reels: dict[str, Any]) -> Iterator[tuple[str, str, str]]:
@@ -129,6 +125,7 @@ def _contradictions(declared: Declared) -> Iterator[Problem]:
     for name, interface in declared.interfaces.items():
         yield from _interface_problems(f"interface.{name}", interface)
     yield from _circuit_problems(declared)
+    yield from optics_problems(declared)
 
 
 def _loss_problems(loss: Loss) -> Iterator[Problem]:
@@ -167,14 +164,7 @@ def _cable_problems(where: str, cable: CableMake) -> Iterator[Problem]:
     if cable.colour_code not in colour_codes():
         known = colour_codes()
         yield _unknown_name(f"{where}.colour_code", "colour code", cable.colour_code, known)
-    counts = Counter(point.wavelength_nm for point in cable.measured)
-    for wavelength, count in counts.items():
-        if count > 1:
-            yield Problem(
-                where=f"{where}.measured",
-                what="gives a wavelength more than once",
-                value=f"{wavelength:g} nm",
-            )
+    yield from measured_problems(f"{where}.measured", cable.measured)
 
 
 def _cable_leg_problems(cables: Mapping[str, CableMake]) -> Iterator[Problem]:
@@ -218,6 +208,8 @@ def _interface_problems(where: str, interface: Interface) -> Iterator[Problem]:
 
 
 def _band_problems(where: str, interface: Interface) -> Iterator[Problem]:
+    if interface.is_open_band:
+        return
     low, high = interface.wavelength_min_nm, interface.wavelength_max_nm
     single = interface.wavelength_nm is not None
     if single == (low is not None and high is not None) or (single and (low or high)):
@@ -253,7 +245,7 @@ def _circuit_problems(declared: Declared) -> Iterator[Problem]:
         if not is_plain_text(circuit.name):
             yield _unprintable(where)
         yield from _end_problems(where, circuit)
-        if circuit.interface is not None:
+        if circuit.interface not in (None, ANY_INTERFACE):
             yield from _light_problems(where, circuit, circuit.interface, declared.interfaces)
 
 

@@ -10,7 +10,8 @@ from pydantic import BaseModel, ValidationError
 from pydantic_core import ErrorDetails
 
 from routeplan.errors import Problem, RunFileError
-from routeplan.run.practice import CircuitOrder, Interface, MeasuredAttenuation, RunFile, RunHead
+from routeplan.run.optics import CircuitBend, CircuitPart, MeasuredAttenuation
+from routeplan.run.practice import RunFile, RunHead
 from routeplan.run.trouble import Trouble, listed, nearest_hint, shown
 
 __all__ = ["key_path", "note_errors", "sections"]
@@ -48,7 +49,14 @@ _WHATS = {
     "value_error": "holds a value twice",
     "int_parsing_size": "is too large",
 }
-_NESTED = {"measured": MeasuredAttenuation, "circuit": CircuitOrder, "interface": Interface}
+_NESTED: dict[str, type[BaseModel]] = {  # tables within the entries of a section
+    "cable.measured": MeasuredAttenuation,
+    "section.measured": MeasuredAttenuation,
+    "circuit.part": CircuitPart,
+    "circuit.bend": CircuitBend,
+}
+_CALLED = {"circuit": "name", "panel": "site", "joint": "place", "section": "name"}
+_ENTRIES = tuple(f"{name} " for name in _CALLED)
 
 
 def sections() -> dict[str, tuple[str, ...]]:
@@ -57,8 +65,7 @@ def sections() -> dict[str, tuple[str, ...]]:
     for name, field in RunFile.model_fields.items():
         if name not in RunHead.model_fields:
             found[name] = _keys(_model_in(field.annotation))
-    found["cable.measured"] = _keys(MeasuredAttenuation)
-    return found
+    return found | {name: _keys(model) for name, model in _NESTED.items()}
 
 
 def note_errors(
@@ -93,16 +100,16 @@ def key_path(path: tuple[str | int, ...], data: Mapping[str, Any]) -> str:
     'reels.put_ups_m, item 2'
     """
     text = ""
-    if path[:1] == ("circuit",) and len(path) > 1 and isinstance(path[1], int):
+    if path[0] in _CALLED and len(path) > 1 and isinstance(path[1], int):
         item = _value_at(path[:2], data)
-        name = item.get("name") if isinstance(item, Mapping) else None
-        text = f"circuit {shown(name) if isinstance(name, str) else path[1] + 1}"
+        name = item.get(_CALLED[str(path[0])]) if isinstance(item, Mapping) else None
+        text = f"{path[0]} {shown(name) if isinstance(name, str) else path[1] + 1}"
         path = path[2:]
     for part in path:
         if isinstance(part, int):
             text += f", item {part + 1}"
         elif part != "[key]":
-            joint = ", " if text.startswith("circuit ") or ", item" in text else "."
+            joint = ", " if text.startswith(_ENTRIES) or ", item" in text else "."
             text += f"{joint if text else ''}{shown(part)[1:-1]}"
     return text
 
@@ -170,7 +177,9 @@ def _unknown_key(
 
 
 def _hint_elsewhere(key: str) -> str:
-    owners = {name: section for section, names in sections().items() for name in names}
+    owners: dict[str, str] = {}
+    for section, names in sections().items():
+        owners |= {name: section for name in names if name not in owners}
     hint = nearest_hint(key, owners, template="{}")
     return f'Did you mean "{hint}" {_place_of(owners[hint])}?' if hint else ""
 
@@ -178,15 +187,16 @@ def _hint_elsewhere(key: str) -> str:
 def _place_of(section: str) -> str:
     if not section:
         return "at the top of the file, before the first [section]"
-    shapes = {"circuit": "[[circuit]]", "interface": "[interface.NAME]", "cables": "[cables.NAME]"}
+    shapes = {"interface": "[interface.NAME]", "cables": "[cables.NAME]"}
+    if section.partition(".")[0] in _CALLED:
+        return f"in [[{section}]]"
     return f"in {shapes.get(section, f'[{section}]')}"
 
 
 def _section_of(path: tuple[str | int, ...]) -> str:
     names = [part for part in path if isinstance(part, str)]
-    if "measured" in names:
-        return "cable.measured"
-    return names[0] if names else ""
+    nested = ".".join((names[0].replace("cables", "cable"), names[-1])) if names else ""
+    return nested if nested in _NESTED else names[0] if names else ""
 
 
 def _keys(model: type[BaseModel]) -> tuple[str, ...]:

@@ -38,11 +38,14 @@ def practice(**changes: object) -> Loss:
         "connector_mean_db": 0.25,
         "connector_sigma_db": 0.13,
         "connector_limit_db": 0.50,
+        "connector_polish": "UPC",
         "connector_pairs": 2,
         "pigtail_splices": 2,
         "sigma_count": 3.0,
         "margin_db": 3.0,
         "verdict_on": "worst",
+        "repairs_count": 2,
+        "repair_cable_m": 30.0,
     }
     return Loss.model_validate(values | changes)
 

@@ -55,9 +55,7 @@ def test_every_key_of_a_new_run_file_holds_when_its_comment_is_taken_away(
 ) -> None:
     """What stands there as the default is the default, and is spelt as it is read."""
     text = new_run_text(collection(road))
-    lines = [
-        re.sub(r"^# ((\w+ = |\[interface|\[\[circuit).*)$", r"\1", x) for x in text.split("\n")
-    ]
+    lines = [re.sub(r"^# ((\w+ = |\[interface|\[\[\w+).*)$", r"\1", x) for x in text.split("\n")]
     whole = "\n".join(lines).replace('interface = "10GBASE-LR"', 'interface = "own-link"')
     whole = whole.replace("wavelengths_nm = [1310, 1550]", "wavelengths_nm = [1310]")
     given = tomllib.loads(whole)

@@ -17,6 +17,7 @@ def test_every_field_of_the_practice_has_a_default_row() -> None:
     """A key without a default row could never be left out of a run file."""
     named = {row.name for row in practice_rows()}
     free = {"joints.max_count", "joints.max_section_m", "cable.measured", "cable.legs"}
+    free |= {"loss.connector_grade"}
     for section, model in {
         "slack": Slack,
         "reels": Reels,
@@ -51,10 +52,15 @@ def test_purpose_chooses_the_column(key: str, link: object, venue: object) -> No
     assert default_value(key, "venue") == venue
 
 
-def test_only_three_values_differ_by_purpose() -> None:
+def test_only_four_values_differ_by_purpose() -> None:
     """The purpose chooses a set of defaults and nothing else."""
     differing = {row.name for row in practice_rows() if row.venue is not None}
-    assert differing == {"loss.margin_db", "placement", "slack.loop_every_m"}
+    assert differing == {
+        "loss.margin_db",
+        "loss.repairs_count",
+        "placement",
+        "slack.loop_every_m",
+    }
 
 
 def test_an_unknown_default_is_an_error() -> None:
