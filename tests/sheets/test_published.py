@@ -60,15 +60,67 @@ def test_every_word_of_a_row_is_shown(name: str) -> None:
     """Sources, notes and names stand in the text, however they are wrapped."""
     text = " ".join(published_text(name).split())
     for row in raw_rows(name):
-        for value in row.values():
-            if isinstance(value, str):
-                assert " ".join(value.split()) in text
+        for key, value in row.items():
+            if isinstance(value, str) and key != "quantity":
+                assert all(" ".join(part.split()) in text for part in spoken(name, key, value))
+
+
+def spoken(name: str, key: str, value: str) -> list[str]:
+    """Return how a text is said: dotted keys of practice as their heading and what is below it."""
+    if (name, key) != ("practice", "name") or "." not in value:
+        return [value]
+    section, _, own = value.rpartition(".")
+    return [f"[{section}]", own]
 
 
 @pytest.mark.parametrize("name", table_names())
 def test_lines_fit_a_page(name: str) -> None:
-    """No line is much wider than a page."""
-    assert max(map(len, published_text(name).splitlines())) <= 140
+    """No line is wider than a terminal of 100 columns, and none ends in blanks."""
+    lines = published_text(name).splitlines()
+    assert max(map(len, lines)) <= 100
+    assert all(line == line.rstrip() for line in lines)
+
+
+def test_a_quantity_has_the_value_of_its_type() -> None:
+    """In the matrix of fibre types each value stands in the row and the column it belongs to."""
+    lines = published_text("fibres").splitlines()
+    head = next(line for line in lines if "G.652.D" in line)
+    row = next(line for line in lines if line.startswith("zero dispersion max, nm"))
+    assert row[head.index("G.652.D") :].split()[0] == "1324"
+    assert row[head.index("G.654.E") :].strip() == ""
+
+
+def test_types_of_one_column_are_alike() -> None:
+    """Types that share a column of the matrix share every value and source."""
+    values: dict[str, list[object]] = {}
+    for row in raw_rows("fibres"):
+        types = row["fibre_types"]
+        assert isinstance(types, list)
+        for fibre_type in types:
+            rest = (row["quantity"], row["value"], row["source"])
+            values.setdefault(fibre_type, []).append(rest)
+    for line in published_text("fibres").splitlines():
+        assert "G.655.C" not in line or line.split() == ["G.655.C"]
+    assert set(values["G.655.C"]) == set(values["G.655.E"]) == set(values["G.655"])
+
+
+def test_lanes_run_down_beside_their_interface() -> None:
+    """The wavelengths of four lanes stand one below the other in one column."""
+    lines = published_text("interfaces").splitlines()
+    start = next(n for n, line in enumerate(lines) if line.startswith("40GBASE-LR4 "))
+    assert lines[start].split()[:3] == ["40GBASE-LR4", "40", "1271"]
+    at = lines[start].index("1271")
+    assert [line[at:].strip() for line in lines[start + 1 : start + 4]] == ["1291", "1311", "1331"]
+
+
+def test_colours_are_numbered_lists() -> None:
+    """Each code lists its colours from 1 to 12, and says how fibres beyond are marked."""
+    text = published_text("colours")
+    block = text.partition("DIN VDE 0888  [")[2].partition("\n\n")[0]
+    words = " ".join(block.split())
+    assert "fibres 1 red 2 green 3 blue" in words
+    assert "12 pink" in words
+    assert "mark beyond the order: ring" in words
 
 
 @pytest.mark.parametrize("name", [None, *table_names()])
