@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from routeplan.ground.terrain_files import Window, open_terrain, window_reader
-from routeplan.ground.terrain_model import HIGHEST_M, LOWEST_M, Sheet, Terrain
+from routeplan.ground.terrain_model import HIGHEST_M, LOWEST_M, Sheet, Terrain, Tile
 from routeplan.ground.terrain_place import cell_positions, far_from_run
 from routeplan.run.model import Floats
 
@@ -28,6 +28,7 @@ KNOWN, OUTSIDE, VOID = 0, 1, 2
 """States of a height: known, off every raster, in a hole of a raster."""
 
 _BLOCK_CELLS = 512  # rasters are read in windows of about so many rows and columns
+_CHUNK = 8192  # keeps every temporary array in the processor's cache
 _RUNS_FEW = 64  # points a run, on average, that are worth a window of their own
 
 Whole = NDArray[np.intp]
@@ -76,62 +77,81 @@ def heights_at(terrain: Terrain, lonlat: Floats) -> Heights:
     .. [1] Bilinear interpolation, any textbook of numerical analysis.
     """
     heights = np.full(len(lonlat), np.nan)
-    state = np.full(len(lonlat), OUTSIDE, dtype=np.uint8)
-    rest: Whole | slice = slice(None)
     for sheet in terrain.sheets:
-        col, row = cell_positions(sheet, lonlat[rest])
-        inside = (col >= -0.5) & (col <= sheet.cols - 0.5) & (row >= -0.5)
-        inside &= row <= sheet.rows - 0.5
-        if inside.all() and isinstance(rest, slice):
+        unknown = np.isnan(heights)
+        rest = np.flatnonzero(unknown)
+        every = len(rest) == len(lonlat)
+        col, row = cell_positions(sheet, lonlat if every else lonlat[rest])
+        if every and _is_all_inside(sheet, col, row):
             heights = _sheet_heights(sheet, col, row)
-            state = np.where(np.isnan(heights), VOID, KNOWN).astype(np.uint8)
-        elif inside.any():
-            at = np.flatnonzero(inside) if isinstance(rest, slice) else rest[inside]
-            found = _sheet_heights(sheet, col[inside], row[inside])
-            heights[at] = found
-            # In a sheet's box but in none of its tiles is outside as well; see `_sheet_heights`.
-            state[at] = np.where(np.isnan(found), VOID, KNOWN)
-        rest = np.flatnonzero(np.isnan(heights))
-        if not len(rest):
+        else:
+            inside = _is_inside(sheet, col, row)
+            if inside.any():
+                heights[rest[inside]] = _sheet_heights(sheet, col[inside], row[inside])
+        if not np.isnan(heights).any():
             break
-    _mark_outside(terrain, lonlat, state)
-    return Heights(heights_m=heights, state=state)
+    return Heights(heights_m=heights, state=_states(terrain, lonlat, heights))
 
 
-def _mark_outside(terrain: Terrain, lonlat: Floats, state: NDArray[np.uint8]) -> None:
-    """Set to OUTSIDE what is on no tile though within the box of a sheet of several."""
-    for at in np.array_split(np.flatnonzero(state == VOID), 1):
-        on_tile = np.zeros(len(at), dtype=bool)
-        for sheet in terrain.sheets:
-            col, row = cell_positions(sheet, lonlat[at])
-            for (row0, col0), tile in zip(sheet.places, sheet.tiles, strict=True):
-                inside = (col >= col0 - 0.5) & (col <= col0 + tile.cols - 0.5)
-                inside &= (row >= row0 - 0.5) & (row <= row0 + tile.rows - 0.5)
-                on_tile |= inside
-        state[at[~on_tile]] = OUTSIDE
+def _is_all_inside(sheet: Sheet, col: Floats, row: Floats) -> bool:
+    if not len(col):
+        return False
+    return bool(
+        col.min() >= -0.5
+        and col.max() <= sheet.cols - 0.5
+        and row.min() >= -0.5
+        and row.max() <= sheet.rows - 0.5
+    )
+
+
+def _is_inside(
+    box: Sheet | Tile, col: Floats, row: Floats, *, row0: int = 0, col0: int = 0
+) -> NDArray[np.bool_]:
+    return np.asarray(
+        (col >= col0 - 0.5)
+        & (col <= col0 + box.cols - 0.5)
+        & (row >= row0 - 0.5)
+        & (row <= row0 + box.rows - 0.5)
+    )
+
+
+def _states(terrain: Terrain, lonlat: Floats, heights_m: Floats) -> NDArray[np.uint8]:
+    """Return what is known, and of the rest what lies on some tile and what on none."""
+    state = np.zeros(len(lonlat), dtype=np.uint8)
+    unknown = np.flatnonzero(np.isnan(heights_m))
+    if not len(unknown):
+        return state
+    on_tile = np.zeros(len(unknown), dtype=bool)
+    for sheet in terrain.sheets:
+        col, row = cell_positions(sheet, lonlat[unknown])
+        for (row0, col0), tile in zip(sheet.places, sheet.tiles, strict=True):
+            on_tile |= _is_inside(tile, col, row, row0=row0, col0=col0)
+    state[unknown] = np.where(on_tile, VOID, OUTSIDE)
+    return state
 
 
 def _sheet_heights(sheet: Sheet, col: Floats, row: Floats) -> Floats:
     """Return heights at positions within the outer edges of a sheet's box, NaN where unknown."""
-    col = np.clip(col, 0.0, sheet.cols - 1.0)
-    row = np.clip(row, 0.0, sheet.rows - 1.0)
-    left = np.minimum(col.astype(np.int32), max(sheet.cols - 2, 0))
-    top = np.minimum(row.astype(np.int32), max(sheet.rows - 2, 0))
     heights = np.empty(len(col))
     with window_reader(sheet) as read:
-        for at in _windows(sheet, left, top):
-            heights[at] = _bilinear(sheet, read, (col[at], row[at]), (left[at], top[at]))
+        for at in _windows(sheet, col, row):
+            heights[at] = _window_heights(sheet, read, col[at], row[at])
     return heights
 
 
-def _windows(
-    sheet: Sheet, left: NDArray[np.int32], top: NDArray[np.int32]
-) -> Iterator[Whole | slice]:
+def _windows(sheet: Sheet, col: Floats, row: Floats) -> Iterator[Whole | slice]:
     """Yield the points of one window after the other, as they come or sorted."""
     height, width = _window_cells(sheet)
-    window = (top // height) * (sheet.cols // width + 1) + left // width
+    across = sheet.cols // width + 1
+    count = (sheet.rows // height + 1) * across
+    window = np.empty(len(col), dtype=np.uint16 if count < 65536 else np.int64)
+    for begin in range(0, len(col), _CHUNK):
+        part = slice(begin, begin + _CHUNK)
+        # A point on a bound may go to either side: a window is read as wide as its points need.
+        up = (np.maximum(row[part], 0.0) * (1.0 / height)).astype(np.int64)
+        window[part] = up * across + (np.maximum(col[part], 0.0) * (1.0 / width)).astype(np.int64)
     ends = np.append(np.flatnonzero(window[1:] != window[:-1]) + 1, len(window))
-    if len(ends) * _RUNS_FEW <= len(window) + 64 * _RUNS_FEW:
+    if (len(ends) - 64) * _RUNS_FEW <= len(window):
         begin = 0
         for end in ends.tolist():
             yield slice(begin, end)
@@ -150,35 +170,46 @@ def _window_cells(sheet: Sheet) -> tuple[int, int]:
     return height, width
 
 
-def _bilinear(
-    sheet: Sheet,
-    read: Read,
-    place: tuple[Floats, Floats],
-    corner: tuple[NDArray[np.int32], NDArray[np.int32]],
-) -> Floats:
-    col, row = place
-    left, top = corner
-    c0, r0 = int(left.min()), int(top.min())
-    c1 = min(int(left.max()) + 2, sheet.cols)
-    r1 = min(int(top.max()) + 2, sheet.rows)
+def _window_heights(sheet: Sheet, read: Read, col: Floats, row: Floats) -> Floats:
+    c0, c1 = _bounds(col, sheet.cols)
+    r0, r1 = _bounds(row, sheet.rows)
     stored, void = read(r0, r1, c0, c1)
-    first = (top - r0).astype(np.intp) * (c1 - c0) + (left - c0)
-    right, down = int(c1 - c0 > 1), (c1 - c0) * int(r1 - r0 > 1)
+    heights = np.empty(len(col))
+    for begin in range(0, len(col), _CHUNK):
+        part = slice(begin, begin + _CHUNK)
+        heights[part] = _bilinear(sheet, stored, void, col[part] - c0, row[part] - r0)
+    tile = sheet.tiles[0]
+    if tile.factor_m != 1.0 or tile.offset_m:
+        heights = heights * tile.factor_m + tile.offset_m
+    return heights
+
+
+def _bounds(at: Floats, count: int) -> tuple[int, int]:
+    """Return the first and one beyond the last cell that bear on positions."""
+    first = min(max(int(at.min()), 0), max(count - 2, 0))
+    return first, min(max(int(at.max()), first) + 2, count)
+
+
+def _bilinear(
+    sheet: Sheet, stored: NDArray[np.generic], void: float | None, col: Floats, row: Floats
+) -> Floats:
+    """Return stored values between centres of a window's cells, NaN where one is unknown."""
+    rows, cols = stored.shape
+    np.clip(col, 0.0, cols - 1.0, out=col)
+    np.clip(row, 0.0, rows - 1.0, out=row)
+    left = np.minimum(col.astype(np.intp), max(cols - 2, 0))
+    top = np.minimum(row.astype(np.intp), max(rows - 2, 0))
+    across, along = np.subtract(col, left, out=col), np.subtract(row, top, out=row)
+    first = top
+    first *= cols
+    first += left
+    right, down = int(cols > 1), cols * int(rows > 1)
     flat = stored.ravel()
     corners = [flat.take(first + step) for step in (0, right, down, down + right)]
     unknown = _unknown(sheet, corners, void)
     nw, ne, sw, se = (values.astype(np.float64) for values in corners)
-    across, along = col - left, row - top
-    if unknown is not None:
-        bears = [
-            (across < 1.0) & (along < 1.0),
-            (across > 0.0) & (along < 1.0),
-            (across < 1.0) & (along > 0.0),
-            (across > 0.0) & (along > 0.0),
-        ]
-        lost = np.any([miss & bear for miss, bear in zip(unknown, bears, strict=True)], axis=0)
-        for values, miss in zip((nw, ne, sw, se), unknown, strict=True):
-            values[miss] = 0.0
+    for values, miss in zip((nw, ne, sw, se), unknown, strict=False):
+        values[miss] = 0.0
     ne -= nw
     se -= sw
     ne *= across
@@ -188,25 +219,38 @@ def _bilinear(
     sw -= nw
     sw *= along
     nw += sw
-    tile = sheet.tiles[0]
-    if tile.factor_m != 1.0 or tile.offset_m:
-        nw = nw * tile.factor_m + tile.offset_m
-    if unknown is not None:
-        nw[lost] = np.nan
+    if unknown:
+        nw[_lost(unknown, across, along)] = np.nan
     return nw
 
 
 def _unknown(
     sheet: Sheet, corners: list[NDArray[np.generic]], void: float | None
-) -> list[NDArray[np.bool_]] | None:
-    """Return at which corners the height is unknown or impossible, or None if at none."""
+) -> list[NDArray[np.bool_]]:
+    """Return at which corners the height is unknown or impossible; nothing if at none."""
     tile = sheet.tiles[0]
     limits = [(limit - tile.offset_m) / tile.factor_m for limit in (LOWEST_M, HIGHEST_M)]
     low, high = min(limits), max(limits)
+    lowest = min(float(values.min()) for values in corners)
+    highest = max(float(values.max()) for values in corners)
+    is_void_met = void is not None and lowest <= void <= highest
+    if low < lowest and highest < high and not is_void_met:
+        return []
     unknown = []
     for values in corners:
         known = (values > low) & (values < high)  # type: ignore[operator]
-        if void is not None and low < void < high:
-            known &= values != void
-        unknown.append(~known)
-    return unknown if any(miss.any() for miss in unknown) else None
+        unknown.append(~known if void is None else ~known | (values == void))
+    return unknown
+
+
+def _lost(unknown: list[NDArray[np.bool_]], across: Floats, along: Floats) -> NDArray[np.bool_]:
+    """Return at which points an unknown corner bears on the height."""
+    bears = (
+        (across < 1.0) & (along < 1.0),
+        (across > 0.0) & (along < 1.0),
+        (across < 1.0) & (along > 0.0),
+        (across > 0.0) & (along > 0.0),
+    )
+    return np.asarray(
+        np.any([miss & bear for miss, bear in zip(unknown, bears, strict=True)], axis=0)
+    )

@@ -51,7 +51,7 @@ def misplaced(tile: Tile) -> Problem | None:
         what = f"declares the grid {crs_label(crs)}, but its corner {shown} looks like degrees"
         return Problem(where=tile.file, what=what, remedy=remedy)
     if not _is_in_area(crs, x, y):
-        area = crs.area_of_use
+        area = _with_area(crs).area_of_use
         made_for = f"made for {area.name}" if area else "which does not reach there"
         what = f"lies nowhere near where its CRS {crs_label(crs)} is used"
         return Problem(where=tile.file, what=what, value=shown, limit=made_for, remedy=remedy)
@@ -71,7 +71,7 @@ def _is_in_area(crs: pyproj.CRS, x: Floats, y: Floats) -> bool:
     reached = np.isfinite(lon) & np.isfinite(lat)
     if not reached.any():
         return False
-    area = crs.area_of_use
+    area = _with_area(crs).area_of_use
     if area is None:
         return True
     width = (area.east - area.west) % 360.0 or 360.0
@@ -81,6 +81,12 @@ def _is_in_area(crs: pyproj.CRS, x: Floats, y: Floats) -> bool:
     inside &= lat[reached] >= area.south - _AREA_MARGIN_DEG
     inside &= lat[reached] <= area.north + _AREA_MARGIN_DEG
     return bool(inside.any())
+
+
+def _with_area(crs: pyproj.CRS) -> pyproj.CRS:
+    """Return a CRS that knows where it is used; the text of a CRS mostly leaves that out."""
+    code = None if crs.area_of_use else crs.to_authority(min_confidence=70)
+    return pyproj.CRS.from_authority(*code) if code else crs
 
 
 def far_from_run(terrain: Terrain, lonlat: Floats) -> Problem | None:
