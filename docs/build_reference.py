@@ -23,6 +23,7 @@ from routeplan.sheets.write import LIST_NAME, SHEET_NAMES
 
 __all__ = ["PAGES", "commands_page", "main", "run_file_page", "run_file_schema_text", "sheets_page"]
 
+_OPTIONS_SHOWN = 4  # in a heading; more of them only stand in the table below it
 _MADE = "<!-- Made from the code by docs/build_reference.py: change the code, then run it. -->"
 
 _INTRODUCTIONS = {  # what a reader has to know before the keys of a section of a run file
@@ -215,7 +216,8 @@ def _names_part() -> str:
         f"- `cable.colour_code`: {_listed(colour_codes())}.",
         f"- `loss.connector_grade`, `panel.grade`: {_listed(connector_grades())}.",
         f"- `circuit.part.name`: {_listed(optical_parts())}.",
-        f"- `circuit.interface`: `any`, one of `[interface.NAME]`, or {_listed(interface_classes())}.",
+        f"- `circuit.interface`: `any`, one of `[interface.NAME]`, or "
+        f"{_listed(interface_classes())}.",
         "\n`routeplan tables fibres`, `colours` and `interfaces` show them with sources.\n",
     ]
     return "\n".join(lines)
@@ -262,6 +264,9 @@ def _actions(parser: argparse.ArgumentParser) -> list[argparse.Action]:
 
 def _usage(name: str, command: argparse.ArgumentParser) -> str:
     words = [f"routeplan {name}"]
+    options = [action for action in _actions(command) if action.option_strings]
+    if len(options) > _OPTIONS_SHOWN:
+        return f"{words[0]} [OPTIONS]"
     for action in _actions(command):
         if action.option_strings:
             words.append(f"[{_label(action)}]")
