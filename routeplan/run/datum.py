@@ -23,6 +23,7 @@ __all__ = ["PlacedShape", "placed_shapes"]
 
 _STRAIGHT_M = 1000.0  # house rule: below it a straight line of a grid is a geodesic to a millimetre
 _OUTSIDE_DEG = 2.0  # house rule: how far beyond a grid's area of use coordinates may lie unnoticed
+_HEIGHT_MOST = 50_000.0  # house rule: in metres or feet, beyond any ground or sea floor
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -97,12 +98,15 @@ def _finite(layer: Layer, trouble: Trouble) -> Layer:
         bad = ~np.isfinite(shape.xy).all(axis=1)
         if shape.z is not None:
             bad |= np.isinf(shape.z)
-        if bad.any():
-            problem = Problem(
-                where=str(shape.source),
-                what="has a coordinate that is not a finite number",
-                value=f"vertex {int(np.argmax(bad)) + 1}",
+        high = np.zeros(len(bad), dtype=bool) if shape.z is None else np.abs(shape.z) > _HEIGHT_MOST
+        if bad.any() or high.any():
+            what = (
+                "has a coordinate that is not a finite number"
+                if bad.any()
+                else "has a height that is nowhere on earth"
             )
+            vertex = int(np.argmax(bad if bad.any() else high)) + 1
+            problem = Problem(where=str(shape.source), what=what, value=f"vertex {vertex}")
             trouble.add(GeometryError, problem, file=layer.file)
         else:
             good.append(shape)
@@ -113,7 +117,7 @@ def _is_finite(layer: Layer) -> bool:
     heights = [shape.z for shape in layer.shapes if shape.z is not None]
     return bool(
         np.isfinite(_all_xy(layer)).all()
-        and not (heights and np.isinf(np.concatenate(heights)).any())
+        and not (heights and (np.abs(np.concatenate(heights)) > _HEIGHT_MOST).any())
     )
 
 

@@ -132,7 +132,8 @@ def _layer(path: Path, name: str, *, file: str, trouble: Trouble) -> Layer | Non
     meta, fids, wkb, columns = read
     layer = Layer(file=file, name=name, crs=_declared(meta["crs"]), default_crs=None, loose=True)
     try:
-        geometries = shapely.from_wkb(wkb) if wkb is not None else []
+        with np.errstate(invalid="ignore"):  # what is no number is told of below, where it is
+            geometries = shapely.from_wkb(wkb) if wkb is not None else []
     except (shapely.errors.ShapelyError, TypeError, ValueError) as error:
         _refuse(trouble, layer.where, "has a geometry that cannot be read", value=str(error)[:200])
         return None
