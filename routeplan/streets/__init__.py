@@ -1,0 +1,1 @@
+"""Finding a way along streets: the network, the best way, other ways, two separate ways, trees."""
