@@ -4,10 +4,19 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass
 
 from routeplan.sheets.lookup import Row, numbers, rows_at, text_at, value_at
 from routeplan.sheets.map_style import LineStyle, line_style
+from routeplan.sheets.svg_parts import (
+    HAIR,
+    INK,
+    MUTED,
+    PAPER,
+    Scale,
+    curve_path,
+    nice_step,
+    svg_text,
+)
 from routeplan.sheets.text import number_text, plain, safe
 
 __all__ = ["line_svg", "nice_step", "profile_svg"]
@@ -15,26 +24,6 @@ __all__ = ["line_svg", "nice_step", "profile_svg"]
 _WIDTH, _HEIGHT = 760, 220
 _LEFT, _RIGHT, _TOP, _BOTTOM = 44, _WIDTH - 44, 36, _HEIGHT - 44
 _BAND_Y = _BOTTOM + 12
-_INK, _MUTED, _HAIR, _PAPER = "#1c2326", "#5d6a70", "#e4e0d2", "#ffffff"
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class _Scale:
-    """A straight scale from values to drawing units, with a tick every `step`."""
-
-    low: float
-    high: float
-    step: float
-    start: float
-    end: float
-
-    def at(self, value: float) -> float:
-        part = (value - self.low) / ((self.high - self.low) or 1.0)
-        return self.start + part * (self.end - self.start)
-
-    def ticks(self) -> list[float]:
-        count = math.floor((self.high - self.low) / self.step + 1e-9)
-        return [self.low + number * self.step for number in range(count + 1)]
 
 
 def profile_svg(document: Mapping[str, object], leg_number: int = 0) -> str:
@@ -55,7 +44,7 @@ def profile_svg(document: Mapping[str, object], leg_number: int = 0) -> str:
     """
     leg = rows_at(document, "legs")[leg_number]
     length_m = value_at(leg, "ground_m") or 0.0
-    along = _Scale(
+    along = Scale(
         low=0.0, high=length_m, step=nice_step(length_m, 10) or 1.0, start=_LEFT, end=_RIGHT
     )
     joints = [
@@ -70,8 +59,8 @@ def profile_svg(document: Mapping[str, object], leg_number: int = 0) -> str:
         *_axis(along, length_m),
         *_ways(leg, along),
         *_joints(joints, along),
-        _text(_LEFT - 40, 11, f"{text_at(leg, 'from')}", bold=True),
-        _text(_RIGHT + 40, 11, f"{text_at(leg, 'to')}", anchor="end", bold=True),
+        svg_text(_LEFT - 40, 11, f"{text_at(leg, 'from')}", bold=True),
+        svg_text(_RIGHT + 40, 11, f"{text_at(leg, 'to')}", anchor="end", bold=True),
     ]
     label = safe(f"Height and loss along {text_at(leg, 'name')}")
     return (
@@ -80,57 +69,41 @@ def profile_svg(document: Mapping[str, object], leg_number: int = 0) -> str:
     )
 
 
-def nice_step(span: float, count: float) -> float:
-    """
-    Return the smallest round step that divides a span into about `count` parts or fewer.
-
-    Examples
-    --------
-    >>> nice_step(20000.0, 10), nice_step(7.4, 4)
-    (2000.0, 2.0)
-    """
-    if span <= 0:
-        return 0.0
-    rough = span / count
-    power = 10.0 ** math.floor(math.log10(rough))
-    return next(each * power for each in (1, 2, 2.5, 5, 10) if each * power >= rough * 0.999999)
-
-
-def _heights(leg: Row, along: _Scale) -> tuple[int, list[str]]:
+def _heights(leg: Row, along: Scale) -> tuple[int, list[str]]:
     """Return how many rows the grid has, and the height profile on it."""
     ground_m = numbers(leg.get("line_ground_m"))
     line = leg.get("line")
     heights_m = [_third(vertex) for vertex in line] if isinstance(line, list) else []
     known_m = [height_m for height_m in heights_m if height_m is not None]
     if not known_m:
-        return 4, [_text(_LEFT + 6, _TOP + 14, "No heights in the input.", colour=_MUTED)]
+        return 4, [svg_text(_LEFT + 6, _TOP + 14, "No heights in the input.", colour=MUTED)]
     step_m = nice_step(max(max(known_m) - min(known_m), 10.0), 4)
     low_m = math.floor(min(known_m) / step_m) * step_m
     high_m = math.ceil(max(known_m) / step_m) * step_m
-    scale = _Scale(low=low_m, high=high_m, step=step_m, start=_BOTTOM, end=_TOP)
+    scale = Scale(low=low_m, high=high_m, step=step_m, start=_BOTTOM, end=_TOP)
     pairs = [
         (along.at(at_m), scale.at(height_m))
         for at_m, height_m in zip(ground_m, heights_m, strict=False)
         if height_m is not None
     ]
-    edge = _path(_thinned(pairs))
+    edge = curve_path(pairs)
     closed = f"M{pairs[0][0]:.1f} {_BOTTOM}L{edge[1:]}L{pairs[-1][0]:.1f} {_BOTTOM}Z"
     grid = [_gridline(scale.at(tick), tick) for tick in scale.ticks()]
     return len(scale.ticks()) - 1, [
-        f'<path d="{closed}" fill="{_HAIR}"/>',
+        f'<path d="{closed}" fill="{HAIR}"/>',
         *grid,
         f'<path d="{edge}" fill="none" stroke="#8b8778" stroke-width="1.2"/>',
-        _text(_LEFT - 40, _TOP - 11, "Height, m", colour=_MUTED),
+        svg_text(_LEFT - 40, _TOP - 11, "Height, m", colour=MUTED),
     ]
 
 
 def _gridline(y: float, height_m: float) -> str:
-    return f'<path d="M{_LEFT} {y:.1f}H{_RIGHT}" stroke="#d8d4c8" stroke-width=".6"/>' + _text(
-        _LEFT - 6, y + 3.5, number_text(height_m), anchor="end", colour=_MUTED
+    return f'<path d="M{_LEFT} {y:.1f}H{_RIGHT}" stroke="#d8d4c8" stroke-width=".6"/>' + svg_text(
+        _LEFT - 6, y + 3.5, number_text(height_m), anchor="end", colour=MUTED
     )
 
 
-def _loss(document: Row, leg_number: int, along: _Scale, rows_count: int) -> list[str]:
+def _loss(document: Row, leg_number: int, along: Scale, rows_count: int) -> list[str]:
     """Return the first circuit's loss along this leg, if the document holds one."""
     name = text_at(rows_at(document, "legs")[leg_number], "name")
     for circuit in rows_at(document, "circuits"):
@@ -148,49 +121,46 @@ def _loss(document: Row, leg_number: int, along: _Scale, rows_count: int) -> lis
     return []
 
 
-def _loss_parts(rows: Sequence[Row], along: _Scale, rows_count: int, title: str) -> list[str]:
+def _loss_parts(rows: Sequence[Row], along: Scale, rows_count: int, title: str) -> list[str]:
     most_db = max(value_at(row, "loss_db") or 0.0 for row in rows)
     step_db = nice_step(max(most_db, 0.1), rows_count)
-    scale = _Scale(low=0.0, high=step_db * rows_count, step=step_db, start=_BOTTOM, end=_TOP)
-    curve = _path(
-        _thinned(
-            [
-                (
-                    along.at(value_at(row, "ground_m") or 0.0),
-                    scale.at(value_at(row, "loss_db") or 0.0),
-                )
-                for row in rows
-            ]
-        )
+    scale = Scale(low=0.0, high=step_db * rows_count, step=step_db, start=_BOTTOM, end=_TOP)
+    curve = curve_path(
+        [
+            (along.at(value_at(row, "ground_m") or 0.0), scale.at(value_at(row, "loss_db") or 0.0))
+            for row in rows
+        ]
     )
     digits = 0 if step_db >= 1 and step_db == round(step_db) else 1
     ticks = [
-        _text(_RIGHT + 6, scale.at(tick) + 3.5, number_text(tick, digits=digits))
+        svg_text(_RIGHT + 6, scale.at(tick) + 3.5, number_text(tick, digits=digits))
         for tick in scale.ticks()
     ]
     return [
-        f'<path d="{curve}" fill="none" stroke="{_PAPER}" stroke-width="3.6"/>',
-        f'<path d="{curve}" fill="none" stroke="{_INK}" stroke-width="1.6"/>',
+        f'<path d="{curve}" fill="none" stroke="{PAPER}" stroke-width="3.6"/>',
+        f'<path d="{curve}" fill="none" stroke="{INK}" stroke-width="1.6"/>',
         *ticks,
-        _text(_RIGHT + 40, _TOP - 11, title, anchor="end"),
+        svg_text(_RIGHT + 40, _TOP - 11, title, anchor="end"),
     ]
 
 
-def _axis(along: _Scale, length_m: float) -> list[str]:
+def _axis(along: Scale, length_m: float) -> list[str]:
     digits = next(d for d in range(4) if d == 3 or (along.step / 1000 * 10**d) % 1 < 1e-9)
     ticks = [tick for tick in along.ticks() if tick < length_m - along.step * 0.45]
     labels = [
-        _text(along.at(tick), _HEIGHT - 6, number_text(tick / 1000, digits=digits), anchor="middle")
+        svg_text(
+            along.at(tick), _HEIGHT - 6, number_text(tick / 1000, digits=digits), anchor="middle"
+        )
         for tick in ticks
     ]
     marks = "".join(f"M{along.at(tick):.1f} {_BAND_Y + 9}v5" for tick in (*ticks, length_m))
-    end = _text(
+    end = svg_text(
         _RIGHT + 40, _HEIGHT - 6, f"{number_text(length_m / 1000, digits=3)} km", anchor="end"
     )
     return [f'<path d="{marks}" stroke="#8b8778" stroke-width=".8"/>', *labels, end]
 
 
-def _ways(leg: Row, along: _Scale) -> list[str]:
+def _ways(leg: Row, along: Scale) -> list[str]:
     parts = []
     for stretch in rows_at(leg, "stretches"):
         start = along.at(value_at(stretch, "from_ground_m") or 0.0)
@@ -213,53 +183,30 @@ def line_svg(style: LineStyle, start: float, end: float, y: float) -> str:
     drawn: dict[str, Callable[[], str]] = {
         "ticks": lambda: line(style.colour, width) + line(style.colour, 8, (1.4, 9)),
         "dots": lambda: line(style.colour, width, style.dash_px, "round"),
-        "double": lambda: line(style.colour, width) + line(_PAPER, width - 2.4),
+        "double": lambda: line(style.colour, width) + line(PAPER, width - 2.4),
         "rail": lambda: (
-            line(style.colour, width) + line(_PAPER, width - 2.4) + line(style.colour, 1, (4, 4))
+            line(style.colour, width) + line(PAPER, width - 2.4) + line(style.colour, 1, (4, 4))
         ),
     }
     return drawn.get(style.form, lambda: line(style.colour, width, style.dash_px))()
 
 
-def _joints(joints: Sequence[Row], along: _Scale) -> list[str]:
+def _joints(joints: Sequence[Row], along: Scale) -> list[str]:
     parts, free_from = [], 0.0
     for joint in joints:
         x = along.at(value_at(joint, "ground_m") or 0.0)
         name = plain(text_at(joint, "name"))
-        fill = _PAPER if joint.get("assumed") else _INK
+        fill = PAPER if joint.get("assumed") else INK
         parts.append(
             f'<path d="M{x:.1f} {_TOP}V{_BOTTOM}" stroke="#8b8778" stroke-width=".7" '
             f'stroke-dasharray="2 2.5"/><path d="M{x:.1f} {_BAND_Y - 6}l6 6l-6 6l-6 -6Z" '
-            f'fill="{fill}" stroke="{_INK}" stroke-width="1.3"/>'
+            f'fill="{fill}" stroke="{INK}" stroke-width="1.3"/>'
         )
         half = 3.2 * len(name) + 3
         if x - half >= max(free_from, _LEFT + 22) and x + half < _RIGHT - 90:
-            parts.append(_text(x, _TOP - 11, name, anchor="middle", bold=True))
+            parts.append(svg_text(x, _TOP - 11, name, anchor="middle", bold=True))
             free_from = x + half
     return parts
-
-
-def _thinned(pairs: Sequence[tuple[float, float]]) -> list[tuple[float, float]]:
-    """Return the points of a curve that lie at least half a drawing unit apart, and the last."""
-    kept = [pairs[0]]
-    for x, y in pairs[1:-1]:
-        if x - kept[-1][0] >= 0.5 or abs(y - kept[-1][1]) >= 0.5:
-            kept.append((x, y))
-    return [*kept, pairs[-1]]
-
-
-def _path(pairs: Sequence[tuple[float, float]]) -> str:
-    return "M" + "L".join(f"{x:.1f} {y:.1f}" for x, y in pairs)
-
-
-def _text(
-    x: float, y: float, text: str, *, anchor: str = "start", colour: str = _INK, bold: bool = False
-) -> str:
-    weight = ' font-weight="600"' if bold else ""
-    return (
-        f'<text x="{x:.1f}" y="{y:.1f}" text-anchor="{anchor}" fill="{colour}"{weight}>'
-        f"{safe(text)}</text>"
-    )
 
 
 def _third(vertex: object) -> float | None:
