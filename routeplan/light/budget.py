@@ -174,9 +174,11 @@ def _power(
     """Return margins, overload and attenuator, as printed."""
     available = optic.available_db if optic else None
     excess: float | None = None
+    least_db = least_loss_db(lines, sigma_count=practice.sigma_count)
     if optic and optic.tx_max_dbm is not None and optic.rx_overload_dbm is not None:
-        least_db = least_loss_db(lines, sigma_count=practice.sigma_count)
         excess = printed_db(overload_db(optic.tx_max_dbm, least_db, optic.rx_overload_dbm))
+    elif optic and optic.channel_loss_min_db is not None:
+        excess = printed_db(optic.channel_loss_min_db - least_db)
     return Power(
         available_db=None if available is None else printed_db(available),
         margin_db=_left_db(available, loss.worst_db, practice.margin_db),

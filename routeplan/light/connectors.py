@@ -16,8 +16,10 @@ __all__ = [
     "Polish",
     "ReflectionRow",
     "check_mating",
+    "connector_grade",
     "connector_grades",
     "connector_loss",
+    "finish_reflection",
     "scatter_db",
 ]
 
@@ -40,10 +42,11 @@ class ConnectorGrade:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class ReflectionRow:
-    """How far below what meets it an end sends light back, at least."""
+    """How far below what meets it an end sends light back, at least; `finish` as it is sold."""
 
     name: str
     polish: Polish
+    finish: str = ""
     return_loss_db: float
     source: str
     confidence: str
@@ -69,19 +72,44 @@ def connector_loss(grade: str) -> PartLoss:
     >>> connector_loss("grade B").limit_db
     0.25
     """
-    by_name = {row.name: row for row in connector_grades()}
-    if grade not in by_name:
-        near = nearest_name(grade, by_name)
-        remedy = f'Did you mean "{near}"?' if near else f"There are {', '.join(by_name)}."
-        what = "is not a known connector grade"
-        raise InputError(Problem(where="connector", what=what, value=f'"{grade}"', remedy=remedy))
-    row = by_name[grade]
+    row = connector_grade(grade)
     return PartLoss(
         mean_db=row.mean_db,
         sigma_db=row.sigma_db,
         limit_db=row.limit_db,
         source=f"table connectors, {grade} ({row.source})",
     )
+
+
+def connector_grade(grade: str) -> ConnectorGrade:
+    """
+    Return a row of the table of grades.
+
+    Raises
+    ------
+    InputError
+        If the table has no such grade.
+    """
+    by_name = {row.name: row for row in connector_grades()}
+    if grade not in by_name:
+        near = nearest_name(grade, by_name)
+        remedy = f'Did you mean "{near}"?' if near else f"There are {', '.join(by_name)}."
+        what = "is not a known connector grade"
+        raise InputError(Problem(where="connector", what=what, value=f'"{grade}"', remedy=remedy))
+    return by_name[grade]
+
+
+def finish_reflection(finish: str) -> ReflectionRow:
+    """
+    Return what a mated pair of a finish sends back: "PC", "UPC" or "APC".
+
+    Examples
+    --------
+    >>> finish_reflection("APC").return_loss_db
+    60.0
+    """
+    rows: tuple[ReflectionRow, ...] = load_rows("reflections", ReflectionRow)
+    return next(row for row in rows if row.finish == finish)
 
 
 def scatter_db(mean_db: float, limit_db: float) -> float:

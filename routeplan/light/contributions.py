@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, TypeAlias
 
 from routeplan.light.attenuation import Attenuation, MeasuredPoint, attenuation_of, sigma_db_per_km
 from routeplan.light.bends import bend_loss
+from routeplan.light.connectors import connector_loss
 from routeplan.light.fibres import Fibre, find_fibre
 from routeplan.light.model import (
     Bend,
@@ -267,6 +268,8 @@ def _splice(practice: LossPractice) -> PartLoss:
 
 
 def _connector(practice: LossPractice) -> PartLoss:
+    if practice.connector_grade is not None:
+        return connector_loss(practice.connector_grade)
     return PartLoss(
         mean_db=practice.connector_mean_db,
         sigma_db=practice.connector_sigma_db,

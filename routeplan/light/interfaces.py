@@ -181,8 +181,12 @@ def own_optic(name: str, own: Interface) -> Optic:
         rx_sensitivity_dbm=own.rx_sensitivity_dbm,
         rx_overload_dbm=own.rx_overload_dbm,
         channel_loss_db=own.channel_loss_db,
+        channel_loss_min_db=own.channel_loss_min_db,
         penalty_db=own.penalty_db,
         dispersion_max_ps_per_nm=own.dispersion_max_ps_per_nm,
+        line_width_nm=own.line_width_nm,
+        return_loss_min_db=own.return_loss_min_db,
+        rx_return_loss_db=own.rx_return_loss_db,
         source=f"run file, interface.{name}",
         confidence="house rule",
     )

@@ -120,7 +120,12 @@ class BudgetLine:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Budget:
-    """Whether the light of one circuit arrives, at one wavelength in one direction."""
+    """
+    Whether the light of one circuit arrives, at one wavelength in one direction.
+
+    `first_day_margin_db` is what the worst loss leaves with nothing kept in hand;
+    `end_of_life_margin_db` is that less `life_lines`, at their limits.
+    """
 
     circuit: str
     wavelength_nm: float
@@ -141,3 +146,6 @@ class Budget:
     verdict: Verdict
     reasons: tuple[str, ...]
     lines: tuple[BudgetLine, ...]
+    first_day_margin_db: float | None = None
+    end_of_life_margin_db: float | None = None
+    life_lines: tuple[BudgetLine, ...] = ()

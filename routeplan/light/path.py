@@ -6,7 +6,8 @@ from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 
 from routeplan.cable.model import Cable, FibreUse, Joint, Section
-from routeplan.light.model import Direction, ExistingSpan, Glass, Mating, Path, SpliceStep, Step
+from routeplan.light.fittings import Fittings
+from routeplan.light.model import Direction, ExistingSpan, Glass, Part, Path, SpliceStep, Step
 
 __all__ = ["CableTrack", "cable_track", "circuit_paths"]
 
@@ -70,6 +71,7 @@ def circuit_paths(
     joint_at: Mapping[str, str],
     site_names: Mapping[str, str],
     ends: tuple[int, int],
+    fittings: Fittings | None = None,
 ) -> tuple[Path, Path]:
     """
     Return the path from end to end and the path back.
@@ -92,16 +94,30 @@ def circuit_paths(
         Name of every site, by node id.
     ends
         Mated pairs and pigtail splices of the whole circuit, shared between its two ends. [-]
+    fittings
+        Panels, splices, parts and bends of its own.
     """
+    fitted = fittings or Fittings()
     paths: list[Path] = []
     directions: tuple[Direction, Direction] = ("from-to", "to-from")
     for strand, direction in zip((1, 2), directions, strict=True):
         own = [use for use in uses if use.strand == strand]
         strand_uses = own or [use for use in uses if use.strand == 1]
         steps = tuple(
-            _steps(strand_uses, tracks, joint_at=joint_at, site_names=site_names, ends=ends)
+            _steps(
+                strand_uses,
+                tracks,
+                joint_at=joint_at,
+                site_names=site_names,
+                ends=ends,
+                fitted=fitted,
+            )
         )
         turned = steps if direction == "from-to" else steps[::-1]
+        receiver = _ends_of(strand_uses[-1], tracks)[1]
+        if direction == "to-from":
+            receiver = _ends_of(strand_uses[0], tracks)[0]
+        turned += _attenuator(fitted, site_names[receiver])
         paths.append(Path(circuit=circuit, direction=direction, steps=turned))
     return paths[0], paths[1]
 
@@ -113,21 +129,38 @@ def _steps(
     joint_at: Mapping[str, str],
     site_names: Mapping[str, str],
     ends: tuple[int, int],
+    fitted: Fittings,
 ) -> Iterator[Step]:
     matings, pigtails = ends
     first, last = uses[0], uses[-1]
     start = site_names[_ends_of(first, tracks)[0]]
     end = site_names[_ends_of(last, tracks)[1]]
-    yield from [Mating(where=start)] * (matings - matings // 2)
+    yield from [fitted.pair(start)] * (matings - matings // 2)
+    yield from fitted.put_at("site", start)
     yield from [SpliceStep(where=start, is_pigtail=True)] * (pigtails - pigtails // 2)
     for number, use in enumerate(uses):
         if number:
-            yield from _through(_ends_of(use, tracks)[0], joint_at, site_names)
+            node = _ends_of(use, tracks)[0]
+            yield from _through(node, joint_at, site_names, fitted)
         track = tracks[use.cable].steps
         for step in track if use.forward else reversed(track):
-            yield replace(step, fibre=use.fibre) if isinstance(step, Glass) else step
+            yield from _along(step, use.fibre, fitted)
     yield from [SpliceStep(where=end, is_pigtail=True)] * (pigtails // 2)
-    yield from [Mating(where=end)] * (matings // 2)
+    yield from fitted.put_at("site", end)
+    yield from [fitted.pair(end)] * (matings // 2)
+
+
+def _along(step: Step, fibre: int, fitted: Fittings) -> Iterator[Step]:
+    """Yield a step of a cable as a circuit meets it, and what is put behind it."""
+    match step:
+        case Glass():
+            yield replace(step, fibre=fibre)
+            yield from fitted.put_at("section", step.section)
+        case SpliceStep():
+            yield fitted.splice(step.where)
+            yield from fitted.put_at("joint", step.where)
+        case _:
+            yield step
 
 
 def _ends_of(use: FibreUse, tracks: Mapping[str, CableTrack]) -> tuple[str, str]:
@@ -135,12 +168,22 @@ def _ends_of(use: FibreUse, tracks: Mapping[str, CableTrack]) -> tuple[str, str]
     return (track.start, track.end) if use.forward else (track.end, track.start)
 
 
+def _attenuator(fitted: Fittings, site: str) -> tuple[Step, ...]:
+    if fitted.attenuator is None:
+        return ()
+    return (Part(where=site, item="attenuator", loss=fitted.attenuator),)
+
+
 def _through(
-    node: str, joint_at: Mapping[str, str], site_names: Mapping[str, str]
+    node: str, joint_at: Mapping[str, str], site_names: Mapping[str, str], fitted: Fittings
 ) -> Iterator[Step]:
+    site = site_names.get(node, "")
     if node in joint_at:
-        yield SpliceStep(where=joint_at[node])
+        yield fitted.splice(joint_at[node])
+        yield from fitted.put_at("joint", joint_at[node])
+        yield from fitted.put_at("site", site)
         return
-    site = site_names[node]
-    pigtail, mating = SpliceStep(where=site, is_pigtail=True), Mating(where=site)
-    yield from (pigtail, mating, mating, pigtail)
+    pigtail, mating = SpliceStep(where=site, is_pigtail=True), fitted.pair(site)
+    yield from (pigtail, mating)
+    yield from fitted.put_at("site", site)
+    yield from (mating, pigtail)
