@@ -58,7 +58,12 @@ def lay_ground(run: Run) -> Ground:
     ]
     points = [place for place in run.places if place.kind != "site"]
     legs, nodes, crossings, problems = _place_points(run, legs, nodes, points)
-    problems = [*network.problems, *_name_problems(groups, names), *problems]
+    problems = [
+        *network.problems,
+        *_name_problems(groups, names),
+        *_short_problems(groups, legs),
+        *problems,
+    ]
     if problems:
         raise GeometryError(problems)
     warnings = (*network.warnings, *_leg_warnings(groups, names), *_grid_warnings(legs))
@@ -144,6 +149,17 @@ def _name_problems(groups: Sequence[Sequence[Piece]], names: Sequence[str]) -> l
                 )
             )
     return problems
+
+
+def _short_problems(groups: Sequence[Sequence[Piece]], legs: Sequence[Leg]) -> Iterator[Problem]:
+    for group, leg in zip(groups, legs, strict=True):
+        if leg.length_mm == 0:
+            yield Problem(
+                where=str(group[0].drawn.line.source),
+                what=f'leg "{leg.name}" is shorter than a millimetre',
+                value=f"{leg.ellipsoid_m:.3g} m",
+                remedy="Take the line out, or check the CRS and the units of its coordinates",
+            )
 
 
 def _leg(
