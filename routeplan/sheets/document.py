@@ -14,8 +14,10 @@ from routeplan.planning import CircuitPlan, Plan, assumptions, one_fewer, splice
 from routeplan.sheets.bill import bill_rows, pigtail_counts
 from routeplan.sheets.budget_rows import budget_row
 from routeplan.sheets.cautions import cautions_for
+from routeplan.sheets.levels import level_rows, mark_rows
 from routeplan.sheets.power import power_rows
 from routeplan.sheets.rows import row_of, shaped
+from routeplan.sheets.spectrum import spectrum_row
 from routeplan.sheets.stations import station_rows
 from routeplan.sheets.tables import SCHEMA, Json, Row
 from routeplan.units import amount_from_cents, m_from_mm
@@ -270,4 +272,7 @@ def _circuit(planned: Plan, circuit: CircuitPlan) -> Row:
         verdict=circuit.verdict,
         budgets=[budget_row(budget) for budget in circuit.budgets],
         power=list(power_rows(planned, circuit)),
+        levels=list(level_rows(planned, circuit)),
+        marks=list(mark_rows(circuit)),
+        spectrum=spectrum_row(planned, circuit),
     )

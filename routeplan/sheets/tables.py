@@ -44,6 +44,14 @@ def _rows(key: str, of: str, text: str) -> Column:
     return Column(key=key, kind="rows", of=of, text=text)
 
 
+def _numbers(key: str, text: str, unit: str) -> Column:
+    return Column(key=key, kind="numbers", text=text, unit=unit, is_listed=False)
+
+
+def _power(key: str, text: str) -> Column:
+    return _number(key, text, "dBm", 3, may_be_null=True)
+
+
 def _money(key: str, text: str, **more: object) -> Column:
     return _number(key, text, "currency", 2, **more)
 
@@ -369,6 +377,77 @@ _TABLES = (
                 text="Nominal loss along it.",
                 is_listed=False,
             ),
+            Column(
+                key="levels",
+                kind="rows",
+                of="levels",
+                text="Losses along its glass, for the first budget of each wavelength.",
+                is_listed=False,
+            ),
+            Column(
+                key="marks",
+                kind="rows",
+                of="marks",
+                text="What is met along its glass, from one end to the other.",
+                is_listed=False,
+            ),
+            Column(
+                key="spectrum",
+                kind="row",
+                of="spectrum",
+                text="Attenuation of its glass against wavelength.",
+                is_listed=False,
+            ),
+        ),
+    ),
+    Table(
+        name="levels",
+        title="Levels along circuits",
+        path=("circuits", "levels"),
+        columns=(
+            _number("wavelength_nm", "Wavelength.", "nm", 3),
+            _choice("direction", "Way the light goes", "from-to", "to-from"),
+            _power("tx_min_dbm", "Least launched."),
+            _power("tx_max_dbm", "Most launched."),
+            _power("rx_sensitivity_dbm", "Least the receiver needs, penalties left out."),
+            _power("rx_overload_dbm", "Most the receiver stands."),
+            _numbers("glass_m", "Glass from the end that sends.", "m"),
+            _numbers("nominal_db", "Lost so far, means.", "dB"),
+            _numbers("least_db", "Lost so far, means less k standard deviations.", "dB"),
+            _numbers("worst_db", "Lost so far, everything at its limit.", "dB"),
+        ),
+    ),
+    Table(
+        name="marks",
+        title="Met along circuits",
+        path=("circuits", "marks"),
+        columns=(
+            _metres("glass_m", "Glass from the end the circuit starts at."),
+            _choice("kind", "What is met", "joint", "panel", "part", "bend"),
+            _text("name", "Its name, or where it is."),
+        ),
+    ),
+    Table(
+        name="spectrum",
+        title="Attenuation against wavelength",
+        path=("circuits", "spectrum"),
+        is_single=True,
+        columns=(
+            Column(key="fibre_types", kind="texts", text="Types of its fibre."),
+            _numbers("wavelengths_nm", "Wavelengths.", "nm"),
+            _numbers("typical_db_per_km", "As delivered, the mean of its glass.", "dB/km"),
+            _numbers("max_db_per_km", "As ordered, the mean of its glass.", "dB/km"),
+            _rows("ceilings", "ceilings", "What the recommendation allows, for glass of one type."),
+        ),
+    ),
+    Table(
+        name="ceilings",
+        title="Attenuation allowed",
+        path=("circuits", "spectrum", "ceilings"),
+        columns=(
+            _number("wavelength_min_nm", "From.", "nm", 3),
+            _number("wavelength_max_nm", "To.", "nm", 3),
+            _number("max_db_per_km", "Allowed.", "dB/km", 3),
         ),
     ),
     Table(
