@@ -2,48 +2,27 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass, replace
 from typing import Literal
 
 from routeplan.cable.assembly import fewer_joints, put_together
-from routeplan.cable.fibres import assign_fibres
 from routeplan.cable.layout import LaidCable, lay_cables
-from routeplan.cable.model import FibreUse, Layout, Splice
-from routeplan.cable.rulers import existing_glass_mm
+from routeplan.cable.model import Layout, Splice
 from routeplan.cable.schedule import joint_splice_count, splice_rows
-from routeplan.cable.way import existing_name
+from routeplan.check import Check
+from routeplan.circuits import CircuitPlan, joint_figures, light_circuits
 from routeplan.errors import InputError, Problem
 from routeplan.ground.legs import lay_ground
 from routeplan.ground.model import Ground
-from routeplan.light.budget import circuit_budget, circuit_verdict
-from routeplan.light.interfaces import (
-    channels,
-    check_fibre_count,
-    check_wavelengths,
-    find_interface,
-)
-from routeplan.light.model import Budget, ExistingSpan, Path, Verdict
-from routeplan.light.path import CableTrack, cable_track, circuit_paths
 from routeplan.memo import Memo, remembered, swept
 from routeplan.run.defaults import AssumedValue, assumed_values, default_value
 from routeplan.run.model import Run
 from routeplan.run.practice import CircuitOrder
-from routeplan.units import m_from_mm
-from routeplan.verify import Check, plan_checks
+from routeplan.verify import plan_checks
+from routeplan.verify_light import light_warnings
 
 __all__ = ["CircuitPlan", "Plan", "assumptions", "one_fewer", "plan", "splices"]
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class CircuitPlan:
-    """One circuit: its order, fibres, paths both ways and budgets."""
-
-    order: CircuitOrder
-    uses: tuple[FibreUse, ...]
-    paths: tuple[Path, Path]
-    budgets: tuple[Budget, ...]
-    verdict: Verdict
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -97,7 +76,7 @@ def plan(run: Run, *, memo: Memo | None = None) -> Plan:
     orders, order_warnings = _orders(run, ground)
     laid = lay_cables(run, ground, memo=memo)
     layout = put_together(run, ground, laid)
-    circuits = _light_circuits(run, ground, laid, layout, orders)
+    circuits = light_circuits(run, ground, laid, layout, orders)
     uses = [use for circuit in circuits for use in circuit.uses]
     counts = joint_splice_count(layout.joints, layout.sections, layout.cables, uses)
     return Plan(
@@ -107,12 +86,13 @@ def plan(run: Run, *, memo: Memo | None = None) -> Plan:
         layout=layout,
         circuits=circuits,
         splice_counts=counts,
-        checks=plan_checks(run, layout, [b for c in circuits for b in c.budgets]),
+        checks=plan_checks(run, layout, circuits),
         warnings=(
             *run.warnings,
             *ground.warnings,
             *order_warnings,
             *(warning for cable in laid for warning in cable.warnings),
+            *light_warnings(run, layout, circuits),
         ),
     )
 
@@ -154,104 +134,10 @@ def _default_order(run: Run, start: str, end: str) -> CircuitOrder:
     return CircuitOrder.model_validate({**values, **ends})
 
 
-def _light_circuits(
-    run: Run,
-    ground: Ground,
-    laid: Sequence[LaidCable],
-    layout: Layout,
-    orders: Sequence[CircuitOrder],
-) -> tuple[CircuitPlan, ...]:
-    _refuse_optics(run, orders)
-    site_nodes = {node.name: node.id for node in ground.nodes if node.is_site}
-    glass_mm = {rulers.cable: int(rulers.glass_mm[-1]) for rulers in layout.rulers}
-    uses = assign_fibres(orders, layout.cables, site_nodes=site_nodes, glass_mm=glass_mm)
-    tracks = {track.cable: track for track in _tracks(laid, layout)}
-    joint_at = {joint.node: joint.id for joint in layout.joints if joint.node}
-    site_names = {node_id: name for name, node_id in site_nodes.items()}
-    loss = run.practice.loss
-    circuits = []
-    for order in orders:
-        own = tuple(use for use in uses if use.circuit == order.name)
-        paths = circuit_paths(
-            order.name,
-            own,
-            tracks,
-            joint_at=joint_at,
-            site_names=site_names,
-            ends=(loss.connector_pairs, loss.pigtail_splices),
-        )
-        budgets = _budgets(run, order, paths, layout)
-        circuits.append(
-            CircuitPlan(
-                order=order,
-                uses=own,
-                paths=paths,
-                budgets=budgets,
-                verdict=circuit_verdict(budgets),
-            )
-        )
-    return tuple(circuits)
-
-
-def _budgets(
-    run: Run, order: CircuitOrder, paths: tuple[Path, Path], layout: Layout
-) -> tuple[Budget, ...]:
-    pair = find_interface(order.interface, run.interfaces) if order.interface else None
-    measured = {cable.id: cable.make.measured for cable in layout.cables if cable.make.measured}
-    by_direction = {path.direction: path for path in paths}
-    return tuple(
-        circuit_budget(
-            by_direction[channel.direction],
-            channel.wavelength_nm,
-            practice=run.practice.loss,
-            optic=channel.optic,
-            measured=measured,
-        )
-        for channel in channels(pair, order.wavelengths_nm)
-    )
-
-
-def _refuse_optics(run: Run, orders: Sequence[CircuitOrder]) -> None:
-    problems: list[Problem] = []
-    for number, order in enumerate(orders, start=1):
-        if order.interface is None:
-            continue
-        pair = find_interface(order.interface, run.interfaces)
-        where = f'circuit {number} "{order.name}"'
-        problems += check_wavelengths(pair, order.wavelengths_nm, where=f"{where}, wavelengths_nm")
-        problems += check_fibre_count(pair, order.fibre_count, where=f"{where}, fibre_count")
-    if problems:
-        raise InputError(problems)
-
-
-def _tracks(laid: Sequence[LaidCable], layout: Layout) -> Iterator[CableTrack]:
-    for cable in laid:
-        own = cable.way.cable
-        existing = [
-            (
-                stretch.start_mm,
-                ExistingSpan(
-                    where=existing_name(cable.way, stretch),
-                    fibre_type=own.make.fibre_type,
-                    glass_m=m_from_mm(existing_glass_mm(stretch)),
-                    loss_db=stretch.existing_db,
-                ),
-            )
-            for stretch in cable.way.stretches
-            if stretch.placement == "existing"
-        ]
-        yield cable_track(
-            own,
-            [section for section in layout.sections if section.cable == own.id],
-            [j for j in layout.joints if j.mark.cable == own.id and j.node is None],
-            existing,
-        )
-
-
 def splices(planned: Plan) -> tuple[Splice, ...]:
     """Return the splice schedule of a plan, closure by closure and fibre by fibre."""
     run = planned.run
-    return splice_rows(
+    rows = splice_rows(
         planned.layout.joints,
         planned.layout.sections,
         planned.layout.cables,
@@ -259,6 +145,14 @@ def splices(planned: Plan) -> tuple[Splice, ...]:
         fibres_per_tray=run.practice.joints.fibres_per_tray,
         limit_db=run.practice.loss.splice_limit_db,
     )
+    measured = {figures.place for figures in run.joints if figures.measured_db is not None}
+    limits_db = {
+        joint.id: own[joint.id].limit_db
+        for own in (joint_figures(run, planned.layout),)
+        for joint in planned.layout.joints
+        if joint.id in own and not {joint.id, joint.reach_name} & measured
+    }
+    return tuple(replace(row, limit_db=limits_db.get(row.joint, row.limit_db)) for row in rows)
 
 
 def one_fewer(planned: Plan) -> tuple[int, int] | None:

@@ -3,29 +3,18 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
-from dataclasses import dataclass
 
 from routeplan.cable.model import Layout
-from routeplan.light.model import Budget, Verdict
+from routeplan.check import Check, verdict_on
+from routeplan.circuits import CircuitPlan
+from routeplan.light.model import Budget
 from routeplan.run.model import Run
+from routeplan.verify_light import circuit_checks
 
 __all__ = ["Check", "plan_checks"]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Check:
-    """One comparison of a value with its limit."""
-
-    kind: str
-    where: str
-    value: float | None
-    limit: float | None
-    unit: str
-    verdict: Verdict
-    source: str
-
-
-def plan_checks(run: Run, layout: Layout, budgets: Sequence[Budget]) -> tuple[Check, ...]:
+def plan_checks(run: Run, layout: Layout, circuits: Sequence[CircuitPlan]) -> tuple[Check, ...]:
     """
     Return the checks of a plan: light first, then cable.
 
@@ -35,11 +24,17 @@ def plan_checks(run: Run, layout: Layout, budgets: Sequence[Budget]) -> tuple[Ch
         What was declared.
     layout
         Its layout.
-    budgets
-        Budgets of all circuits.
+    circuits
+        Its circuits.
     """
     return (
-        *(check for budget in budgets for check in _light_checks(budget, run)),
+        *(
+            check
+            for one in circuits
+            for budget in one.budgets
+            for check in _light_checks(budget, run)
+        ),
+        *circuit_checks(run, layout, circuits),
         *_reel_checks(layout),
         *_count_checks(run, layout),
     )
@@ -55,7 +50,7 @@ def _light_checks(budget: Budget, run: Run) -> Iterator[Check]:
         value=margin,
         limit=0.0,
         unit="dB",
-        verdict=_verdict(None if margin is None else margin >= 0),
+        verdict=verdict_on(None if margin is None else margin >= 0),
         source=f"loss.margin_db, loss.verdict_on = {run.practice.loss.verdict_on}",
     )
     over = budget.overload_db
@@ -66,7 +61,7 @@ def _light_checks(budget: Budget, run: Run) -> Iterator[Check]:
         value=over,
         limit=budget.attenuator_db if mended else 0.0,
         unit="dB",
-        verdict=_verdict(None if over is None else over <= (budget.attenuator_db or 0.0)),
+        verdict=verdict_on(None if over is None else over <= (budget.attenuator_db or 0.0)),
         source="interface, least loss",
     )
     yield Check(
@@ -91,7 +86,7 @@ def _reel_checks(layout: Layout) -> Iterator[Check]:
             value=section.needed_mm / 1000,
             limit=reel.length_mm / 1000,
             unit="m",
-            verdict=_verdict(section.needed_mm <= reel.length_mm),
+            verdict=verdict_on(section.needed_mm <= reel.length_mm),
             source="slack.ordering_ratio, reels",
         )
 
@@ -109,10 +104,6 @@ def _count_checks(run: Run, layout: Layout) -> Iterator[Check]:
             value=float(count),
             limit=float(most),
             unit="",
-            verdict=_verdict(count <= most),
+            verdict=verdict_on(count <= most),
             source="joints.max_count",
         )
-
-
-def _verdict(holds: bool | None) -> Verdict:
-    return "unknown" if holds is None else "fits" if holds else "fails"

@@ -17,6 +17,7 @@ __all__ = [
     "OpticalPart",
     "check_coarse_channels",
     "coarse_channel",
+    "coarse_channel_count",
     "coarse_channels",
     "dense_channel_nm",
     "part_loss",
@@ -43,9 +44,10 @@ class CoarseChannel:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class OpticalPart:
-    """A passive part in the path, other than splices and connectors."""
+    """A passive part in the path; `channel_count` is set for multiplexers of the coarse grid."""
 
     name: str
+    channel_count: int | None = None
     typical_db: float
     sigma_db: float
     limit_db: float
@@ -91,6 +93,12 @@ def check_coarse_channels(wavelengths_nm: Sequence[float], *, where: str) -> lis
         else:
             taken[channel.name] = nm
     return problems
+
+
+def coarse_channel_count(name: str) -> int | None:
+    """Return the channels of a part of the table, or None if it is no coarse multiplexer."""
+    rows: tuple[OpticalPart, ...] = load_rows("optical_parts", OpticalPart)
+    return next((row.channel_count for row in rows if row.name == name), None)
 
 
 def dense_channel_nm(number: int, spacing_thz: float) -> float:

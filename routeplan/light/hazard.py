@@ -8,7 +8,7 @@ from math import log10
 from routeplan.light.interfaces import Optic
 from routeplan.tables import load_rows
 
-__all__ = ["HazardRow", "hazard_level", "launch_hazard", "total_dbm"]
+__all__ = ["HazardRow", "hazard_level", "hazard_limit_dbm", "launch_hazard", "total_dbm"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -84,6 +84,39 @@ def hazard_level(power_dbm: float, wavelength_nm: float) -> str:
     )
     found = [row for row in rows if power_dbm <= row.limit_dbm]
     return min(found, key=lambda row: row.limit_dbm).level if found else "4"
+
+
+def hazard_limit_dbm(level: str, wavelength_nm: float) -> float:
+    """
+    Return the highest power of a hazard level.
+
+    Parameters
+    ----------
+    level
+        "1", "1M" or "3B".
+    wavelength_nm
+        Vacuum wavelength. [nm]
+
+    Returns
+    -------
+    hazard_limit_dbm
+        Continuous power in the fibre. [dBm]
+
+    References
+    ----------
+    .. [1] IEC 60825-2: table `laser_hazard`, from memory.
+
+    Examples
+    --------
+    >>> hazard_limit_dbm("1", 1550.0)
+    10.0
+    """
+    rows: tuple[HazardRow, ...] = load_rows("laser_hazard", HazardRow)
+    return next(
+        row.limit_dbm
+        for row in rows
+        if row.level == level and row.wavelength_min_nm <= wavelength_nm < row.wavelength_max_nm
+    )
 
 
 def launch_hazard(optic: Optic) -> tuple[float, str] | None:
