@@ -5,8 +5,9 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from routeplan.sheets.lookup import Row, rows_at, text_at, value_at
+from routeplan.sheets.optics_pictures import PICTURES_MOST, level_svg, spectrum_svg
 from routeplan.sheets.report_parts import Column, db, number, table, verdict_mark, words
-from routeplan.sheets.text import length_text, number_text, safe
+from routeplan.sheets.text import count_text, length_text, number_text, safe
 
 __all__ = ["circuits_html", "reasons_of"]
 
@@ -62,8 +63,26 @@ def _circuit(document: Row, circuit: Row) -> str:
         f"<article><h3>{safe(text_at(circuit, 'name'))} "
         f"{verdict_mark(text_at(circuit, 'verdict'))}</h3>\n<p>{safe(facts)}</p>\n"
         f"{_overview(circuit, budgets)}"
-        f"{f'<ul>{reasons}</ul>' if reasons else ''}\n{_all_lines(circuit, budgets)}</article>\n"
+        f"{f'<ul>{reasons}</ul>' if reasons else ''}\n{_all_lines(circuit, budgets)}"
+        f"{_pictures(circuit)}</article>\n"
     )
+
+
+def _pictures(circuit: Row) -> str:
+    """Return attenuation against wavelength and power along the glass, where the data is there."""
+    levels = rows_at(circuit, "levels")
+    drawn = [
+        spectrum_svg(circuit),
+        *(level_svg(circuit, row) for row in levels[:PICTURES_MOST]),
+    ]
+    figures = "".join(f'<figure class="keep">{picture}</figure>' for picture in drawn if picture)
+    more = len(levels) - PICTURES_MOST
+    note = (
+        f'<p class="note">Power at {count_text(more, "more wavelength")} is in plan.json.</p>\n'
+        if figures and more > 0
+        else ""
+    )
+    return f"<h4>Pictures</h4>\n{figures}{note}" if figures else ""
 
 
 def _fibres_text(circuit: Row) -> str:
