@@ -9,6 +9,7 @@ import numpy as np
 
 from routeplan.geodesy import steps_m, wrapped
 from routeplan.streets.crossings import Crossings, find_crossings
+from routeplan.streets.islands import parts_of
 from routeplan.streets.model import Flags, Floats, Network, Whole
 
 __all__ = ["Lines", "Places", "assembled", "joined_lines", "lines_from"]
@@ -260,18 +261,14 @@ def _coded(words: Sequence[str], index: Whole) -> tuple[Whole, tuple[str, ...]]:
 
 def _said(network: Network, twice: int, where: str) -> list[tuple[str, str]]:
     """Return what is worth knowing about a network as it was read."""
-    from scipy.sparse import csr_array
-    from scipy.sparse.csgraph import connected_components
-
     said = []
     if twice:
         said.append((where, f"{twice} pieces of street are drawn twice and count once"))
     size = len(network.node_lonlat)
     if not size:
         return said
-    ones = np.ones(len(network.row_node), dtype=np.int8)
-    graph = csr_array((ones, network.row_node, network.row_first), shape=(size, size))
-    count, label = connected_components(graph, directed=False)
+    label = parts_of(network)
+    count = int(label.max()) + 1
     if count > 1:
         metres = np.bincount(label[network.edge_start], weights=network.length_m, minlength=count)
         outside = 100.0 * (1.0 - metres.max() / metres.sum())

@@ -1,0 +1,101 @@
+"""Least-cost search over a graph: distances from a node, and the arcs of a way."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from routeplan.streets.graph import Graph
+from routeplan.streets.model import Floats, Whole
+
+__all__ = ["arcs_to", "distances", "least_arcs"]
+
+NO_NODE = -9999  # what scipy writes where there is no node before
+
+
+def distances(
+    row_first: Whole, row_node: Whole, cost: Floats, *, source: int, limit: float = np.inf
+) -> tuple[Floats, Whole]:
+    """
+    Return the least cost from a node to every other, and the node before each on the way.
+
+    Exact (Dijkstra) for costs of at least 0; parallel arcs and arcs of no cost count as they are.
+    O(m log n).
+
+    Parameters
+    ----------
+    row_first, row_node
+        The arcs; see `Graph`.
+    cost
+        Their prices.
+    source
+        Where from.
+    limit
+        Nodes that cost more than this need not be found.
+    """
+    from scipy.sparse import csr_array
+    from scipy.sparse.csgraph import dijkstra
+
+    size = len(row_first) - 1
+    graph = csr_array((cost, row_node, row_first), shape=(size, size))
+    found, before = dijkstra(
+        graph, directed=True, indices=source, return_predecessors=True, limit=limit
+    )
+    return found, before
+
+
+def arcs_to(graph: Graph, before: Whole, target: int, *, cost: Floats | None = None) -> list[int]:
+    """
+    Return the arcs of the way to a node, in order.
+
+    Parameters
+    ----------
+    graph
+        The graph.
+    before
+        The node before each, from `distances`.
+    target
+        Where to.
+    cost
+        The prices searched with, if not the graph's own.
+    """
+    nodes = [target]
+    while int(before[nodes[-1]]) != NO_NODE:
+        nodes.append(int(before[nodes[-1]]))
+    nodes.reverse()
+    prices = graph.cost if cost is None else cost
+    return [
+        least_arc(graph.row_first, graph.row_node, prices, tail=tail, head=head)
+        for tail, head in zip(nodes, nodes[1:], strict=False)
+    ]
+
+
+def least_arc(row_first: Whole, row_node: Whole, cost: Floats, *, tail: int, head: int) -> int:
+    """Return the cheapest of the arcs between two neighbours."""
+    first, last = int(row_first[tail]), int(row_first[tail + 1])
+    own = first + np.flatnonzero(row_node[first:last] == head)
+    return int(own[np.argmin(cost[own])])
+
+
+def least_arcs(graph: Graph, source: int, target: int, *, cost: Floats | None = None) -> list[int]:
+    """
+    Return the arcs of the cheapest way between two nodes, in order; empty if they are one.
+
+    Parameters
+    ----------
+    graph
+        The graph.
+    source, target
+        Where from and where to.
+    cost
+        Prices to search with, if not the graph's own.
+
+    Raises
+    ------
+    LookupError
+        If there is no way.
+    """
+    prices = graph.cost if cost is None else cost
+    found, before = distances(graph.row_first, graph.row_node, prices, source=source)
+    if not np.isfinite(found[target]):
+        raise LookupError
+    return arcs_to(graph, before, target, cost=prices)
