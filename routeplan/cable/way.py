@@ -17,7 +17,16 @@ from routeplan.run.model import Floats, JointFitness, Place
 from routeplan.run.practice import Practice
 from routeplan.units import mm_from_m
 
-__all__ = ["ChainCrossing", "Spot", "Way", "cable_way", "existing_name", "leg_at", "positions_on"]
+__all__ = [
+    "ChainCrossing",
+    "Spot",
+    "Way",
+    "cable_way",
+    "existing_name",
+    "is_within",
+    "leg_at",
+    "positions_on",
+]
 
 _NO_ASSUMED = frozenset({"bridge", "water", "indoor", "existing"})
 _NO_JOINT = frozenset({"bridge", "water", "existing"})

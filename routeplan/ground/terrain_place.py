@@ -13,7 +13,7 @@ from routeplan.ground.terrain_model import Affine, Sheet, Terrain, Tile
 from routeplan.run.crs import crs_label, crs_or_none, is_wgs84, unusable
 from routeplan.run.model import Floats
 
-__all__ = ["cell_positions", "cell_step_m", "far_from_run", "misplaced"]
+__all__ = ["cell_positions", "cell_step_m", "crs_is_geographic", "far_from_run", "misplaced"]
 
 _AREA_MARGIN_DEG = 3.0  # grids are often used somewhat beyond the zone they are made for
 _CHUNK = 65536

@@ -33,7 +33,7 @@ from routeplan.light.verdict import Finding, dispersion_findings, power_findings
 if TYPE_CHECKING:
     from routeplan.run.practice import Loss as LossPractice
 
-__all__ = ["circuit_budget", "circuit_verdict"]
+__all__ = ["Power", "circuit_budget", "circuit_verdict"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -14,7 +14,7 @@ from routeplan.run.trouble import cleaned_text
 if TYPE_CHECKING:
     from pyproj import CRS
 
-__all__ = ["Layer", "Shape", "feature_label"]
+__all__ = ["Layer", "Shape", "feature_label", "frozen"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

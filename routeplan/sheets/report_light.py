@@ -9,7 +9,7 @@ from routeplan.sheets.optics_pictures import PICTURES_MOST, level_svg, spectrum_
 from routeplan.sheets.report_parts import Column, db, number, table, verdict_mark, words
 from routeplan.sheets.text import count_text, length_text, number_text, safe
 
-__all__ = ["circuits_html", "reasons_of"]
+__all__ = ["circuits_html", "direction_text", "reasons_of", "wavelength_text"]
 
 _BUDGETS_ACROSS = 6
 _QUANTITIES = (

@@ -18,6 +18,7 @@ __all__ = [
     "section",
     "swatch",
     "table",
+    "table_row",
     "verdict_mark",
     "words",
 ]

@@ -9,7 +9,7 @@ from routeplan.sheets.lookup import Row, row_at, rows_at, text_at, value_at, who
 from routeplan.sheets.report_parts import Column, swatch, table_row, words
 from routeplan.sheets.text import count_text, length_text, number_text, safe
 
-__all__ = ["closures_html", "joint_place", "runs_of_splices"]
+__all__ = ["closures_html", "joint_place", "position_text", "runs_of_splices"]
 
 _DASH = "\N{EN DASH}"
 _SIDE_WORDS = {"start": "begins here", "end": "ends here"}
