@@ -12,7 +12,15 @@ from routeplan.streets.crossings import Crossings, find_crossings
 from routeplan.streets.islands import parts_of
 from routeplan.streets.model import Flags, Floats, Network, Whole
 
-__all__ = ["Lines", "Places", "assembled", "joined_lines", "lines_from"]
+__all__ = [
+    "Lines",
+    "Places",
+    "adjacency",
+    "assembled",
+    "edge_lengths_m",
+    "joined_lines",
+    "lines_from",
+]
 
 _UNIT = 1e7  # OpenStreetMap's own resolution: a hundred-millionth of a turn is about a centimetre
 

@@ -7,7 +7,7 @@ import numpy as np
 from routeplan.geodesy import local_xy_m
 from routeplan.streets.model import Floats, Network
 
-__all__ = ["bend_counts", "headings_rad", "turns_rad"]
+__all__ = ["bend_counts", "bend_positions", "headings_rad", "turns_rad"]
 
 
 def headings_rad(begin: Floats, end: Floats) -> Floats:

@@ -16,7 +16,19 @@ from routeplan.streets.inside import inside_ratios
 from routeplan.streets.model import CROSSING_KINDS, Flags, Floats, Network
 from routeplan.tables import load_rows
 
-__all__ = ["Prices", "StreetCosts", "Zones", "cost_words", "prices_of", "street_costs"]
+__all__ = [
+    "CostRow",
+    "Prices",
+    "StreetCosts",
+    "Zones",
+    "all_rows",
+    "class_of",
+    "cost_words",
+    "placements_of",
+    "prices_of",
+    "street_costs",
+    "with_cost",
+]
 
 UNKNOWN_CLASS = "street"
 
@@ -166,9 +178,7 @@ def _bad_changes(changes: Mapping[str, float]) -> list[Problem]:
         where = f"cost {shown(key)}"
         if key not in known:
             problems.append(
-                Problem(
-                    where=where, what="is not a known price", remedy=nearest_hint(key, known)
-                )
+                Problem(where=where, what="is not a known price", remedy=nearest_hint(key, known))
             )
         elif (
             isinstance(value, bool)
@@ -177,9 +187,7 @@ def _bad_changes(changes: Mapping[str, float]) -> list[Problem]:
             or (math.isinf(value) and not _may_be_closed(key))
         ):
             problems.append(
-                Problem(
-                    where=where, what="is not a price", value=shown(value), limit="at least 0"
-                )
+                Problem(where=where, what="is not a price", value=shown(value), limit="at least 0")
             )
     return problems
 
@@ -188,7 +196,9 @@ def _may_be_closed(key: str) -> bool:
     return key.startswith(("road.", "existing.", "crossing.")) or key.endswith("_factor")
 
 
-def _bad_placement(placement: str | None, table: Mapping[str, Mapping[str, float]]) -> list[Problem]:
+def _bad_placement(
+    placement: str | None, table: Mapping[str, Mapping[str, float]]
+) -> list[Problem]:
     if placement is None or placement in table["placement"]:
         return []
     from routeplan.run.trouble import listed, nearest_hint, shown
@@ -245,8 +255,10 @@ def prices_of(network: Network, costs: StreetCosts, *, zones: Zones | None = Non
     zones
         Ground to avoid or to keep to.
     """
-    per_m = _class_prices(network, costs)[network.road_class] if len(network.length_m) else (
-        np.empty(0)
+    per_m = (
+        _class_prices(network, costs)[network.road_class]
+        if len(network.length_m)
+        else (np.empty(0))
     )
     per_m = per_m * np.where(network.is_bridge, costs.bridge_factor, 1.0)
     per_m = per_m * np.where(network.is_tunnel, costs.tunnel_factor, 1.0)
@@ -259,9 +271,7 @@ def prices_of(network: Network, costs: StreetCosts, *, zones: Zones | None = Non
         per_m = per_m * _zone_factors(network, costs, zones)
     # Nothing times closed is closed: an edge of no length has none to be closed on.
     cost = np.where(network.length_m > 0, per_m, 0.0) * network.length_m
-    cost += np.bincount(
-        network.crossing_edge, weights=each, minlength=len(cost)
-    )[: len(cost)]
+    cost += np.bincount(network.crossing_edge, weights=each, minlength=len(cost))[: len(cost)]
     if costs.sharp_bend_each:
         cost += costs.sharp_bend_each * bend_counts(network, sharp_deg=costs.sharp_bend_deg)
     return Prices(
