@@ -13,6 +13,7 @@ import sys
 import tempfile
 from collections import Counter
 from collections.abc import Iterator
+from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 
 import pytest
@@ -159,21 +160,21 @@ INSTALLED = Path(sys.executable).with_name("routeplan.exe" if os.name == "nt" el
 @pytest.mark.parametrize("name", COUNTS)
 def test_mutants_through_the_command(name: str, seeds: dict[str, bytes], tmp_path: Path) -> None:
     """The same holds for the installed command: no traceback, nothing half written."""
-    numbers = range(10_000, 10_000 + {"run.toml": 25, "a.geojson": 25}.get(name, 13))
-    waiting = []
-    for number in numbers:
+    jobs = []
+    for number in range(10_000, 10_000 + {"run.toml": 24, "a.geojson": 24}.get(name, 13)):
         folder = tmp_path / str(number)
         path = lay_out(folder, seeds, name, spoilt(seeds, name, number))
         before = {str(p.relative_to(folder)): p.read_bytes() for p in folder.rglob("*.*")}
-        code = [str(INSTALLED), "plan", str(path), "--out", str(folder / "out")]
-        waiting.append((folder, before, code))
-    while waiting:
-        batch, waiting = waiting[:2], waiting[2:]
-        running = [
-            subprocess.Popen(code, stdout=subprocess.PIPE, stderr=subprocess.PIPE, text=True)
-            for _, _, code in batch
-        ]
-        for process, (folder, before, _) in zip(running, batch, strict=True):
-            out, err = process.communicate(timeout=120)
-            check_output(out, err, process.returncode)
+        jobs.append(
+            (folder, before, [str(INSTALLED), "plan", str(path), "--out", str(folder / "out")])
+        )
+    with ThreadPoolExecutor(os.cpu_count()) as pool:
+        done = pool.map(run_quietly, [code for *_, code in jobs])
+        for (folder, before, _), process in zip(jobs, done, strict=True):
+            check_output(process.stdout, process.stderr, process.returncode)
             check_whole(folder, before, process.returncode, is_plan=True)
+
+
+def run_quietly(code: list[str]) -> subprocess.CompletedProcess[str]:
+    """Run a process to its end and return what it printed."""
+    return subprocess.run(code, capture_output=True, text=True, check=False, timeout=120)
