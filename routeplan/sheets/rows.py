@@ -33,7 +33,7 @@ def shaped(name: str, row: Mapping[str, Json]) -> Row:
     return {column.key: _rounded(column, row[column.key]) for column in columns}
 
 
-def row_of(name: str, source: object, **more: Json) -> Row:
+def row_of(name: str, source: object, /, **more: Json) -> Row:
     """
     Return a row whose columns are attributes of `source`, but for those given.
 
