@@ -3,16 +3,18 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 from routeplan.light.budget import circuit_verdict
 from routeplan.light.changes import Change, Circuit, mending_changes, stretch_limit_m, stretched
 from routeplan.light.circuits import Closing, circuit_budgets, closing_interfaces
+from routeplan.light.fittings import panel_mating
 from routeplan.light.interfaces import OpticPair, find_interface
-from routeplan.light.model import Budget, Direction, Path, Verdict
+from routeplan.light.model import Budget, Direction, Mating, Path, Verdict
 from routeplan.light.quick import quick_path
+from routeplan.light.years import life_lines, with_years
 from routeplan.quick_options import ANY
 
 if TYPE_CHECKING:
@@ -41,6 +43,7 @@ class QuickOrder:
     interface: str | None
     wavelengths_nm: tuple[float, ...]
     practice: Loss
+    joint_tail_m: float
     own: Mapping[str, Interface]
     assumed: tuple[AssumedValue, ...]
 
@@ -91,7 +94,8 @@ def quick_answer(order: QuickOrder) -> QuickAnswer:
     pair = order.pair
     budgets = circuit_budgets(paths, pair, order.wavelengths_nm, practice=order.practice)
     verdict = circuit_verdict(budgets)
-    answer = QuickAnswer(order=order, budgets=budgets, verdict=verdict)
+    aged = _with_years(order, paths, budgets)
+    answer = QuickAnswer(order=order, budgets=aged, verdict=verdict)
     if pair is None:
         return answer
     circuit = Circuit(
@@ -129,15 +133,36 @@ def _failure(circuit: Circuit, more_m: int) -> str:
 
 
 def _paths(order: QuickOrder) -> dict[Direction, Path]:
-    there = quick_path(
+    path = quick_path(
         order.glass_m,
         fibre_type=order.fibre_type,
         splices=order.splices,
         connector_pairs=order.practice.connector_pairs,
         pigtail_splices=order.practice.pigtail_splices,
     )
-    back = replace(there, direction="to-from", steps=there.steps[::-1])
+    mating = replace(panel_mating(order.practice), where="panel")
+    steps = tuple(mating if isinstance(step, Mating) else step for step in path.steps)
+    there = replace(path, steps=steps)
+    back = replace(path, direction="to-from", steps=steps[::-1])
     return {"from-to": there, "to-from": back}
+
+
+def _with_years(
+    order: QuickOrder, paths: Mapping[Direction, Path], budgets: Sequence[Budget]
+) -> tuple[Budget, ...]:
+    """Return budgets with the margins of the first day and of the end of life."""
+    return tuple(
+        with_years(
+            budget,
+            life_lines(
+                paths[budget.direction],
+                budget.wavelength_nm,
+                practice=order.practice,
+                tail_m=order.joint_tail_m,
+            ),
+        )
+        for budget in budgets
+    )
 
 
 def _any_interface(order: QuickOrder, paths: Mapping[Direction, Path]) -> QuickAnswer:
@@ -154,9 +179,10 @@ def _any_interface(order: QuickOrder, paths: Mapping[Direction, Path]) -> QuickA
     usual_nm = default_value("circuit.wavelengths_nm")
     assert isinstance(usual_nm, tuple)
     wavelengths_nm = order.wavelengths_nm or tuple(float(nm) for nm in usual_nm)
+    budgets = circuit_budgets(paths, None, wavelengths_nm, practice=order.practice)
     return QuickAnswer(
         order=order,
-        budgets=circuit_budgets(paths, None, wavelengths_nm, practice=order.practice),
+        budgets=_with_years(order, paths, budgets),
         verdict="fits" if closing else "fails",
         closing=closing,
     )

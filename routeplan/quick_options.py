@@ -191,6 +191,8 @@ def _table(values: Mapping[str, Any]) -> dict[str, Any]:
             if value != ANY:
                 circuit[key] = value
         elif section.startswith("interface."):
+            if values.get("interface", ANY) != ANY:
+                continue  # refused elsewhere: two interfaces
             table.setdefault("interface", {}).setdefault(_OWN, {})[key] = value
         elif name in keys:
             (table.setdefault(section, {}) if section else table)[key] = value
@@ -343,6 +345,7 @@ def _order(values: Mapping[str, Any], declared: Declared) -> QuickOrder:
         interface=ANY if is_any else circuit.interface,
         wavelengths_nm=() if is_any and "wavelength_nm" not in values else circuit.wavelengths_nm,
         practice=declared.practice.loss,
+        joint_tail_m=declared.practice.slack.joint_tail_m,
         own=declared.interfaces,
         assumed=tuple(_assumed(values, declared)),
     )
@@ -366,7 +369,7 @@ def _assumed(values: Mapping[str, Any], declared: Declared) -> Iterator[AssumedV
     from routeplan.run.defaults import AssumedValue, default_value, practice_rows
 
     purpose: Purpose = "venue" if values.get("purpose") == "venue" else "link"
-    used = {"purpose", "cable.fibre_type", "circuit.fibre_count", *_USED_LOSS}
+    used = {"purpose", "cable.fibre_type", "circuit.fibre_count", "slack.joint_tail_m"}
     if "splices" not in values or "sheath_km" in values:
         used.add("cable.glass_over_sheath_ratio")
     if "splices" not in values and "reel_km" not in values:
@@ -379,7 +382,7 @@ def _assumed(values: Mapping[str, Any], declared: Declared) -> Iterator[AssumedV
     for row in practice_rows():
         section, _, key = row.name.partition(".")
         full = f"{named.get(section, section)}.{key}" if key else section
-        if row.name in used and full not in declared.given:
+        if (row.name in used or section == "loss") and full not in declared.given:
             value = default_value(row.name, purpose)
             yield AssumedValue(
                 name=row.name,
@@ -388,24 +391,6 @@ def _assumed(values: Mapping[str, Any], declared: Declared) -> Iterator[AssumedV
                 source=row.source,
                 reason=row.reason,
             )
-
-
-_USED_LOSS = tuple(
-    f"loss.{key}"
-    for key in (
-        "splice_mean_db",
-        "splice_sigma_db",
-        "splice_limit_db",
-        "connector_mean_db",
-        "connector_sigma_db",
-        "connector_limit_db",
-        "connector_pairs",
-        "pigtail_splices",
-        "sigma_count",
-        "margin_db",
-        "verdict_on",
-    )
-)
 
 
 def _listed(value: object) -> str:

@@ -4,8 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
+from routeplan.circuits import CircuitPlan, measured_glass
 from routeplan.light.along import Level, levels_along
-from routeplan.light.interfaces import channels, find_interface
+from routeplan.light.interfaces import channels
 from routeplan.light.model import (
     Bend,
     ExistingSpan,
@@ -16,7 +17,7 @@ from routeplan.light.model import (
     SpliceStep,
     Step,
 )
-from routeplan.planning import CircuitPlan, Plan
+from routeplan.planning import Plan
 from routeplan.sheets.columns import Json, Row
 from routeplan.sheets.rows import shaped
 from routeplan.units import m_from_mm
@@ -37,12 +38,10 @@ def level_rows(planned: Plan, circuit: CircuitPlan) -> Iterator[Row]:
     circuit
         One of its circuits.
     """
-    name = circuit.order.interface
-    pair = find_interface(name, planned.run.interfaces) if name and name != "any" else None
-    measured = {c.id: c.make.measured for c in planned.layout.cables if c.make.measured}
+    measured = measured_glass(planned.run, planned.layout)
     paths = {path.direction: path for path in circuit.paths}
     drawn: set[float] = set()
-    for channel in channels(pair, sorted({b.wavelength_nm for b in circuit.budgets})):
+    for channel in channels(circuit.pair, sorted({b.wavelength_nm for b in circuit.budgets})):
         if channel.wavelength_nm in drawn:
             continue
         drawn.add(channel.wavelength_nm)

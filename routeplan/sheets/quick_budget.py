@@ -76,7 +76,7 @@ def quick_text(answer: QuickAnswer) -> str:
     blocks += [_budget_block(order, group, sources) for group in _alike(answer.budgets)]
     if order.interface == ANY:
         blocks.append(list(_closing_lines(answer)))
-    blocks.append([f"[{number}] {text}" for text, number in sources.items()])
+    blocks.append([line for mark in sources.items() for line in _source_lines(*mark)])
     blocks.append(list(_assumed_lines(order)))
     blocks.append(list(_outcome(answer)))
     lines = "\n\n".join("\n".join(block) for block in blocks if block).splitlines()
@@ -144,6 +144,13 @@ def _mark(source: str, sources: dict[str, int]) -> str:
     return f"[{sources.setdefault(source, len(sources) + 1)}]"
 
 
+def _source_lines(text: str, number: int) -> list[str]:
+    mark = f"[{number}] "
+    return textwrap.wrap(
+        text, _WIDTH, initial_indent=mark, subsequent_indent=" " * len(mark), break_on_hyphens=False
+    )
+
+
 def _optic(order: QuickOrder, budget: Budget) -> Optic | None:
     """Return the interface that sends what a budget is of."""
     return next(
@@ -168,6 +175,16 @@ def _sum_lines(
     if budget.margin_db is not None and budget.statistical_margin_db is not None:
         statistical = f"{budget.statistical_margin_db:.3f} with {loss.sigma_count:g} sigma"
         yield _summed("margin", budget.margin_db, statistical)
+    if budget.first_day_margin_db is not None and budget.end_of_life_margin_db is not None:
+        yield _summed("on the first day", budget.first_day_margin_db, "nothing kept in hand")
+        years = _mark(_years_text(budget), sources)
+        yield _summed("at the end of life", budget.end_of_life_margin_db, years)
+
+
+def _years_text(budget: Budget) -> str:
+    """Return what the years take, each at its limit."""
+    taken = (f"{line.item} {line.count * line.limit_db:g} dB" for line in budget.life_lines)
+    return f"less {', '.join(taken)}; table ageing, practice loss.repairs_count"
 
 
 def _summed(name: str, worst_db: float, note: str, *, nominal_db: float | None = None) -> str:

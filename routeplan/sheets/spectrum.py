@@ -7,12 +7,13 @@ from collections.abc import Mapping, Sequence
 import numpy as np
 from numpy.typing import NDArray
 
+from routeplan.circuits import CircuitPlan, measured_glass
 from routeplan.light.attenuation import MeasuredPoint, attenuation_of
 from routeplan.light.contributions import measured_of
 from routeplan.light.fibres import find_fibre
 from routeplan.light.model import ExistingSpan, Glass, Path
 from routeplan.light.spectrum import loss_spectrum
-from routeplan.planning import CircuitPlan, Plan
+from routeplan.planning import Plan
 from routeplan.sheets.columns import Json, Row
 from routeplan.sheets.rows import shaped
 
@@ -35,7 +36,7 @@ def spectrum_row(planned: Plan, circuit: CircuitPlan) -> Row:
     circuit
         One of its circuits; its first path is taken.
     """
-    measured = {c.id: c.make.measured for c in planned.layout.cables if c.make.measured}
+    measured = measured_glass(planned.run, planned.layout)
     lengths_m = _lengths_m(circuit.paths[0], measured)
     types = sorted({fibre_type for fibre_type, _ in lengths_m})
     nm = typical = highest = np.zeros(1)
