@@ -1,0 +1,277 @@
+"""What legs cross, run along or go through: roads, rail, water, power, pipelines, areas."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Literal
+
+import numpy as np
+import shapely
+
+from routeplan import geodesy
+from routeplan.ground.crossing_along import Alongside, alongside, alongside_intervals
+from routeplan.ground.crossing_areas import Inside, insides, positions
+from routeplan.ground.crossing_contacts import (
+    Contact,
+    Events,
+    chosen_events,
+    contacts,
+    events_of,
+    joined_events,
+    no_events,
+)
+from routeplan.ground.crossing_segments import (
+    FeatureSegments,
+    LegSegments,
+    Whole,
+    feature_segments,
+    leg_segments,
+    near_features,
+    near_segments,
+)
+from routeplan.ground.features import FeatureKind, FeatureLayer, feature_layer
+from routeplan.ground.model import Crossing, Leg
+from routeplan.run.model import Area, Floats
+
+__all__ = [
+    "ALONG_ANGLE_DEG",
+    "ALONG_DISTANCE_M",
+    "ALONG_LENGTH_M",
+    "FoundCrossing",
+    "How",
+    "areas_layer",
+    "crossings_of",
+    "find_crossings",
+]
+
+# House rules: a cable within a verge's width of a line, for longer than it takes to cross it.
+ALONG_DISTANCE_M = 10.0
+ALONG_LENGTH_M = 50.0
+ALONG_ANGLE_DEG = 20.0
+
+How = Literal["crosses", "touches", "along", "inside"]
+
+_NONE = np.zeros(0, dtype=np.int64)
+
+Intervals = tuple[Whole, Whole, Floats, Floats]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class FoundCrossing:
+    """
+    A place where a leg meets a feature, or a length that it shares with one.
+
+    `how` is `crosses` (from one side of a line to the other), `touches` (it meets it and stays on
+    one side, or either ends there), `along` (near and nearly parallel) or `inside` (an area).
+    `start_mm` and `end_mm` are ground stations of the leg, equal for a point; `angle_deg` is
+    between leg and line, 0 to 90, None where it means nothing. `feature` is the number of the
+    feature in its layer. `lon` and `lat` are of the middle.
+    """
+
+    leg: str
+    kind: FeatureKind
+    how: How
+    feature_class: str
+    name: str
+    owner: str
+    start_mm: int
+    end_mm: int
+    angle_deg: float | None
+    lon: float
+    lat: float
+    file: str
+    feature: int
+
+    @property
+    def length_mm(self) -> int:
+        """Ground length shared with the feature. [mm]"""
+        return self.end_mm - self.start_mm
+
+    @property
+    def ask(self) -> str:
+        """Who has to be asked: the owner, else the name, else what it is."""
+        return self.owner or self.name or self.feature_class or self.kind
+
+
+def find_crossings(
+    legs: Sequence[Leg],
+    layers: Sequence[FeatureLayer],
+    *,
+    along_distance_m: float = ALONG_DISTANCE_M,
+    along_length_m: float = ALONG_LENGTH_M,
+    along_angle_deg: float = ALONG_ANGLE_DEG,
+) -> tuple[FoundCrossing, ...]:
+    """
+    Return everything of some layers that legs meet, by leg and station.
+
+    Lines that a leg meets within a millimetre are crossed or touched, each meeting once, however
+    many vertices lie there. Every line counts for itself: two carriageways are two crossings.
+    Between vertices features are straight in longitude and latitude, as GeoJSON has it [1]_;
+    lengths and angles are taken in metres from the step's own beginning, which on a step of 200 m
+    is good to a millimetre below latitude 80, over the antimeridian as elsewhere.
+
+    Boxes around pieces of 8 steps go into a tree that is asked once for all features and once for
+    the segments of those met; memory grows with what lies near the legs, not with the layers.
+
+    Parameters
+    ----------
+    legs
+        The legs.
+    layers
+        The layers.
+    along_distance_m
+        A line farther to the side is not run along. [m]
+    along_length_m
+        Shortest length of running along a line. [m]
+    along_angle_deg
+        Largest angle between leg and line for running along it. [deg]
+
+    References
+    ----------
+    .. [1] RFC 7946 (August 2016), section 3.1.1.
+    """
+    if not legs or not layers:
+        return ()
+    steps = leg_segments(legs, reach_m=along_distance_m)
+    found: list[FoundCrossing] = []
+    for layer in layers:
+        near = near_features(steps, layer.geometries)
+        if not len(near[0]):
+            continue
+        segments = feature_segments(layer.geometries, np.unique(near[0]))
+        events, intervals = _meetings(steps, segments, along_distance_m, along_angle_deg)
+        beside = alongside(
+            intervals, _keys(layer, intervals), gap_m=along_distance_m, length_m=along_length_m
+        )
+        within = insides(steps, segments, events, geometries=layer.geometries, near=near)
+        crossed = contacts(steps, segments, _of_lines(layer, segments, events))
+        shared: list[Contact | Alongside | Inside] = [*crossed, *beside, *within]
+        found.extend(_found(steps, legs, layer, segments, one) for one in shared)
+    order = {leg.id: at for at, leg in enumerate(legs)}
+    found.sort(key=lambda one: (order[one.leg], *_rank(one)))
+    return tuple(found)
+
+
+def _rank(one: FoundCrossing) -> tuple[object, ...]:
+    return (one.start_mm, one.end_mm, one.kind, one.name, one.how, one.file, one.feature)
+
+
+def _meetings(
+    legs: LegSegments, features: FeatureSegments, distance_m: float, angle_deg: float
+) -> tuple[Events, Intervals]:
+    events: list[Events] = []
+    intervals: list[Intervals] = []
+    for pairs in near_segments(legs, features):
+        events.append(events_of(legs, features, pairs))
+        intervals.append(
+            alongside_intervals(legs, features, pairs, distance_m=distance_m, angle_deg=angle_deg)
+        )
+    if not events:
+        return no_events(), (_NONE, _NONE, _NONE.astype(float), _NONE.astype(float))
+    columns = [np.concatenate(column) for column in zip(*intervals, strict=True)]
+    return joined_events(events), (columns[0], columns[1], columns[2], columns[3])
+
+
+def _of_lines(layer: FeatureLayer, features: FeatureSegments, events: Events) -> Events:
+    """Return the events of lines; those of areas only cut the leg."""
+    kinds = shapely.get_type_id(layer.geometries[features.feature[events.part]])
+    return chosen_events(events, ~np.isin(kinds, (3, 6)))
+
+
+def _keys(layer: FeatureLayer, intervals: Intervals) -> dict[int, tuple[str, ...] | None]:
+    """Return what features that are named have in common with others of the name."""
+    return {
+        at: (layer.kinds[at], layer.classes[at], layer.names[at], layer.owners[at])
+        if layer.names[at]
+        else None
+        for at in np.unique(intervals[1]).tolist()
+    }
+
+
+def _found(
+    steps: LegSegments,
+    legs: Sequence[Leg],
+    layer: FeatureLayer,
+    features: FeatureSegments,
+    one: Contact | Alongside | Inside,
+) -> FoundCrossing:
+    leg = legs[one.leg]
+    how: How
+    start_m, end_m, angle = one.start_m, one.end_m, None
+    if isinstance(one, Contact):
+        feature = int(features.feature[one.part])
+        how, angle = ("crosses" if one.crosses else "touches"), one.angle_deg
+        start_m = end_m = 0.5 * (start_m + end_m)
+    else:
+        feature = one.feature
+        inside: How = "inside" if end_m > start_m else "touches"
+        how = inside if isinstance(one, Inside) else "along"
+    middle = positions(steps, one.leg, np.array([0.5 * (start_m + end_m)]))[0]
+    span = round(start_m * 1000.0), round(end_m * 1000.0)
+    if steps.is_turned[one.leg]:
+        span = leg.length_mm - span[1], leg.length_mm - span[0]
+    return FoundCrossing(
+        leg=leg.id,
+        kind=layer.kinds[feature],
+        how=how,
+        feature_class=layer.classes[feature],
+        name=layer.names[feature],
+        owner=layer.owners[feature],
+        start_mm=span[0],
+        end_mm=span[1],
+        angle_deg=angle,
+        lon=float(geodesy.wrapped(middle[:1])[0]),
+        lat=float(middle[1]),
+        file=layer.file,
+        feature=feature,
+    )
+
+
+def areas_layer(areas: Sequence[Area]) -> FeatureLayer:
+    """
+    Return the declared areas of a run as a layer.
+
+    Who has to be asked is the property `owner` or `operator` of an area, if it has one.
+
+    Parameters
+    ----------
+    areas
+        The areas.
+    """
+    owners = [area.properties.get("owner") or area.properties.get("operator") for area in areas]
+    return feature_layer(
+        areas[0].source.file if areas else "areas",
+        [shapely.Polygon(area.rings[0], list(area.rings[1:])) for area in areas],
+        kinds=[area.kind for area in areas],
+        names=[area.name for area in areas],
+        owners=["" if owner is None else str(owner) for owner in owners],
+    )
+
+
+def crossings_of(found: Sequence[FoundCrossing]) -> tuple[Crossing, ...]:
+    """
+    Return the found lines that are crossed, and the water gone through, as crossings of a leg.
+
+    Those of a road, rail, water or power line or a pipeline; water that is an area has the
+    length inside as its width, a line has none.
+
+    Parameters
+    ----------
+    found
+        What was found.
+    """
+    physical = ("road", "rail", "water", "power", "pipeline")
+    return tuple(
+        Crossing(
+            leg=one.leg,
+            name=one.name,
+            crosses=one.kind,
+            ground_mm=(one.start_mm + one.end_mm) // 2,
+            width_m=one.length_mm / 1000.0 if one.how == "inside" else None,
+            lon=one.lon,
+            lat=one.lat,
+        )
+        for one in found
+        if one.kind in physical and one.how in ("crosses", "inside")
+    )
