@@ -57,7 +57,7 @@ def life_lines(
             practice=practice,
         )
         keys = "practice loss.repairs_count, loss.repair_cable_m, slack.joint_tail_m"
-        repairs.append(replace(line, source=f"{line.source} ({keys})"))
+        repairs.append(replace(line, source=f"{keys}: {line.source} each time the cable is cut"))
     return (*repairs, *ageing_lines(sum(glass_m for _, glass_m in spans)))
 
 

@@ -9,7 +9,9 @@ import numpy as np
 
 from routeplan.cable.layout import LaidCable
 from routeplan.cable.model import FibreEnd, Joint
+from routeplan.circuit_answers import changes, radio_figures, stretch_m, times
 from routeplan.ground.model import Crossing, Leg
+from routeplan.light.circuits import Closing
 from routeplan.planning import CircuitPlan, Plan, assumptions, one_fewer, splices
 from routeplan.sheets.bill import bill_rows, pigtail_counts
 from routeplan.sheets.budget_rows import budget_row
@@ -270,9 +272,20 @@ def _circuit(planned: Plan, circuit: CircuitPlan) -> Row:
         glass_m=sum(getattr(step, "glass_m", 0.0) for step in circuit.paths[0].steps),
         delay_us=circuit.budgets[0].delay_ns / 1000,
         verdict=circuit.verdict,
+        optic=circuit.pair.name if circuit.pair else None,
         budgets=[budget_row(budget) for budget in circuit.budgets],
+        closing=[_closing(closing) for closing in circuit.closing],
+        changes=list(changes(planned, circuit)),
+        stretch_m=stretch_m(planned, circuit),
+        timing=[row_of("timing", figure) for figure in times(planned, circuit)],
+        radio=[row_of("radio", figure) for figure in radio_figures(planned, circuit)],
         power=list(power_rows(planned, circuit)),
         levels=list(level_rows(planned, circuit)),
         marks=list(mark_rows(circuit)),
         spectrum=spectrum_row(planned, circuit),
     )
+
+
+def _closing(closing: Closing) -> Row:
+    wavelengths_nm: list[Json] = list(closing.wavelengths_nm)
+    return row_of("closing", closing, interface=closing.pair.name, wavelengths_nm=wavelengths_nm)

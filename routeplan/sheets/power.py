@@ -5,9 +5,10 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from routeplan.cable.way import existing_name, leg_at
+from routeplan.circuits import CircuitPlan, measured_glass
 from routeplan.light.along import losses_along_db
 from routeplan.light.model import ExistingSpan, Glass, Path
-from routeplan.planning import CircuitPlan, Plan
+from routeplan.planning import Plan
 from routeplan.sheets.columns import Row
 from routeplan.sheets.rows import shaped
 from routeplan.units import m_from_mm
@@ -28,8 +29,8 @@ def power_rows(planned: Plan, circuit: CircuitPlan) -> Iterator[Row]:
     """
     path = circuit.paths[0]
     places = list(_glass_places(planned, circuit, path))
-    measured = {c.id: c.make.measured for c in planned.layout.cables if c.make.measured}
-    for wavelength_nm in circuit.order.wavelengths_nm:
+    measured = measured_glass(planned.run, planned.layout)
+    for wavelength_nm in circuit.wavelengths_nm:
         losses_db = losses_along_db(
             path, wavelength_nm, practice=planned.run.practice.loss, measured=measured
         )

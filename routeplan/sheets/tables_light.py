@@ -48,6 +48,25 @@ LIGHT_TABLES = (
         ),
     ),
     Table(
+        name="life_lines",
+        title="What a circuit loses more over its life",
+        path=("circuits", "budgets", "life_lines"),
+        carried=(
+            ("circuit", "circuits.name"),
+            ("wavelength_nm", "budgets.wavelength_nm"),
+            ("direction", "budgets.direction"),
+        ),
+        columns=(
+            text_column("item", "Allowance."),
+            count_column("count", "How many."),
+            decibels_column("each_db", "Loss of each."),
+            decibels_column("sigma_db", "Standard deviation of each."),
+            decibels_column("limit_db", "Most that each may lose."),
+            text_column("source", "Where the figures come from."),
+            text_column("reason", "Why it is allowed for."),
+        ),
+    ),
+    Table(
         name="budgets",
         title="Budgets",
         path=("circuits", "budgets"),
@@ -66,6 +85,14 @@ LIGHT_TABLES = (
                 "statistical_margin_db", "The same with the statistical loss.", may_be_null=True
             ),
             decibels_column(
+                "first_day_margin_db",
+                "Available less worst, nothing kept in hand.",
+                may_be_null=True,
+            ),
+            decibels_column(
+                "end_of_life_margin_db", "The same less every line of life.", may_be_null=True
+            ),
+            decibels_column(
                 "overload_db", "Above zero the receiver gets too much.", may_be_null=True
             ),
             decibels_column("attenuator_db", "Smallest that mends the overload.", may_be_null=True),
@@ -77,6 +104,46 @@ LIGHT_TABLES = (
             choice_column("verdict", "Verdict", *VERDICTS),
             Column(key="reasons", kind="texts", text="Why."),
             rows_column("lines", "budget_lines", "Every contribution."),
+            text_column("deciding", "Contribution with most of the worst loss.", may_be_null=True),
+            rows_column("life_lines", "life_lines", "What is to be lost more over its life."),
+        ),
+    ),
+    Table(
+        name="closing",
+        title="Interfaces that close a circuit",
+        path=("circuits", "closing"),
+        carried=(("circuit", "name"),),
+        columns=(
+            text_column("interface", "Interface, the least capable first."),
+            Column(key="wavelengths_nm", kind="numbers", text="Its wavelengths.", unit="nm"),
+            decibels_column("margin_db", "Least margin, any attenuator taken off."),
+        ),
+    ),
+    Table(
+        name="timing",
+        title="Times of circuits",
+        path=("circuits", "timing"),
+        carried=(("circuit", "name"),),
+        columns=(
+            text_column("figure", "What it is a figure of."),
+            number_column("value", "Figure.", "", 6),
+            text_column("unit", "Unit of both."),
+            number_column("limit", "Published limit it stands beside.", "", 6, may_be_null=True),
+            text_column("source", "Where it comes from."),
+        ),
+    ),
+    Table(
+        name="radio",
+        title="Radio frequency over circuits",
+        path=("circuits", "radio"),
+        carried=(("circuit", "name"),),
+        columns=(
+            number_column("wavelength_nm", "Wavelength.", "nm", 3),
+            choice_column("direction", "Way the light goes", *_DIRECTIONS),
+            text_column("figure", "What it is a figure of."),
+            number_column("value", "Figure.", "", 3),
+            text_column("unit", "Its unit."),
+            text_column("source", "Where it comes from."),
         ),
     ),
     Table(
@@ -87,12 +154,21 @@ LIGHT_TABLES = (
             text_column("name", "Name."),
             text_column("from", "Site."),
             text_column("to", "Site."),
-            text_column("interface", "Interface.", may_be_null=True),
+            text_column("interface", "Interface, or any.", may_be_null=True),
+            text_column("optic", "Interface the budgets are of.", may_be_null=True),
+            text_column("standby_for", "Circuit it stands by for.", may_be_null=True),
             rows_column("fibres", "circuit_fibres", "Fibres in order along it, strand by strand."),
             metres_column("glass_m", "Glass of its first fibre."),
             number_column("delay_us", "One-way delay at its first wavelength.", "us", 3),
             choice_column("verdict", "Verdict", *VERDICTS),
             rows_column("budgets", "budgets", "By wavelength and direction."),
+            rows_column("closing", "closing", "For a circuit that takes any: those that close it."),
+            Column(key="changes", kind="texts", text="What would each make a failing one fit."),
+            metres_column(
+                "stretch_m", "Glass it could be longer by, joints held.", may_be_null=True
+            ),
+            rows_column("timing", "timing", "Delays and what they mean."),
+            rows_column("radio", "radio", "For a link of radio frequency."),
             Column(
                 key="power",
                 kind="rows",
