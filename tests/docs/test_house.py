@@ -1,64 +1,38 @@
-"""The rooms import each other one way, in the order that DEVELOPERS.md lists them."""
+"""The developers' guide describes the house that the code's own tests hold it to."""
 
 from __future__ import annotations
 
-import ast
 import re
-from collections.abc import Iterator
 from pathlib import Path
 
-import pytest
+from tests.test_architecture import FLOORS, OUTSIDE, PACKAGE
 
 ROOT = Path(__file__).parents[2]
-PACKAGE = ROOT / "routeplan"
-TABLE = (ROOT / "DEVELOPERS.md").read_text("utf-8").partition("\n## The house\n")[2]
+GUIDE = (ROOT / "DEVELOPERS.md").read_text("utf-8")
+TABLE = GUIDE.partition("\n## The house\n")[2].partition("\n## ")[0]
 ROWS = [
-    re.findall(r"`([\w/]+)(?:\.py)?`", row)
-    for row in re.findall(r"^\| (`[^|]+`) \|", TABLE.partition("\n## ")[0], re.MULTILINE)
+    [name.removesuffix("/").removesuffix(".py") for name in re.findall(r"`([^`]+)`", row)]
+    for row in re.findall(r"^\| (`[^|]+`) \|", TABLE, re.MULTILINE)
 ]
-RANKS = {name.strip("/"): rank for rank, row in enumerate(ROWS) for name in row}
-BLIND = {("light", "mechanics"), ("mechanics", "light"), ("cable", "light")}
 
 
-def room_of(path: Path) -> str:
-    """Return the room a module belongs to."""
-    return path.relative_to(PACKAGE).parts[0].removesuffix(".py")
+def test_the_table_goes_from_the_ground_up() -> None:
+    """No row of the guide stands above one whose rooms lie on a lower floor."""
+    floors = [
+        [number for number, floor in enumerate(FLOORS) if room in floor]
+        for row in ROWS
+        for room in row
+        if room not in OUTSIDE
+    ]
+    assert all(len(found) == 1 for found in floors), "the guide names a room that is on no floor"
+    assert floors == sorted(floors)
 
 
-def imports_of(path: Path) -> Iterator[str]:
-    """Yield the rooms that a module imports from, wherever in it the import stands."""
-    for node in ast.walk(ast.parse(path.read_text("utf-8"))):
-        names: list[str] = []
-        if isinstance(node, ast.Import):
-            names = [alias.name for alias in node.names]
-        elif isinstance(node, ast.ImportFrom):
-            assert node.level == 0, f"{path.name} imports by dots"
-            names = [f"{node.module}.{alias.name}" for alias in node.names]
-        for name in names:
-            head, _, rest = name.partition(".")
-            if head == "routeplan":
-                yield rest.partition(".")[0]
-
-
-MODULES = sorted(
-    path for path in PACKAGE.rglob("*.py") if path.parent != PACKAGE or path.stem[0] != "_"
-)
-
-
-@pytest.mark.parametrize("path", MODULES, ids=lambda path: str(path.relative_to(PACKAGE)))
-def test_a_module_imports_from_rooms_above_its_own(path: Path) -> None:
-    """No import goes to a room below, none sideways between rooms that do not know each other."""
-    room = room_of(path)
-    assert room in RANKS, f"{room} has no line in the table of rooms in DEVELOPERS.md"
-    for other in imports_of(path):
-        if other in ("__version__", room):
-            continue
-        assert RANKS.get(other, len(ROWS)) <= RANKS[room], f"{path.name}: {room} imports {other}"
-        assert (room, other) not in BLIND
-
-
-def test_the_table_has_the_order_of_the_data() -> None:
-    """The table lists the main rooms from the ground up, and imports are really found."""
-    main = ("errors", "geodesy", "run", "ground", "cable", "light", "planning", "sheets", "cli")
-    assert [RANKS[room] for room in main] == sorted({RANKS[room] for room in main})
-    assert {"planning", "sheets", "run"} <= set(imports_of(PACKAGE / "cli.py"))
+def test_every_room_has_its_line() -> None:
+    """Each folder of the package, and each file that has a floor of its own, is in the table."""
+    listed = {room for row in ROWS for room in row}
+    folders = {path.parent.name for path in PACKAGE.glob("*/__init__.py")}
+    files = {path.stem for path in PACKAGE.glob("*.py")} & {
+        room for floor in FLOORS for room in floor
+    }
+    assert folders | files <= listed
