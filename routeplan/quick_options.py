@@ -229,13 +229,14 @@ def _own_problems(values: Mapping[str, Any]) -> Iterator[Problem]:
         remedy = "Keep one: splices follow from the reels."
         yield Problem(where="--reel-km", what="stands beside --splices", remedy=remedy)
     own = [o for o in OPTIONS if o.name in values and o.key.startswith("interface.")]
-    if own and values.get("interface") not in (None, ANY):
+    is_named = values.get("interface", ANY) != ANY
+    if own and is_named:
         yield Problem(
             where=own[0].label,
             what="stands beside --interface, which has its own figures",
             remedy="Name an interface, or give your own figures.",
         )
-    if own and "wavelength_nm" not in values:
+    elif own and "wavelength_nm" not in values:
         remedy = "Your own interface needs its wavelength."
         yield Problem(where="--wavelength-nm", what="is missing", remedy=remedy)
 

@@ -415,6 +415,53 @@ def test_new_names_a_layer(tmp_path: Path) -> None:
     assert main(["plan", str(tmp_path)]) == 0
 
 
+@pytest.mark.parametrize(
+    ("arguments", "code", "verdict"),
+    [
+        ("--glass-km 20 --splices 4 --interface 10GBASE-ER", 0, "fits"),
+        ("--glass-km 30 --splices 4 --interface 10GBASE-LR", 1, "fails"),
+        ("--sheath-km 20 --reel-km 4", 0, "unknown"),
+        ("--glass-km 20 --interface any", 0, "fits"),
+        ("--glass-km 300 --interface any", 1, "fails"),
+        (
+            "--glass-km 20 --wavelength-nm 1310 --tx-min-dbm -5 --rx-sensitivity-dbm -23",
+            0,
+            "fits",
+        ),
+    ],
+)
+def test_a_budget_needs_no_map(
+    arguments: str, code: int, verdict: str, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """A budget is printed as text and as JSON; only a fail has exit code 1."""
+    assert main(["budget", *arguments.split()]) == code
+    out, err = capsys.readouterr()
+    assert f"verdict: {verdict}\n" in out
+    assert err == ""
+    assert main(["budget", *arguments.split(), "--json"]) == code
+    found = json.loads(capsys.readouterr().out)
+    assert found["verdict"] == verdict
+    assert found["budgets"]
+
+
+def test_a_budget_says_everything_that_is_wrong(capsys: pytest.CaptureFixture[str]) -> None:
+    """Each wrong option is a line on stderr and an entry of the JSON, and nothing is worked out."""
+    wrong = "--glass-km twenty --fibre-type G652D --margin-db nan --splices -1"
+    assert main(["budget", *wrong.split()]) == 2
+    out, err = capsys.readouterr()
+    assert out == ""
+    options = ["--glass-km", "--splices", "--margin-db", "--fibre-type"]
+    assert [line.partition(":")[0] for line in err.splitlines()] == options
+    assert main(["budget", *wrong.split(), "--json"]) == 2
+    assert [p["where"] for p in problems_of(capsys.readouterr().out)] == options
+
+
+def test_a_budget_cannot_steer_the_terminal(capsys: pytest.CaptureFixture[str]) -> None:
+    """Escape sequences on the command line are spelt out."""
+    assert main(["budget", "--glass-km", "1", "--interface", "any\x1b[2J"]) == 2
+    assert "\x1b" not in capsys.readouterr().err
+
+
 @pytest.mark.parametrize("name", table_names())
 def test_tables_are_shown(name: str, capsys: pytest.CaptureFixture[str]) -> None:
     """Every table is shown as text and as JSON."""

@@ -19,7 +19,7 @@ from routeplan.terminal import visible
 __all__ = ["quick_json", "quick_text"]
 
 _WIDTH = 100
-_ITEM, _NUMBER = 28, 9
+_ITEM, _NUMBER = 20, 9
 _COLUMNS = ("count", "each", "sigma", "limit", "nominal", "worst")
 _M_PER_KM = 1000.0
 
@@ -259,7 +259,7 @@ def _closing_lines(answer: QuickAnswer) -> Iterator[str]:
         return
     yield "What closes it, least capable first:"
     yield ""
-    heads = f"{'Gbit/s':>9}{'allowed':>10}{'worst':>9}{'margin':>9}{'attenuator':>12}"
+    heads = f"{'Gbit/s':>9}{'allowed':>10}{'worst':>9}{'margin':>9}{'attenuator':>11}"
     yield f"{'interface':16}{heads}  wavelengths, nm"
     for closing in answer.closing:
         optic = closing.pair.at_from
@@ -269,7 +269,7 @@ def _closing_lines(answer: QuickAnswer) -> Iterator[str]:
         mend_db = max(budget.attenuator_db or 0.0 for budget in closing.budgets)
         mend = f"{mend_db:g} dB" if mend_db else "-"
         light = ", ".join(f"{nm:g}" for nm in closing.wavelengths_nm)
-        figures = f"{rate:>9}{allowed:>10}{worst:>9}{closing.margin_db:>9.3f}{mend:>12}"
+        figures = f"{rate:>9}{allowed:>10}{worst:>9}{closing.margin_db:>9.3f}{mend:>11}"
         yield f"{closing.pair.name:16}{figures}  {light}"
     yield ""
     yield "Decibels; the margin is the least of all wavelengths, the attenuator taken off."
