@@ -418,7 +418,7 @@ def test_new_names_a_layer(tmp_path: Path) -> None:
 @pytest.mark.parametrize(
     ("arguments", "code", "verdict"),
     [
-        ("--glass-km 20 --splices 4 --interface 10GBASE-ER", 0, "fits"),
+        ("--glass-km 20 --splices 3 --interface 10GBASE-ER", 0, "fits"),
         ("--glass-km 30 --splices 4 --interface 10GBASE-LR", 1, "fails"),
         ("--sheath-km 20 --reel-km 4", 0, "unknown"),
         ("--glass-km 20 --interface any", 0, "fits"),
