@@ -113,13 +113,15 @@ _COMMANDS_TAIL = """\
 | code | meaning |
 |---|---|
 | 0 | nothing fails (`unknown` is not failing) |
-| 1 | planned and all sheets written, but some check fails: see `checks.csv` |
+| 1 | planned and all sheets written, but some check fails: see `checks.csv`; a budget that fails |
 | 2 | the input is wrong or no layout is possible: one line a problem, nothing written |
 
 ## What `--json` prints
 
 - `plan`: what `plan.json` holds, see [sheets](sheets.md).
 - `check`: `problems`, which is empty, and `warnings` with `where` and `message`.
+- `budget`: verdict, what was asked, `budgets` as in `plan.json`, `changes`, `stretch_m`, `closing` and
+  `assumptions`; see [light](light.md).
 - `tables`: title, source, confidence and rows.
 - With exit code 2: `{"problems": [{"where", "what", "value", "limit", "remedy"}]}`.
 
