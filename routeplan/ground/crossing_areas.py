@@ -62,15 +62,13 @@ def insides(
         *(c.tolist() for c in (events.leg, owner, events.s0_m, events.s1_m)), strict=True
     ):
         met[leg, feature].append((start, max(start, end)))
-    is_area = np.isin(shapely.get_type_id(geometries), (3, 6))
     found: list[Inside] = []
-    for feature, leg in zip(near[0].tolist(), near[1].tolist(), strict=True):
-        if is_area[feature]:
-            area = geometries[feature]
-            found.extend(
-                Inside(leg=leg, feature=feature, start_m=start, end_m=end)
-                for start, end in _inside(legs, leg, area, met.get((leg, feature), []))
-            )
+    is_area = np.isin(shapely.get_type_id(geometries[near[0]]), (3, 6))
+    for feature, leg in zip(*(column[is_area].tolist() for column in near), strict=True):
+        spans = _inside(legs, leg, geometries[feature], met.get((leg, feature), []))
+        found.extend(
+            Inside(leg=leg, feature=feature, start_m=start, end_m=end) for start, end in spans
+        )
     return found
 
 

@@ -147,7 +147,10 @@ def find_crossings(
         within = insides(steps, segments, events, geometries=layer.geometries, near=near)
         crossed = contacts(steps, segments, _of_lines(layer, segments, events))
         shared: list[Contact | Alongside | Inside] = [*crossed, *beside, *within]
-        found.extend(_found(steps, legs, layer, segments, one) for one in shared)
+        middles = _middles(steps, shared)
+        for one, middle in zip(shared, middles, strict=True):
+            feature = int(segments.feature[one.part]) if isinstance(one, Contact) else one.feature
+            found.append(_found(steps, legs[one.leg], layer, feature, one, middle=middle))
     order = {leg.id: at for at, leg in enumerate(legs)}
     found.sort(key=lambda one: (order[one.leg], *_rank(one)))
     return tuple(found)
@@ -189,25 +192,36 @@ def _keys(layer: FeatureLayer, intervals: Intervals) -> dict[int, tuple[str, ...
     }
 
 
+def _middles(
+    steps: LegSegments, shared: Sequence[Contact | Alongside | Inside]
+) -> list[tuple[float, float]]:
+    """Return longitude and latitude of the middle of each."""
+    leg = np.array([one.leg for one in shared], dtype=np.int64)
+    at_m = np.array([0.5 * (one.start_m + one.end_m) for one in shared])
+    lonlat = np.empty((len(shared), 2))
+    for number in np.unique(leg).tolist():
+        lonlat[leg == number] = positions(steps, number, at_m[leg == number])
+    return list(zip(geodesy.wrapped(lonlat[:, 0]).tolist(), lonlat[:, 1].tolist(), strict=True))
+
+
 def _found(
     steps: LegSegments,
-    legs: Sequence[Leg],
+    leg: Leg,
     layer: FeatureLayer,
-    features: FeatureSegments,
+    feature: int,
     one: Contact | Alongside | Inside,
+    *,
+    middle: tuple[float, float],
 ) -> FoundCrossing:
-    leg = legs[one.leg]
     how: How
     start_m, end_m, angle = one.start_m, one.end_m, None
     if isinstance(one, Contact):
-        feature = int(features.feature[one.part])
         how, angle = ("crosses" if one.crosses else "touches"), one.angle_deg
         start_m = end_m = 0.5 * (start_m + end_m)
+    elif isinstance(one, Inside):
+        how = "inside" if end_m > start_m else "touches"
     else:
-        feature = one.feature
-        inside: How = "inside" if end_m > start_m else "touches"
-        how = inside if isinstance(one, Inside) else "along"
-    middle = positions(steps, one.leg, np.array([0.5 * (start_m + end_m)]))[0]
+        how = "along"
     span = round(start_m * 1000.0), round(end_m * 1000.0)
     if steps.is_turned[one.leg]:
         span = leg.length_mm - span[1], leg.length_mm - span[0]
@@ -221,8 +235,8 @@ def _found(
         start_mm=span[0],
         end_mm=span[1],
         angle_deg=angle,
-        lon=float(geodesy.wrapped(middle[:1])[0]),
-        lat=float(middle[1]),
+        lon=middle[0],
+        lat=middle[1],
         file=layer.file,
         feature=feature,
     )

@@ -129,7 +129,8 @@ def _run_on(geometries: Geometries) -> Geometries:
     turns = np.round((bounds[:, 0] + bounds[:, 2]) / 720.0)
     for at in np.flatnonzero(turns).tolist():
         back = np.array([360.0 * turns[at], 0.0])
-        geometries[at] = shapely.transform(geometries[at], lambda xy, back=back: xy - back)
+        moved = shapely.get_coordinates(geometries[at]) - back
+        geometries[at] = shapely.set_coordinates(geometries[at], moved)
     return geometries
 
 
