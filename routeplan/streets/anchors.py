@@ -9,7 +9,7 @@ import numpy as np
 
 from routeplan.errors import GeometryError, InfeasibleError, Problem
 from routeplan.geodesy import local_xy_m, steps_m
-from routeplan.streets.model import Flags, Floats, Network
+from routeplan.streets.model import Flags, Network
 
 __all__ = ["OFF_STREET_MAX_M", "Anchor", "anchored"]
 
@@ -120,7 +120,7 @@ def _within(
     usable: Flags,
     reach_m: float,
 ) -> Anchor | None:
-    name, lon, lat = site
+    _, lon, lat = site
     north = reach_m / 110_000.0
     east = north / max(np.cos(np.radians(min(abs(lat) + north, 89.9))), 1e-3)
     vertices = network.shape_lonlat

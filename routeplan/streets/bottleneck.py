@@ -40,24 +40,22 @@ def bottlenecks_of(
     """
     path = np.array([*tails_of(graph, arcs), target])
     low, high = _spans(graph, arcs, path, open_nodes=not by_junction)
-    found = []
     if by_junction:
         # Junction i is passed round if a span reaches from before it to behind it.
         reach = np.zeros(len(path) + 1, dtype=np.int64)
         np.add.at(reach, np.minimum(low + 1, high), 1)
         np.add.at(reach, high, -1)
         covered = np.cumsum(reach)[: len(path)] > 0
-        for at in np.flatnonzero(~covered[1:-1]) + 1:
-            found.append(_junction(graph, int(path[at]), arcs[int(at)]))
+        cut = (np.flatnonzero(~covered[1:-1]) + 1).tolist()
+        found = [_junction(graph, int(path[at]), arcs[at]) for at in cut]
         if len(path) > 2:
             return tuple(found)
     reach = np.zeros(len(path) + 1, dtype=np.int64)
     np.add.at(reach, low, 1)
     np.add.at(reach, high, -1)
     covered = np.cumsum(reach)[: len(path) - 1] > 0
-    for at in np.flatnonzero(~covered):
-        found.append(_street(graph, arcs[int(at)], int(path[at])))
-    return tuple(_merged(found))
+    cut = np.flatnonzero(~covered).tolist()
+    return tuple(_merged([_street(graph, arcs[at], int(path[at])) for at in cut]))
 
 
 def _spans(

@@ -13,6 +13,7 @@ import zlib
 from collections.abc import Callable, Sequence
 from dataclasses import fields
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 
@@ -58,7 +59,9 @@ def cached_network(
     build
         Makes it.
     """
-    stamp = json.dumps([_VERSION, [file_digest(source) for source in sources], list(map(str, options))])
+    stamp = json.dumps(
+        [_VERSION, [file_digest(source) for source in sources], list(map(str, options))]
+    )
     place = cache_path(sources[0])
     kept = _load(place, stamp)
     if kept is not None:
@@ -76,7 +79,7 @@ def _load(place: Path, stamp: str) -> Network | None:
                 return None
             text = json.loads(bytes(held["text"]).decode())
             arrays = {key: held[key] for key in held.files if key not in ("stamp", "text")}
-        words = {key: tuple(text[key]) for key in _TEXT}
+        words: dict[str, Any] = {key: tuple(text[key]) for key in _TEXT}
         words["notes"] = tuple((where, message) for where, message in text["notes"])
         network = Network(**arrays, **words)
     except _BROKEN:

@@ -152,7 +152,7 @@ def street_costs(
         existing=MappingProxyType(table["existing"]),
         crossing=MappingProxyType(table["crossing"]),
         usual_placement=placement,
-        **table["rule"],  # type: ignore[arg-type]
+        **table["rule"],
     )
 
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field
+from typing import Any
 
 import numpy as np
 
@@ -49,12 +50,12 @@ def find_crossings(
     if not obstacles or len(shape_first) < 2:
         return Crossings()
     owner = np.repeat(np.arange(len(shape_first) - 1), np.diff(shape_first))
-    edges = shapely.linestrings(shape_lonlat, indices=owner)
-    blocks = [shapely.linestrings(line) for _, line in obstacles]
+    edges: Any = shapely.linestrings(shape_lonlat, indices=owner)
+    blocks: Any = [shapely.linestrings(line) for _, line in obstacles]
     edge, block = shapely.STRtree(blocks).query(edges, predicate="intersects")
     if not len(edge):
         return Crossings()
-    met = shapely.intersection(edges[edge], np.array(blocks)[block])
+    met: Any = shapely.intersection(edges[edge], np.array(blocks)[block])
     rows: set[tuple[int, int, float, float, float]] = set()
     for one, other, shape in zip(edge.tolist(), block.tolist(), met, strict=True):
         kind = CROSSING_KINDS.index(obstacles[other][0])

@@ -89,12 +89,15 @@ def _check(request: Request, deadline_s: float) -> None:
         and 0.0 < request.radius_m <= _RADIUS_MAX_M
     ):
         problem = (
-            "is out of range", f"{request.radius_m:g} m round {request.lon:g}, {request.lat:g}"
+            "is out of range",
+            f"{request.radius_m:g} m round {request.lon:g}, {request.lat:g}",
         )
     elif not deadline_s > 0.0:
         problem = ("has a deadline that is not more than 0 s", f"{deadline_s:g} s")
     if problem:
-        raise InputError(Problem(where=f"streets by {request.by}", what=problem[0], value=problem[1]))
+        raise InputError(
+            Problem(where=f"streets by {request.by}", what=problem[0], value=problem[1])
+        )
 
 
 def _label(request: Request) -> str:
@@ -148,6 +151,7 @@ def _fetch_graph(request: Request, path: str, folder: str, deadline_s: float) ->
         "cache_folder": str(Path(folder) / "answers"),
         "use_cache": True,
         "overpass_rate_limit": False,  # asking for the limit is what hangs without a network
+        "doh_url_template": None,  # addresses as the system resolves them
         "requests_timeout": max(deadline_s / 2.0, 1.0),
         "log_console": False,
     }
@@ -162,9 +166,7 @@ def _fetch_graph(request: Request, path: str, folder: str, deadline_s: float) ->
     elif request.by == "box":
         graph = osmnx.graph_from_bbox(request.box, **kind)
     else:
-        graph = osmnx.graph_from_point(
-            (request.lat, request.lon), dist=request.radius_m, **kind
-        )
+        graph = osmnx.graph_from_point((request.lat, request.lon), dist=request.radius_m, **kind)
     osmnx.save_graphml(graph, path)
 
 

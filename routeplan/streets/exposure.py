@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import Any
 
 import numpy as np
 
@@ -35,14 +36,18 @@ def exposures_between(main: Way, standby: Way, *, distance_m: float) -> tuple[Ex
     away = near_m_of(points, standby.lonlat)
     shared = _shared_pieces(main, standby)
     is_shared = _within(along, shared)
-    kinds = np.where(is_shared, 2, np.where(away <= _SHARED_M, 1, np.where(away < distance_m, 0, -1)))
+    kinds = np.where(
+        is_shared, 2, np.where(away <= _SHARED_M, 1, np.where(away < distance_m, 0, -1))
+    )
     # A single point in common is a junction; it stands inside a stretch that is merely near.
     found: list[Exposure] = []
     for first, last in _runs(kinds >= 0):
         own = slice(first, last + 1)
         for kind, begin, end in _split(kinds[own], along[own]):
             inside = (along >= begin) & (along <= end)
-            found.append(_exposure(main, kind, begin, end, float(away[inside].min()), points, along))
+            nearest_m = float(away[inside].min())
+            stretch = (kind, begin, end)
+            found.append(_exposure(main, stretch, nearest_m=nearest_m, points=points, along=along))
     return tuple(found)
 
 
@@ -64,7 +69,8 @@ def near_m_of(points: Floats, lonlat: Floats) -> Floats:
     turn = 360.0 * np.round((points[:, 0] - line[0, 0]) / 360.0)
     moved = np.column_stack([points[:, 0] - turn, points[:, 1]]) * flat
     steps = np.stack([line[:-1] * flat, line[1:] * flat], axis=1)
-    tree = shapely.STRtree(shapely.linestrings(steps))
+    drawn: Any = shapely.linestrings(steps)
+    tree = shapely.STRtree(drawn)
     (number, _), far = tree.query_nearest(
         shapely.points(moved), return_distance=True, all_matches=False
     )
@@ -78,7 +84,9 @@ def _points(lonlat: Floats) -> tuple[Floats, Floats]:
     steps = steps_m(lonlat)
     counts = np.maximum(np.ceil(steps / _STEP_M).astype(np.int64), 1)
     owner = np.repeat(np.arange(len(steps)), counts)
-    share = (np.arange(counts.sum()) - np.repeat(np.cumsum(counts) - counts, counts)) / counts[owner]
+    share = (np.arange(counts.sum()) - np.repeat(np.cumsum(counts) - counts, counts)) / counts[
+        owner
+    ]
     line = np.column_stack([unwrapped(lonlat[:, 0]), lonlat[:, 1]])
     points = line[owner] + share[:, None] * (line[owner + 1] - line[owner])
     chain = np.concatenate([[0.0], np.cumsum(steps)])
@@ -129,8 +137,11 @@ def _runs(flags: np.ndarray) -> list[tuple[int, int]]:
     """Return the first and last index of every run of true values."""
     edges = np.diff(np.concatenate([[False], flags, [False]]).astype(np.int8))
     return list(
-        zip(np.flatnonzero(edges == 1).tolist(), (np.flatnonzero(edges == -1) - 1).tolist(),
-            strict=True)
+        zip(
+            np.flatnonzero(edges == 1).tolist(),
+            (np.flatnonzero(edges == -1) - 1).tolist(),
+            strict=True,
+        )
     )
 
 
@@ -162,19 +173,19 @@ def _apart(marks: Sequence[float]) -> list[float]:
 
 def _exposure(
     main: Way,
-    kind: int,
-    begin_m: float,
-    end_m: float,
+    stretch: tuple[int, float, float],
+    *,
     nearest_m: float,
     points: Floats,
     along: Floats,
 ) -> Exposure:
+    kind, begin_m, end_m = stretch
     middle = 0.5 * (begin_m + end_m)
     at = int(np.argmin(np.abs(along - middle)))
     part = _part_at(main, middle)
     lon = (float(points[at, 0]) + 180.0) % 360.0 - 180.0
     return Exposure(
-        kind=("near", "junction", "shared")[kind],  # type: ignore[arg-type]
+        kind=("near", "junction", "shared")[kind],
         from_m=begin_m,
         to_m=end_m,
         length_m=end_m - begin_m,

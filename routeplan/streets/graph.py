@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Sequence
-from dataclasses import dataclass
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from itertools import pairwise
 
 import numpy as np
 
@@ -66,57 +67,68 @@ def graph_of(network: Network, prices: Prices, anchors: Sequence[Anchor]) -> Gra
     anchors
         The sites.
     """
-    row_node = network.row_node.copy()
-    row_piece = network.row_edge.copy()
-    cost = prices.cost[network.row_edge]
-    node_count = len(network.node_lonlat)
     on_edge: dict[int, list[int]] = defaultdict(list)
-    terminals = [anchor.node for anchor in anchors]
     for number, anchor in enumerate(anchors):
         if anchor.node < 0:
             on_edge[anchor.edge].append(number)
-    pieces: list[tuple[int, float, float, int, int]] = []
-    new_rows: list[tuple[tuple[int, int, float], tuple[int, int, float]]] = []
+    cuts = _Cuts(
+        node=network.row_node.copy(),
+        piece=network.row_edge.copy(),
+        cost=prices.cost[network.row_edge],
+        terminals=[anchor.node for anchor in anchors],
+    )
     for edge, numbers in on_edge.items():
-        numbers.sort(key=lambda number: anchors[number].along_m)
-        nodes, marks = [int(network.edge_start[edge])], [0.0]
-        for number in numbers:
-            along = anchors[number].along_m
-            if len(nodes) == 1 or along - marks[-1] > _SAME_PLACE_M:
-                nodes.append(node_count + len(new_rows) + len(nodes) - 1)
-                marks.append(along)
-            terminals[number] = nodes[-1]
-        nodes.append(int(network.edge_end[edge]))
-        marks.append(float(network.length_m[edge]))
-        first_piece = len(prices.cost) + len(pieces)
-        prices_here = [
-            piece_cost(network, prices, edge, begin, end)
-            for begin, end in zip(marks, marks[1:], strict=False)
-        ]
-        for at in range(len(nodes) - 1):
-            pieces.append((edge, marks[at], marks[at + 1], nodes[at], nodes[at + 1]))
-        for at in range(1, len(nodes) - 1):
-            back = (nodes[at - 1], first_piece + at - 1, prices_here[at - 1])
-            onward = (nodes[at + 1], first_piece + at, prices_here[at])
-            new_rows.append((back, onward))
-        begin_slot, end_slot = _slots(network, edge)
-        last = len(nodes) - 2
-        row_node[begin_slot], row_node[end_slot] = nodes[1], nodes[-2]
-        row_piece[begin_slot], row_piece[end_slot] = first_piece, first_piece + last
-        cost[begin_slot], cost[end_slot] = prices_here[0], prices_here[-1]
-    arcs = [arc for row in new_rows for arc in row]
-    rows_first = network.row_first[-1] + 2 * np.arange(1, len(new_rows) + 1)
+        _cut_edge(cuts, network, prices, edge, {n: anchors[n].along_m for n in numbers})
+    rows = network.row_first[-1] + 2 * np.arange(1, len(cuts.arcs) // 2 + 1)
     return Graph(
         network=network,
         prices=prices,
         anchors=tuple(anchors),
-        terminals=tuple(terminals),
-        row_first=np.concatenate([network.row_first, rows_first]).astype(np.int32),
-        row_node=np.concatenate([row_node, [arc[0] for arc in arcs]]).astype(np.int32),
-        row_piece=np.concatenate([row_piece, [arc[1] for arc in arcs]]).astype(np.int32),
-        cost=np.concatenate([cost, [arc[2] for arc in arcs]]),
-        pieces=tuple(pieces),
+        terminals=tuple(cuts.terminals),
+        row_first=np.concatenate([network.row_first, rows]).astype(np.int32),
+        row_node=np.concatenate([cuts.node, [arc[0] for arc in cuts.arcs]]).astype(np.int32),
+        row_piece=np.concatenate([cuts.piece, [arc[1] for arc in cuts.arcs]]).astype(np.int32),
+        cost=np.concatenate([cuts.cost, [arc[2] for arc in cuts.arcs]]),
+        pieces=tuple(cuts.pieces),
     )
+
+
+@dataclass(slots=True, kw_only=True, eq=False)
+class _Cuts:
+    """The arcs of a network while its edges are cut; two new arcs (head, piece, price) a site."""
+
+    node: Whole
+    piece: Whole
+    cost: Floats
+    terminals: list[int]
+    pieces: list[tuple[int, float, float, int, int]] = field(default_factory=list)
+    arcs: list[tuple[int, int, float]] = field(default_factory=list)
+
+
+def _cut_edge(
+    cuts: _Cuts, network: Network, prices: Prices, edge: int, along_m: Mapping[int, float]
+) -> None:
+    """Put sites into an edge: its own two arcs lead to the first and last, theirs to each other."""
+    new_node = len(network.node_lonlat) + len(cuts.arcs) // 2
+    nodes, marks = [int(network.edge_start[edge])], [0.0]
+    for number in sorted(along_m, key=lambda number: (along_m[number], number)):
+        if len(nodes) == 1 or along_m[number] - marks[-1] > _SAME_PLACE_M:
+            nodes.append(new_node + len(nodes) - 1)
+            marks.append(along_m[number])
+        cuts.terminals[number] = nodes[-1]
+    nodes.append(int(network.edge_end[edge]))
+    marks.append(float(network.length_m[edge]))
+    first = len(prices.cost) + len(cuts.pieces)
+    costs = [piece_cost(network, prices, edge, begin, end) for begin, end in pairwise(marks)]
+    spans, ends = pairwise(marks), pairwise(nodes)
+    cuts.pieces.extend((edge, *span, *pair) for span, pair in zip(spans, ends, strict=True))
+    for at in range(1, len(nodes) - 1):
+        cuts.arcs.append((nodes[at - 1], first + at - 1, costs[at - 1]))
+        cuts.arcs.append((nodes[at + 1], first + at, costs[at]))
+    begin_slot, end_slot = _slots(network, edge)
+    cuts.node[begin_slot], cuts.node[end_slot] = nodes[1], nodes[-2]
+    cuts.piece[begin_slot], cuts.piece[end_slot] = first, first + len(costs) - 1
+    cuts.cost[begin_slot], cuts.cost[end_slot] = costs[0], costs[-1]
 
 
 def _slots(network: Network, edge: int) -> tuple[int, int]:
@@ -130,9 +142,7 @@ def _slots(network: Network, edge: int) -> tuple[int, int]:
     return int(found[0][0]), int(found[1][-1])
 
 
-def piece_cost(
-    network: Network, prices: Prices, edge: int, from_m: float, to_m: float
-) -> float:
+def piece_cost(network: Network, prices: Prices, edge: int, from_m: float, to_m: float) -> float:
     """Return what a part of an edge costs: its metres, and the crossings and bends on it."""
     if not np.isfinite(prices.cost[edge]):
         return float("inf")

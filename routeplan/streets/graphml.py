@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import warnings
 from collections.abc import Mapping
 from pathlib import Path
@@ -90,9 +91,7 @@ def lines_of_graph(graph: Any, *, where: str) -> Lines:
     )
 
 
-def _shape(
-    data: Mapping[str, Any], start: tuple[float, float], end: tuple[float, float]
-) -> Floats:
+def _shape(data: Mapping[str, Any], start: tuple[float, float], end: tuple[float, float]) -> Floats:
     """Return the vertices of an edge; a straight one has none but its nodes."""
     geometry = data.get("geometry")
     if geometry is None:
@@ -117,6 +116,6 @@ def _first(data: Mapping[str, Any], key: str) -> str:
     value = data.get(key)
     if isinstance(value, list | tuple):
         value = value[0] if value else None
-    if value is None or value != value:
+    if value is None or (isinstance(value, float) and math.isnan(value)):
         return ""
     return " ".join(str(value).split())

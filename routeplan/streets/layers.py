@@ -150,9 +150,7 @@ def _is_set(known: Mapping[str, object], key: str) -> bool:
     return bool(value)
 
 
-def _placement(
-    known: Mapping[str, object], where: str, usual: str | None, trouble: Trouble
-) -> str:
+def _placement(known: Mapping[str, object], where: str, usual: str | None, trouble: Trouble) -> str:
     word = _text(known, "placement").lower()
     if not word:
         return usual or ""

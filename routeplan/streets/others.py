@@ -111,7 +111,9 @@ def _check(count: int, overlap_max_ratio: float, dearer_max_ratio: float) -> Non
     problems = []
     if not 1 <= count <= 20:
         problems.append(
-            Problem(where="number of ways", what="is out of range", value=str(count), limit="1 to 20")
+            Problem(
+                where="number of ways", what="is out of range", value=str(count), limit="1 to 20"
+            )
         )
     if not 0.0 < overlap_max_ratio < 1.0:
         problems.append(

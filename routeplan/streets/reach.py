@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 
@@ -126,7 +127,7 @@ def _put(
 def _between(marks: Sequence[float], spacing_m: float) -> list[float]:
     """Return the fewest marks that leave no gap longer than the spacing, evenly in each gap."""
     found: list[float] = []
-    for begin, end in zip(marks, marks[1:], strict=False):
+    for begin, end in pairwise(marks):
         count = int(np.ceil((end - begin) / spacing_m - 1e-9))
         found.extend((begin + (end - begin) * at / count) for at in range(1, count))
     return found
@@ -143,8 +144,10 @@ def _mapped(network: Network, way: Way, chain: Floats) -> list[tuple[float, str]
         return []
     rows = rows[near_m_of(network.place_lonlat[rows], way.lonlat) <= _MAPPED_M]
     found = [
-        (_along_m(way.lonlat, chain, network.place_lonlat[row]),
-         network.place_words[int(network.place_kind[row])])
+        (
+            _along_m(way.lonlat, chain, network.place_lonlat[row]),
+            network.place_words[int(network.place_kind[row])],
+        )
         for row in rows
     ]
     return sorted(found)
@@ -157,9 +160,7 @@ def _along_m(lonlat: Floats, chain: Floats, point: Floats) -> float:
     xy = np.column_stack([east, north])
     step = xy[1:] - xy[:-1]
     squared = (step * step).sum(axis=1)
-    share = np.clip(
-        -(xy[:-1] * step).sum(axis=1) / np.where(squared > 0, squared, 1.0), 0.0, 1.0
-    )
+    share = np.clip(-(xy[:-1] * step).sum(axis=1) / np.where(squared > 0, squared, 1.0), 0.0, 1.0)
     off = ((xy[:-1] + share[:, None] * step) ** 2).sum(axis=1)
     at = int(np.argmin(off))
     return float(chain[at] + share[at] * (chain[at + 1] - chain[at]))

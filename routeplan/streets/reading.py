@@ -8,7 +8,7 @@ from pathlib import Path
 
 from routeplan.errors import GeometryError, Problem
 from routeplan.streets.cache import cached_network
-from routeplan.streets.model import Network
+from routeplan.streets.model import Floats, Network
 
 __all__ = ["StreetSource", "read_network"]
 
@@ -80,10 +80,13 @@ def _file_of(path: Path) -> Path:
 
 
 def _built(source: StreetSource) -> Network:
-    from routeplan.streets.assemble import Places, assembled, joined_lines
+    from routeplan.streets.assemble import Lines, Places, assembled, joined_lines
     from routeplan.streets.noding import linked_lines, noded_lines
 
-    lines, obstacles, notes, places = [], [], [], Places()
+    lines: list[Lines] = []
+    obstacles: list[tuple[str, Floats]] = []
+    notes: list[tuple[str, str]] = []
+    places = Places()
     for path in source.streets:
         suffix = path.suffix.lower()
         if suffix in _OSM:
@@ -110,9 +113,7 @@ def _built(source: StreetSource) -> Network:
 
         routes = []
         for path in source.existing:
-            layer, said = read_layers(
-                path, crs=source.crs, placement=source.existing_placement
-            )
+            layer, said = read_layers(path, crs=source.crs, placement=source.existing_placement)
             routes.append(noded_lines(layer) if source.noded else layer)
             notes.extend(said)
         streets = linked_lines(streets, joined_lines(routes), link_m=source.link_m)

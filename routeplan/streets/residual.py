@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections import defaultdict
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 
@@ -41,8 +42,8 @@ def least_pair(
     by_junction
         Whether they may not meet at a junction.
     shared_factor
-        What a street (or a junction, as dear as the street before it) costs the second time, as a
-        multiple; infinite: it is not allowed.
+        How many times its price a street costs the second way, and a junction that of its
+        cheapest street; infinite: neither may be used twice.
 
     Raises
     ------
@@ -66,7 +67,8 @@ def least_pair(
     shared = _second_use(graph, first, found, path, shared_factor)
     back = [_twin(graph, arc, tail) for arc, tail in zip(first, path, strict=False)]
     if by_junction:
-        _split_junctions(left, path, first, back, shared)
+        again = _junctions_again(graph, path[1:-1], shared_factor)
+        _split_junctions(left, path, (first, back), (shared, again))
     else:
         left.cost[first] = shared
         left.cost[back] = 0.0
@@ -105,6 +107,14 @@ def _second_use(
     cost = graph.cost[first]
     again = cost * factor + found[path[:-1]] - found[path[1:]]
     return np.maximum(again, 0.0)
+
+
+def _junctions_again(graph: Graph, nodes: list[int], factor: float) -> list[float]:
+    """Return what each junction costs the second way."""
+    if np.isinf(factor):
+        return [np.inf] * len(nodes)
+    rows = [slice(int(graph.row_first[node]), int(graph.row_first[node + 1])) for node in nodes]
+    return [factor * float(graph.cost[row].min()) for row in rows]
 
 
 @dataclass(slots=True, eq=False)
@@ -157,7 +167,10 @@ class _Left:
 
 
 def _split_junctions(
-    left: _Left, path: list[int], first: list[int], back: list[int], shared: Floats
+    left: _Left,
+    path: list[int],
+    arcs: tuple[list[int], list[int]],
+    twice: tuple[Floats, list[float]],
 ) -> None:
     """
     Split every junction inside the first way into an entrance and an exit.
@@ -167,6 +180,7 @@ def _split_junctions(
     a junction may be used twice. The arc along the first way leads to a node of its own, from
     which one goes back to the entrance, or along the street a second time.
     """
+    (first, back), (shared, junction) = arcs, twice
     inner = path[1:-1]
     entrance = {node: left.size + number for number, node in enumerate(inner)}
     again = {node: left.size + len(inner) + number for number, node in enumerate(path[:-1])}
@@ -174,7 +188,7 @@ def _split_junctions(
     moved[inner] = [entrance[node] for node in inner]
     left.node[:] = moved[left.node]
     for at, node in enumerate(inner, start=1):
-        left.extra.append([(path[at - 1], 0.0, back[at - 1]), (node, float(shared[at - 1]), -1)])
+        left.extra.append([(path[at - 1], 0.0, back[at - 1]), (node, junction[at - 1], -1)])
     for at, node in enumerate(path[:-1]):
         following = path[at + 1]
         row = [(entrance.get(following, following), float(shared[at]), first[at])]
@@ -198,7 +212,7 @@ def _real_arcs(left: _Left, before: Whole, source: int, target: int) -> list[int
     nodes.reverse()
     base = int(left.first[-1])
     arcs = []
-    for tail, head in zip(nodes, nodes[1:], strict=False):
+    for tail, head in pairwise(nodes):
         own = np.arange(int(first[tail]), int(first[tail + 1]))
         own = own[heads[own] == head]
         arc = int(own[np.argmin(prices[own])])
@@ -231,9 +245,7 @@ def _untangled(
     return PairArcs(first=ways[0], second=ways[1])
 
 
-def _walked(
-    graph: Graph, leaving: dict[int, list[int]], *, source: int, target: int
-) -> list[int]:
+def _walked(graph: Graph, leaving: dict[int, list[int]], *, source: int, target: int) -> list[int]:
     """Return one way along the arcs left, rounds that cost nothing left out."""
     arcs: list[int] = []
     at = {source: 0}

@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
+from typing import Any
+
 import numpy as np
 
 from routeplan.streets.graph import Graph
@@ -36,8 +39,9 @@ def distances(
     from scipy.sparse.csgraph import dijkstra
 
     size = len(row_first) - 1
-    graph = csr_array((cost, row_node, row_first), shape=(size, size))
-    found, before = dijkstra(
+    graph: Any = csr_array((cost, row_node, row_first), shape=(size, size))
+    search: Any = dijkstra
+    found, before = search(
         graph, directed=True, indices=source, return_predecessors=True, limit=limit
     )
     return found, before
@@ -65,7 +69,7 @@ def arcs_to(graph: Graph, before: Whole, target: int, *, cost: Floats | None = N
     prices = graph.cost if cost is None else cost
     return [
         least_arc(graph.row_first, graph.row_node, prices, tail=tail, head=head)
-        for tail, head in zip(nodes, nodes[1:], strict=False)
+        for tail, head in pairwise(nodes)
     ]
 
 

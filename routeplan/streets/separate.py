@@ -97,7 +97,8 @@ def _check(sites: Sequence[Site], distance_m: float | None) -> None:
     if len(sites) != 2:
         raise InputError(
             Problem(
-                where="sites", what="two separate ways run between two sites",
+                where="sites",
+                what="two separate ways run between two sites",
                 value=f"{len(sites)} given",
             )
         )
@@ -112,13 +113,9 @@ def _check(sites: Sequence[Site], distance_m: float | None) -> None:
         )
 
 
-def _pair(
-    graph: Graph, source: int, target: int, *, by_junction: bool, factor: float
-) -> PairArcs:
+def _pair(graph: Graph, source: int, target: int, *, by_junction: bool, factor: float) -> PairArcs:
     try:
-        return least_pair(
-            graph, source, target, by_junction=by_junction, shared_factor=factor
-        )
+        return least_pair(graph, source, target, by_junction=by_junction, shared_factor=factor)
     except LookupError:
         raise no_way(graph, graph.anchors[0], graph.anchors[1]) from None
 

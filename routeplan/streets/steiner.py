@@ -158,7 +158,11 @@ def near_tree(graph: Graph, terminals: Sequence[int]) -> Arcs:
     arcs: set[int] = set()
     while len(joined) < len(terminals):
         pairs = [
-            (float(found[one if one in found else other][0][other if one in found else one]), one, other)
+            (
+                float(found[one if one in found else other][0][other if one in found else one]),
+                one,
+                other,
+            )
             for one in joined
             for other in terminals
             if other not in joined
@@ -179,9 +183,7 @@ def near_tree(graph: Graph, terminals: Sequence[int]) -> Arcs:
 def _pruned(graph: Graph, arcs: set[int], terminals: set[int]) -> Arcs:
     """Return the least spanning tree of some arcs, cut back until every leaf is a terminal."""
     order = sorted(arcs, key=lambda arc: (float(graph.cost[arc]), arc))
-    tails = dict(
-        zip(order, np.searchsorted(graph.row_first, order, side="right") - 1, strict=True)
-    )
+    tails = dict(zip(order, np.searchsorted(graph.row_first, order, side="right") - 1, strict=True))
     parent: dict[int, int] = {}
 
     def root(node: int) -> int:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Sequence
+from collections.abc import Container, Mapping, Sequence
 
 import numpy as np
 
@@ -11,8 +11,8 @@ from routeplan.errors import InfeasibleError, Problem
 from routeplan.streets.anchors import OFF_STREET_MAX_M
 from routeplan.streets.best import Site, site_graph
 from routeplan.streets.costs import Prices
-from routeplan.streets.graph import Graph, piece_of
 from routeplan.streets.edges import edge_part
+from routeplan.streets.graph import Graph, piece_of
 from routeplan.streets.model import Network, Tree, Way
 from routeplan.streets.search import distances
 from routeplan.streets.steiner import exact_tree, exact_work, near_tree
@@ -77,9 +77,7 @@ def site_tree(
 
 
 def _apart(graph: Graph) -> InfeasibleError:
-    found, _ = distances(
-        graph.row_first, graph.row_node, graph.cost, source=graph.terminals[0]
-    )
+    found, _ = distances(graph.row_first, graph.row_node, graph.cost, source=graph.terminals[0])
     first = graph.anchors[0].name
     names = [
         anchor.name
@@ -99,11 +97,11 @@ def _branches(
     graph: Graph, arcs: Sequence[int]
 ) -> tuple[list[Way], list[tuple[int, int]], list[int]]:
     """Return the ways between sites and forks, what ends each, and the forks' nodes."""
-    meeting: dict[int, list[tuple[int, int]]] = defaultdict(list)
+    meeting: dict[int, list[int]] = defaultdict(list)
     for arc, tail in zip(arcs, tails_of(graph, arcs), strict=True):
         head = int(graph.row_node[arc])
-        meeting[tail].append((arc, head))
-        meeting[head].append((_back(graph, arc, tail), tail))
+        meeting[tail].append(arc)
+        meeting[head].append(_back(graph, arc, tail))
     first_site: dict[int, int] = {}
     for number, node in enumerate(graph.terminals):
         first_site.setdefault(node, number)
@@ -115,8 +113,7 @@ def _branches(
         if graph.terminals.count(node) > 1 or (_walks(graph, number) and len(meeting[node]) > 1)
     }
     forks = sorted(
-        {node for node, own in meeting.items() if len(own) > 2 and node not in first_site}
-        | crowded
+        {node for node, own in meeting.items() if len(own) > 2 and node not in first_site} | crowded
     )
     number_of = {node: -1 - at for at, node in enumerate(forks)}
     for node, site in first_site.items():
@@ -128,25 +125,27 @@ def _branches(
             ends.append((site, number_of[node]))
     seen: set[int] = set()
     for node in sorted(number_of):
-        for arc, head in meeting[node]:
+        for arc in meeting[node]:
             if int(graph.row_piece[arc]) in seen:
                 continue
-            chain = [arc]
-            while head not in number_of:
-                chain.append(
-                    next(
-                        on
-                        for on, _ in meeting[head]
-                        if int(graph.row_piece[on]) != int(graph.row_piece[chain[-1]])
-                    )
-                )
-                head = int(graph.row_node[chain[-1]])
+            chain = _chain(graph, meeting, arc, stops=number_of)
             seen.update(int(graph.row_piece[each]) for each in chain)
-            one, other = number_of[node], number_of[head]
+            one, other = number_of[node], number_of[int(graph.row_node[chain[-1]])]
             sites = tuple(end if end >= 0 else None for end in (one, other))
             ways.append(way_of(graph, [chain], sites))
             ends.append((one, other))
     return ways, ends, forks
+
+
+def _chain(
+    graph: Graph, meeting: Mapping[int, Sequence[int]], arc: int, *, stops: Container[int]
+) -> list[int]:
+    """Return the arcs from one of them on, up to a site or fork."""
+    chain = [arc]
+    while (node := int(graph.row_node[chain[-1]])) not in stops:
+        piece = int(graph.row_piece[chain[-1]])
+        chain.append(next(on for on in meeting[node] if int(graph.row_piece[on]) != piece))
+    return chain
 
 
 def _walks(graph: Graph, number: int) -> bool:

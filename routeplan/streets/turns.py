@@ -84,8 +84,9 @@ def arc_headings_rad(graph: Graph, tail: Whole) -> tuple[Floats, Floats]:
     count = graph.edge_count
     begin, end = network.shape_first[:-1], network.shape_first[1:] - 1
     shape = network.shape_lonlat
-    leave, arrive = headings_rad(shape[begin], shape[begin + 1]), headings_rad(
-        shape[end - 1], shape[end]
+    leave, arrive = (
+        headings_rad(shape[begin], shape[begin + 1]),
+        headings_rad(shape[end - 1], shape[end]),
     )
     starts = network.edge_start
     if graph.pieces:

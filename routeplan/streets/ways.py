@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from itertools import pairwise
 
 import numpy as np
 
@@ -191,7 +192,7 @@ def _junctions(graph: Graph, parts: Sequence[Part], ends_m: Floats) -> tuple[flo
     degree = np.diff(graph.network.row_first)
     streets = [number for number, part in enumerate(parts) if part.edge >= 0]
     found = []
-    for number, following in zip(streets, streets[1:], strict=False):
+    for number, following in pairwise(streets):
         if following != number + 1:
             continue
         part, network = parts[number], graph.network
