@@ -11,7 +11,7 @@ from pathlib import Path
 import numpy as np
 import pyproj
 import rasterio
-from rasterio.transform import from_origin
+from rasterio.transform import Affine
 from rasterio.windows import Window
 
 from routeplan.ground.terrain import heights_at, open_terrain
@@ -20,8 +20,8 @@ from routeplan.ground.terrain_smooth import smoothed_heights_m
 
 SIDE = 5300  # 112 MB of float32
 GRIDS = {
-    "degrees": ("EPSG:4326", from_origin(10.0, 50.0, 1 / 3600, 1 / 3600)),
-    "UTM": ("EPSG:32632", from_origin(500_000.0, 5_500_000.0, 25.0, 25.0)),
+    "degrees": ("EPSG:4326", Affine(1 / 3600, 0.0, 10.0, 0.0, -1 / 3600, 50.0)),
+    "UTM": ("EPSG:32632", Affine(25.0, 0.0, 500_000.0, 0.0, -25.0, 5_500_000.0)),
 }
 LAYOUTS = {"tiles": {"tiled": True, "blockxsize": 256, "blockysize": 256}, "strips": {}}
 
