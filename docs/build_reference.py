@@ -120,8 +120,8 @@ _COMMANDS_TAIL = """\
 
 - `plan`: what `plan.json` holds, see [sheets](sheets.md).
 - `check`: `problems`, which is empty, and `warnings` with `where` and `message`.
-- `budget`: verdict, what was asked, `budgets` as in `plan.json`, `changes`, `stretch_m`, `closing` and
-  `assumptions`; see [light](light.md).
+- `budget`: verdict, what was asked, `budgets` as in `plan.json`, `changes`, `stretch_m`, `closing`
+  and `assumptions`; see [light](light.md).
 - `tables`: title, source, confidence and rows.
 - With exit code 2: `{"problems": [{"where", "what", "value", "limit", "remedy"}]}`.
 

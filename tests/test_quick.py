@@ -111,7 +111,11 @@ def test_an_interface_brings_its_light() -> None:
 
 def test_one_number_is_an_interface() -> None:
     """A channel loss alone makes a verdict, a margin of exactly zero fits, and less fails."""
-    at_limit = {"glass_km": "10", "splices": "0", "wavelength_nm": ["1310"]}
+    at_limit: dict[str, str | list[str]] = {
+        "glass_km": "10",
+        "splices": "0",
+        "wavelength_nm": ["1310"],
+    }
     worst_db = answer(**at_limit).budgets[0].worst_db
     fits = answer(**at_limit, channel_loss_db=f"{worst_db + 3:.3f}")
     assert fits.verdict == "fits"

@@ -10,11 +10,13 @@ import numpy as np
 
 from routeplan.light.attenuation import attenuation_of
 from routeplan.light.budget import circuit_budget
+from routeplan.light.delay import delay_ns
 from routeplan.light.dispersion import sellmeier_ps_per_nm_km
 from routeplan.light.interfaces import find_interface
 from routeplan.light.model import Glass, Mating, Path, SpliceStep, Step
+from routeplan.light.power import overload_db
 from routeplan.light.spectrum import attenuation_db_per_km, infrared_db_per_km
-from routeplan.light.splices import mode_mismatch_db
+from routeplan.light.splices import mode_mismatch_db, offset_loss_db
 
 COUNT = 1_000_000
 REPEATS = 7
@@ -46,6 +48,7 @@ def budgets_a_second() -> float:
         connector_mean_db=0.25,
         connector_sigma_db=0.13,
         connector_limit_db=0.50,
+        connector_grade=None,
         sigma_count=3.0,
         margin_db=3.0,
         verdict_on="worst",
@@ -87,6 +90,18 @@ def main() -> None:
         "mode mismatch": (
             lambda: mode_mismatch_db(fields, 9.2 + 0.0 * fields),
             lambda: -20.0 * np.log10(2.0 * fields * 9.2 / (fields * fields + 9.2 * 9.2)),
+        ),
+        "splice offset": (
+            lambda: offset_loss_db(fields, 9.2),
+            lambda: 10.0 / np.log(10.0) * (fields / 4.6) ** 2,
+        ),
+        "delay": (
+            lambda: delay_ns(nm, 1.4682),
+            lambda: nm * 1.4682 / 299792458.0 * 1e9,
+        ),
+        "overload": (
+            lambda: overload_db(fields, 0.1 * fields, -1.0),
+            lambda: fields - 0.1 * fields + 1.0,
         ),
     }
     for name, (ours, bare) in pairs.items():

@@ -43,7 +43,7 @@ Row = dict[str, Any]
 def circuits(tmp_path_factory: pytest.TempPathFactory) -> dict[str, Row]:
     """Return the circuits of a planned run by name, as plan.json holds them."""
     folder = tmp_path_factory.mktemp("pictures")
-    document: Row = plan_document(planned(folder, DUCT_FEATURES, DUCT_TOML + CIRCUITS))  # type: ignore[assignment]
+    document: Row = plan_document(planned(folder, DUCT_FEATURES, DUCT_TOML + CIRCUITS))
     return {row["name"]: row for row in document["circuits"]}
 
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 import re
 import tomllib
+from collections.abc import Iterable
 from importlib.resources import files
 
 import pytest
@@ -33,7 +34,8 @@ def numbers_in(value: object) -> list[float]:
     if isinstance(value, int | float):
         return [value]
     parts = value.values() if isinstance(value, dict) else value
-    return [number for part in parts for number in numbers_in(part)]  # type: ignore[union-attr]
+    assert isinstance(parts, Iterable)
+    return [number for part in parts for number in numbers_in(part)]
 
 
 @pytest.mark.parametrize("name", table_names())
