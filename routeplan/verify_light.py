@@ -68,21 +68,23 @@ def light_warnings(
         )
     by_name = {circuit.order.name: circuit for circuit in circuits}
     for circuit in circuits:
-        yield from _one_fibre_warnings(circuit)
+        yield from _one_fibre_warnings(run, circuit)
         main = by_name.get(circuit.order.standby_for or "")
         if main is not None:
             yield from _standby_warnings(circuit, main, layout)
 
 
-def _one_fibre_warnings(circuit: CircuitPlan) -> Iterator[tuple[str, str]]:
+def _one_fibre_warnings(run: Run, circuit: CircuitPlan) -> Iterator[tuple[str, str]]:
+    if circuit.pair is None or circuit.pair.name in run.interfaces:
+        return  # whoever describes an interface knows what it is made for
     ways = {(budget.wavelength_nm, budget.direction) for budget in circuit.budgets}
     both = sorted({nm for nm, _ in ways if {(nm, "from-to"), (nm, "to-from")} <= ways})
-    if circuit.order.fibre_count == 1 and circuit.pair is not None and both:
+    if circuit.order.fibre_count == 1 and both:
         light = ", ".join(f"{nm:g}" for nm in both)
         yield (
             f'circuit "{circuit.order.name}"',
-            f"both directions use {light} nm on one fibre: reflections of one's own light are in "
-            "the way; interfaces for one fibre have a wavelength for each direction",
+            f"{circuit.pair.name} is made for two fibres: both directions would use {light} nm on "
+            "one; interfaces for one fibre have a wavelength for each direction",
         )
 
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections import Counter
 from collections.abc import Iterator
 
+from routeplan.circuits import CircuitPlan
 from routeplan.planning import Plan
 from routeplan.run.defaults import practice_rows
 from routeplan.sheets.columns import Row
@@ -108,8 +109,9 @@ def pigtail_counts(planned: Plan) -> Iterator[int]:
 def _circuit_lines(planned: Plan) -> Iterator[Row]:
     for circuit in planned.circuits:
         name = circuit.order.name
-        if circuit.order.interface:
-            yield _unpriced(f"Optical interface {circuit.order.interface}", 2, "end", name)
+        if circuit.pair:
+            yield _unpriced(f"Optical interface {circuit.pair.name}", 2, "end", name)
+        yield from _fitted_lines(circuit)
         needed = {
             (budget.attenuator_db, budget.direction)
             for budget in circuit.budgets
@@ -122,6 +124,19 @@ def _circuit_lines(planned: Plan) -> Iterator[Row]:
                 "piece",
                 f"{name}, {direction}, at the receiver",
             )
+
+
+def _fitted_lines(circuit: CircuitPlan) -> Iterator[Row]:
+    """Yield what the run file puts into a circuit: attenuators and passive parts."""
+    order = circuit.order
+    if order.attenuator_db:
+        item = f"Fixed attenuator {order.attenuator_db:g} dB"
+        yield _unpriced(item, 2, "piece", f"{order.name}, as fitted, one at each receiver")
+    strands = len({use.strand for use in circuit.uses})
+    for part in order.part:
+        where = part.at or order.from_
+        note = f"{order.name}, at {where}, on each fibre"
+        yield _unpriced(f"Passive part {part.name or 'own'}", part.count * strands, "piece", note)
 
 
 def _unpriced(item: str, quantity: int, unit: str, note: str) -> Row:

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass
 
-from routeplan.sheets.lookup import Row, rows_at, text_at
+from routeplan.sheets.lookup import Row, rows_at, text_at, value_at
 from routeplan.tables import load_rows
 
 __all__ = ["Caution", "cautions_for"]
@@ -32,7 +32,7 @@ def cautions_for(document: Mapping[str, object]) -> list[dict[str, str]]:
     Parameters
     ----------
     document
-        The mapping that `plan.json` holds; its legs, stations and nodes decide.
+        The mapping that `plan.json` holds; its legs, stations, nodes and checks decide.
 
     Returns
     -------
@@ -67,6 +67,7 @@ def _what_holds(document: Row) -> set[str]:
     roles = {text_at(node, "role") for node in rows_at(document, "nodes")}
     facts = {
         "always": True,
+        "bright": any(map(_is_bright, rows_at(document, "checks"))),
         "underground": bool(placements & _UNDERGROUND),
         "aerial": "aerial" in placements or "pole" in reach_kinds or "power" in crossed,
         "maintenance_hole": "maintenance_hole" in reach_kinds,
@@ -77,3 +78,11 @@ def _what_holds(document: Row) -> set[str]:
         "transmitter": "transmitter" in roles,
     }
     return {name for name, is_so in facts.items() if is_so}
+
+
+def _is_bright(check: Row) -> bool:
+    """Return whether a check finds laser light above hazard level 1."""
+    launched_dbm, level_dbm = value_at(check, "value"), value_at(check, "limit")
+    if text_at(check, "kind") != "laser hazard" or launched_dbm is None or level_dbm is None:
+        return False
+    return launched_dbm > level_dbm

@@ -6,6 +6,7 @@ from collections.abc import Sequence
 
 from routeplan.sheets.lookup import Row, rows_at, text_at, value_at
 from routeplan.sheets.optics_pictures import PICTURES_MOST, level_svg, spectrum_svg
+from routeplan.sheets.report_answers import answers_html
 from routeplan.sheets.report_parts import Column, db, number, table, verdict_mark, words
 from routeplan.sheets.text import count_text, length_text, number_text, safe
 
@@ -19,6 +20,8 @@ _QUANTITIES = (
     ("Available", "dB", 3, "available_db"),
     ("Margin on the worst loss", "dB", 3, "margin_db"),
     ("Margin on the statistical loss", "dB", 3, "statistical_margin_db"),
+    ("Left on the first day, nothing kept", "dB", 3, "first_day_margin_db"),
+    ("Left at the end of life", "dB", 3, "end_of_life_margin_db"),
     ("Overload, positive is too much light", "dB", 3, "overload_db"),
     ("Attenuator that mends it", "dB", 1, "attenuator_db"),
     ("Dispersion, least", "ps/nm", 1, "dispersion_min_ps_per_nm"),
@@ -64,6 +67,7 @@ def _circuit(document: Row, circuit: Row) -> str:
         f"{verdict_mark(text_at(circuit, 'verdict'))}</h3>\n<p>{safe(facts)}</p>\n"
         f"{_overview(circuit, budgets)}"
         f"{f'<ul>{reasons}</ul>' if reasons else ''}\n{_all_lines(circuit, budgets)}"
+        f"{answers_html(circuit, units=units)}"
         f"{_pictures(circuit)}</article>\n"
     )
 

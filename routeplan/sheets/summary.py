@@ -7,6 +7,7 @@ import sys
 from collections.abc import Iterator, Sequence
 from pathlib import Path
 
+from routeplan.circuit_answers import changes
 from routeplan.light.model import Budget
 from routeplan.planning import Plan, assumptions
 from routeplan.sheets.bill import has_invented_prices
@@ -19,6 +20,8 @@ _COLOURS = {"fits": "\033[32m", "fails": "\033[31m", "unknown": "\033[33m"}
 _REELS_SHOWN = 20
 _BUDGETS_SHOWN = 20
 _NAME_SHOWN = 40
+_CLOSING_SHOWN = 6
+_SAID_KINDS = ("polarity", "bend radius", "laser hazard", "attenuation")
 
 
 def summary_text(planned: Plan, *, folder: Path, names: Sequence[str]) -> str:
@@ -130,6 +133,22 @@ def _light_lines(planned: Plan) -> Iterator[str]:
         if budget.verdict != "fits"
         for reason in budget.reasons
     )
+    yield from _answer_lines(planned)
+
+
+def _answer_lines(planned: Plan) -> Iterator[str]:
+    """Yield what would mend failing circuits, what closes one that takes any, and odd findings."""
+    for circuit in planned.circuits:
+        name = _short(circuit.order.name)
+        for text in changes(planned, circuit):
+            yield visible(f"{name}: {text}")
+        if circuit.closing:
+            found = ", ".join(closing.pair.name for closing in circuit.closing[:_CLOSING_SHOWN])
+            more = len(circuit.closing) - _CLOSING_SHOWN
+            yield visible(f"{name}: closed by {found}{f' and {more} more' if more > 0 else ''}")
+    for check in planned.checks:
+        if check.kind in _SAID_KINDS and check.verdict == "fails":
+            yield visible(f"{_short(check.where)}: {check.kind}: {check.source}")
 
 
 def _is_harmless(budget: Budget) -> bool:

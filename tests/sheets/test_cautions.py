@@ -11,7 +11,7 @@ from tests.sheets.made_up_run import Row
 ALWAYS = ["Local rules come first", "Laser light", "Lifting and reels"]
 WORDS = {
     "always", "underground", "aerial", "maintenance_hole", "crossing", "rail", "water", "venue",
-    "transmitter",
+    "transmitter", "bright",
 }  # fmt: skip
 
 
@@ -42,12 +42,22 @@ def test_every_run_warns_of_laser_light_and_defers_to_local_rules() -> None:
         ({"stations": [{"kind": "crossing", "crosses": "rail"}]}, "Railways"),
         ({"nodes": [{"role": "transmitter"}]}, "Radio-frequency exposure"),
         ({"nodes": [{"role": "transmitter"}]}, "Lightning and metal in the cable"),
+        (
+            {"checks": [{"kind": "laser hazard", "value": 13.0, "limit": 10.0}]},
+            "Light above hazard level 1",
+        ),
     ],
 )
 def test_a_danger_is_named_where_the_run_has_it(document: Row, topic: str) -> None:
     """What the run has adds its caution; a run without it has none."""
     assert topic in _topics(document)
     assert topic not in ALWAYS
+
+
+def test_light_of_level_1_adds_no_caution() -> None:
+    """A launch at the limit is within it."""
+    check = {"kind": "laser hazard", "value": 10.0, "limit": 10.0}
+    assert _topics({"checks": [check]}) == ALWAYS
 
 
 def test_each_caution_has_a_known_condition() -> None:
