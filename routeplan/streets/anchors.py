@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from routeplan.errors import GeometryError, InfeasibleError, Problem
-from routeplan.geodesy import local_xy_m, steps_m
+from routeplan.geodesy import local_xy_m, steps_m, wrapped
 from routeplan.streets.model import Flags, Network
 
 __all__ = ["OFF_STREET_MAX_M", "Anchor", "anchored"]
@@ -169,7 +169,7 @@ def _anchor(
         name=name,
         lon=lon,
         lat=lat,
-        foot_lon=float(foot[0]),
+        foot_lon=float(wrapped(foot[:1])[0]),
         foot_lat=float(foot[1]),
         walk_m=walk_m,
         node=node,

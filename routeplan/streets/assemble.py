@@ -133,7 +133,7 @@ def assembled(
     sizes = end - begin + 1
     shape_first = np.concatenate([[0], np.cumsum(sizes)]).astype(np.int64)
     within = np.arange(shape_first[-1]) - np.repeat(shape_first[:-1], sizes)
-    shape_lonlat = position[vertex[np.repeat(begin, sizes) + within]]
+    shape_lonlat = _unbroken(position[vertex[np.repeat(begin, sizes) + within]], shape_first)
     length_m = edge_lengths_m(shape_lonlat, shape_first)
     row_first, row_node, row_edge = adjacency(edge_start, edge_end, len(nodes))
     road_class, class_words = _coded(lines.road_class, line)
@@ -170,6 +170,17 @@ def assembled(
         row_edge=row_edge,
     )
     return replace(network, notes=(*notes, *_said(network, twice, where)))
+
+
+def _unbroken(shape_lonlat: Floats, shape_first: Whole) -> Floats:
+    """Return shapes whose longitude runs on over the antimeridian within every edge."""
+    turns = np.zeros(len(shape_lonlat))
+    turns[1:] = np.round(np.diff(shape_lonlat[:, 0]) / 360.0)
+    if not turns.any():
+        return shape_lonlat
+    total = np.cumsum(turns)
+    starts = np.repeat(total[shape_first[:-1]], np.diff(shape_first))
+    return shape_lonlat - np.column_stack([360.0 * (total - starts), np.zeros(len(total))])
 
 
 def edge_lengths_m(shape_lonlat: Floats, shape_first: Whole) -> Floats:

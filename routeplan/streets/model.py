@@ -40,7 +40,7 @@ class Network:
 
     Edge e runs from `edge_start[e]` to `edge_end[e]` along
     `shape_lonlat[shape_first[e] : shape_first[e + 1]]` and is `length_m[e]` long on the WGS 84
-    ellipsoid. Row v of the adjacency, `row_first[v] : row_first[v + 1]`, holds for every edge end
+    ellipsoid; the longitude of a shape runs on over the antimeridian. Row v of the adjacency, `row_first[v] : row_first[v + 1]`, holds for every edge end
     at node v the node at the other end (`row_node`) and the edge (`row_edge`). Text columns are
     numbers into their list of words; the placement of an ordinary street is the word "".
     A crossing weighs a half where it lies on an end of its edge, so that both halves make one.

@@ -7,7 +7,7 @@ from itertools import pairwise
 
 import numpy as np
 
-from routeplan.geodesy import steps_m, unwrapped, wrapped
+from routeplan.geodesy import steps_m, wrapped
 from routeplan.streets.anchors import Anchor
 from routeplan.streets.costs import class_of
 from routeplan.streets.edges import edge_part
@@ -152,10 +152,11 @@ def _line(parts: Sequence[Part], graph: Graph, sites: Sequence[int | None]) -> F
         anchor = graph.anchors[next(site for site in sites if site is not None)]
         return np.array([[anchor.foot_lon, anchor.foot_lat]] * 2)
     whole = np.concatenate([part.lonlat for part in parts])
+    whole[:, 0] = wrapped(whole[:, 0])
+    whole[whole[:, 0] == -180.0, 0] = 180.0  # one meridian, two names
     keep = np.ones(len(whole), dtype=bool)
     keep[1:] = (whole[1:] != whole[:-1]).any(axis=1)
-    line = whole[keep]
-    return np.column_stack([wrapped(unwrapped(line[:, 0])), line[:, 1]])
+    return np.asarray(whole[keep])
 
 
 def _crossings(graph: Graph, parts: Sequence[Part], ends_m: Floats) -> tuple[WayCrossing, ...]:
