@@ -2,24 +2,23 @@
 
 from __future__ import annotations
 
-from collections import Counter
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from functools import partial
 
 import numpy as np
 
-from routeplan.cable.model import Cable, Rulers
+from routeplan.cable.courses import Course, cable_courses
+from routeplan.cable.model import Rulers
 from routeplan.cable.rulers import BareRuler, bare_ruler, ruled
 from routeplan.cable.slack import Step, slack_steps
 from routeplan.cable.spans import LaidSpan, bound_tail_mm, laid_spans, tail_mm
 from routeplan.cable.way import Way, cable_way
-from routeplan.errors import InfeasibleError, Problem, RunFileError
-from routeplan.ground.model import Ground, Leg, Node, Stretch
+from routeplan.errors import InfeasibleError, Problem
+from routeplan.ground.model import Ground, Node, Stretch
 from routeplan.memo import Memo, remembered
 from routeplan.run.model import Run
 from routeplan.run.practice import Practice
-from routeplan.run.trouble import listed, nearest_hint, shown
 from routeplan.units import mm_from_m
 
 __all__ = ["LaidCable", "lay_cables"]
@@ -38,11 +37,13 @@ class LaidCable:
     warnings: tuple[tuple[str, str], ...]
 
 
-def lay_cables(run: Run, ground: Ground, *, memo: Memo | None = None) -> tuple[LaidCable, ...]:
+def lay_cables(
+    run: Run, ground: Ground, *, memo: Memo | None = None, called: frozenset[str] | None = None
+) -> tuple[LaidCable, ...]:
     """
     Return every cable of a run laid out at least cost, each by itself.
 
-    Each leg is a cable of its own. Exact: see `routeplan.cable.reels`.
+    Exact: see `routeplan.cable.reels`. Which cables there are: `routeplan.cable.courses`.
 
     Parameters
     ----------
@@ -52,21 +53,25 @@ def lay_cables(run: Run, ground: Ground, *, memo: Memo | None = None) -> tuple[L
         Where it goes.
     memo
         Results of earlier calls, to lay only what changed.
+    called
+        Names of the sites where circuits begin or end; left out: those the circuits name.
 
     Raises
     ------
     RunFileError
-        If a cable names a leg that there is not.
+        If a cable names a leg that there is not, or legs that do not meet.
     InfeasibleError
         If a cable has no layout within its limits; names the stretch and the smallest relaxation.
     """
     laid: list[LaidCable] = []
     problems: list[Problem] = []
-    for cable, leg in zip(_cables_of(run, ground.legs), ground.legs, strict=True):
-        ends = (ground.node(leg.start), ground.node(leg.end))
+    if called is None:
+        called = frozenset(name for each in run.circuits for name in (each.from_, each.to) if name)
+    for course in cable_courses(run, ground, called=called):
         try:
-            inputs = ("cable", cable, run.practice, leg, ends)
-            laid.append(remembered(memo, inputs, partial(_lay, cable, leg, ends, run.practice)))
+            entered = sorted(course.entered)
+            inputs = ("cable", course.cable, run.practice, course.legs, course.nodes, entered)
+            laid.append(remembered(memo, inputs, partial(_lay, course, run.practice)))
         except InfeasibleError as error:
             problems.extend(error.problems)
     if problems:
@@ -74,54 +79,22 @@ def lay_cables(run: Run, ground: Ground, *, memo: Memo | None = None) -> tuple[L
     return tuple(laid)
 
 
-def _cables_of(run: Run, legs: Sequence[Leg]) -> list[Cable]:
-    """Return each leg's cable, of the named make that claims leg or line, else the default."""
-    _refuse_unknown_legs(run, legs)
-    claims = {leg: name for name, make in run.cables.items() for leg in make.legs}
-    names = [claims.get(leg.name) or leg.cable or leg.name for leg in legs]
-    makes = [run.cables.get(name, run.cable) for name in names]
-    counts = Counter(names)
-    # Legs that meet are cables of their own for now: one name for several takes the leg's, too.
-    return [
-        Cable(
-            id=f"C{leg.id[1:]}",
-            name=name if counts[name] == 1 else f"{name}, {leg.name}",
-            legs=((leg.id, True),),
-            make=make,
-            start=leg.start,
-            end=leg.end,
-        )
-        for leg, name, make in zip(legs, names, makes, strict=True)
-    ]
-
-
-def _refuse_unknown_legs(run: Run, legs: Sequence[Leg]) -> None:
-    known = [leg.name for leg in legs]
-    problems = [
-        Problem(
-            where=f"cables.{name}.legs",
-            what="names a leg that the geometry does not have",
-            value=shown(leg),
-            limit=listed(known),
-            remedy=nearest_hint(leg, known),
-        )
-        for name, make in run.cables.items()
-        for leg in make.legs
-        if leg not in known
-    ]
-    if problems:
-        raise RunFileError(problems)
-
-
-def _lay(cable: Cable, leg: Leg, ends: tuple[Node, Node], practice: Practice) -> LaidCable:
-    way = cable_way(cable, [(leg, True)], practice=practice)
+def _lay(course: Course, practice: Practice) -> LaidCable:
+    way = cable_way(
+        course.cable,
+        course.legs,
+        practice=practice,
+        nodes=course.nodes[1:-1],
+        entered=course.entered,
+    )
     steps, warnings = slack_steps(way, slack=practice.slack)
-    bounds = (way.stretches[0], way.stretches[-1])
+    ends, bounds = (course.nodes[0], course.nodes[-1]), (way.stretches[0], way.stretches[-1])
     end_mm = tuple(_end_mm(node, s, practice) for node, s in zip(ends, bounds, strict=True))
     bare = bare_ruler(way, steps, slack=practice.slack, end_mm=(end_mm[0], end_mm[1]))
     spans = laid_spans(way, bare, practice=practice)
     parted = _parted(way, bare, spans, practice)
-    rulers = ruled(way, bare, parted, glass_ratio=way.cable.make.glass_over_sheath_ratio)
+    ratio = way.cable.make.glass_over_sheath_ratio
+    rulers = ruled(way, bare, {**parted, **_opened(way, bare)}, glass_ratio=ratio)
     return LaidCable(
         way=way,
         steps=steps,
@@ -167,6 +140,13 @@ def _parted(
             tail = tail_mm(spot.kind, practice)
             parted[spot.chain_mm] = (half + tail, step - half + tail)
     return parted
+
+
+def _opened(way: Way, bare: BareRuler) -> dict[int, tuple[int, int]]:
+    """Return the cable stored before and after the middle of every loop entered at mid-span."""
+    entered = [passed.chain_mm for passed in way.passed if passed.is_entered]
+    stored = {at: _stored_at(bare, at) for at in entered}
+    return {at: (half, step - half) for at, (step, half) in stored.items()}
 
 
 def _stored_at(bare: BareRuler, chain_mm: int) -> tuple[int, int]:

@@ -45,6 +45,7 @@ def slack_steps(way: Way, *, slack: Slack) -> tuple[tuple[Step, ...], tuple[tupl
     """
     loops, warnings = _loops(way, slack)
     steps = [*loops, *_risers(way, slack), *_racking(way, slack), *_crossing_loops(way, slack)]
+    steps += _entered_loops(way, slack)
     # On somebody else's span nothing is stored: the cable there is not ours.
     theirs = is_within(way, [step.chain_mm for step in steps], _EXISTING)
     own = [step for step, is_theirs in zip(steps, theirs, strict=True) if not is_theirs]
@@ -203,6 +204,13 @@ def _crossing_loops(way: Way, slack: Slack) -> Iterator[Step]:
             for at in (start, end):
                 inside = min(max(at, 0), way.length_mm)
                 yield from _step(inside, slack.crossing_loop_m, "loop", crossing.name)
+
+
+def _entered_loops(way: Way, slack: Slack) -> Iterator[Step]:
+    """Yield the loop at every node where the cable can be entered without being cut."""
+    for passed in way.passed:
+        if passed.is_entered:
+            yield from _step(passed.chain_mm, slack.midspan_loop_m, "loop", passed.node.name)
 
 
 def _step(chain_mm: int, length_m: float, kind: str, name: str) -> Iterator[Step]:

@@ -12,13 +12,14 @@ import numpy as np
 from routeplan.cable.model import Cable, Millimetres
 from routeplan.geodesy import is_turned
 from routeplan.ground.legs import position_at
-from routeplan.ground.model import Leg, Stretch
+from routeplan.ground.model import Leg, Node, Stretch
 from routeplan.run.model import Floats, JointFitness, Place
 from routeplan.run.practice import Practice
 from routeplan.units import mm_from_m
 
 __all__ = [
     "ChainCrossing",
+    "Passed",
     "Spot",
     "Way",
     "cable_way",
@@ -58,12 +59,21 @@ class ChainCrossing:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Passed:
+    """A node that a cable passes uncut; `is_entered` where it can be entered at mid-span."""
+
+    node: Node
+    chain_mm: int
+    is_entered: bool
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Way:
     """
     One cable's chain: its stretches end to end, its crossings, its spots in chain order.
 
-    `is_turned` says that the chain runs against the direction in which halves are rounded, so
-    that a reversed run gets mirrored millimetres.
+    `passed` are the nodes between its ends. `is_turned` says that the chain runs against the
+    direction in which halves are rounded, so that a reversed run gets mirrored millimetres.
     """
 
     cable: Cable
@@ -73,9 +83,17 @@ class Way:
     spots: tuple[Spot, ...]
     length_mm: int
     is_turned: bool
+    passed: tuple[Passed, ...] = ()
 
 
-def cable_way(cable: Cable, legs: Sequence[tuple[Leg, bool]], *, practice: Practice) -> Way:
+def cable_way(
+    cable: Cable,
+    legs: Sequence[tuple[Leg, bool]],
+    *,
+    practice: Practice,
+    nodes: Sequence[Node] = (),
+    entered: frozenset[str] = frozenset(),
+) -> Way:
     """
     Return the chain of a cable with declared and assumed spots.
 
@@ -87,6 +105,10 @@ def cable_way(cable: Cable, legs: Sequence[tuple[Leg, bool]], *, practice: Pract
         Its legs in order, each with whether it is taken forward.
     practice
         House rules; `joints.assumed_spacing_m` spaces assumed spots.
+    nodes
+        The nodes it passes, one between each two legs; left out where they do not matter.
+    entered
+        Ids of those it can be entered at mid-span, where it is not cut then.
     """
     placed: list[tuple[Leg, bool, int]] = []
     offset = 0
@@ -101,7 +123,10 @@ def cable_way(cable: Cable, legs: Sequence[tuple[Leg, bool]], *, practice: Pract
         spots=tuple(spot for leg in placed for spot in _declared_spots(leg)),
         length_mm=offset,
         is_turned=_is_turned(placed),
+        passed=tuple(_passed(placed, nodes, entered)),
     )
+    way = replace(way, spots=_merged(way.spots, list(_node_spots(way))))
+    way = _unentered_on_existing(way)
     way = replace(way, spots=_merged(way.spots, _assumed_poles(way)))
     way = replace(way, spots=tuple(_unfit_where_forbidden(way)))
     spacing_mm = max(1, mm_from_m(practice.joints.assumed_spacing_m))
@@ -153,17 +178,46 @@ def _declared_spots(item: tuple[Leg, bool, int]) -> Iterator[Spot]:
     for point in leg.points if forward else reversed(leg.points):
         place = point.place
         if place.kind != "crossing":
-            yield Spot(
-                chain_mm=_chain(item, point.ground_mm),
-                kind=place.kind,
-                name=place.name,
-                fitness=place.joint,
-                cost_factor=place.joint_cost_factor,
-                loop_m=place.loop_m,
-                assumed=False,
-                tie_key=_tie_key(place.lon, place.lat, place.name),
-                place=place,
-            )
+            yield _spot(place, _chain(item, point.ground_mm))
+
+
+def _passed(
+    placed: Sequence[tuple[Leg, bool, int]], nodes: Sequence[Node], entered: frozenset[str]
+) -> Iterator[Passed]:
+    for node, (_, _, offset) in zip(nodes, placed[1:], strict=False):
+        yield Passed(node=node, chain_mm=offset, is_entered=node.id in entered)
+
+
+def _node_spots(way: Way) -> Iterator[Spot]:
+    """Yield the reach points that stand at nodes the cable passes."""
+    for passed in way.passed:
+        place = passed.node.place
+        if place is not None and not passed.node.is_site:
+            yield _spot(place, passed.chain_mm)
+
+
+def _unentered_on_existing(way: Way) -> Way:
+    """Return the way with nothing entered inside somebody else's span."""
+    theirs = is_within(way, [p.chain_mm for p in way.passed], frozenset({"existing"}))
+    passed = [
+        replace(each, is_entered=each.is_entered and not is_theirs)
+        for each, is_theirs in zip(way.passed, theirs, strict=True)
+    ]
+    return replace(way, passed=tuple(passed))
+
+
+def _spot(place: Place, chain_mm: int) -> Spot:
+    return Spot(
+        chain_mm=chain_mm,
+        kind=place.kind,
+        name=place.name,
+        fitness=place.joint,
+        cost_factor=place.joint_cost_factor,
+        loop_m=place.loop_m,
+        assumed=False,
+        tie_key=_tie_key(place.lon, place.lat, place.name),
+        place=place,
+    )
 
 
 def _tie_key(lon: float, lat: float, name: str) -> int:
@@ -172,10 +226,16 @@ def _tie_key(lon: float, lat: float, name: str) -> int:
 
 
 def _unfit_where_forbidden(way: Way) -> Iterator[Spot]:
-    """Yield the spots; none on a bridge, in water, on an existing span or a crossing is fit."""
+    """
+    Yield the spots; none on a bridge, in water, on an existing span or a crossing is fit.
+
+    Nor is one where the cable is entered at mid-span: it passes that closure uncut.
+    """
     forbidden = is_within(way, [spot.chain_mm for spot in way.spots], _NO_JOINT, crossings=True)
+    entered = {passed.chain_mm for passed in way.passed if passed.is_entered}
     for spot, banned in zip(way.spots, forbidden, strict=True):
-        yield replace(spot, fitness="no") if banned and spot.fitness != "no" else spot
+        is_unfit = banned or spot.chain_mm in entered
+        yield replace(spot, fitness="no") if is_unfit and spot.fitness != "no" else spot
 
 
 def is_within(

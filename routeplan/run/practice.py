@@ -108,6 +108,9 @@ class Slack(Section):
     crossing_loop_m: Metres = Field(
         description="Loop on each side of a bridge, rail or water crossing. [m]"
     )
+    midspan_loop_m: Metres = Field(
+        description="Loop where a cable can be entered at mid-span without being cut. [m]"
+    )
     undulation_ratio: Mapping[OwnPlacement, Ratio] = Field(
         description="How much longer the sheath is than the ground, by placement. [-]"
     )

@@ -28,8 +28,7 @@ _NOT_YET = "is not yet available in this version"
 def refuse_unbuilt(raw: dict[str, Any], *, file: str, trouble: Trouble) -> None:
     """Refuse the keys of capabilities not yet built, and take them out of `raw`."""
     for where, value, remedy in _unbuilt(raw):
-        what = f"names several legs, which {_NOT_YET}" if where.endswith(".legs") else _NOT_YET
-        problem = Problem(where=f"{file}, {where}", what=what, value=value, remedy=remedy)
+        problem = Problem(where=f"{file}, {where}", what=_NOT_YET, value=value, remedy=remedy)
         trouble.add(RunFileError, problem)
 
 
@@ -88,13 +87,6 @@ def _unbuilt(raw: dict[str, Any]) -> Iterator[tuple[str, str, str]]:
     reels = raw.get("reels")
     if isinstance(reels, dict):
         yield from _unbuilt_stock(reels)
-    cables = raw.get("cables")
-    for name, cable in cables.items() if isinstance(cables, dict) else ():
-        legs = cable.get("legs") if isinstance(cable, dict) else None
-        if isinstance(legs, list) and len(legs) > 1:
-            cable["legs"] = legs[:1]
-            remedy = "Name one leg for each cable."
-            yield f"cables.{name}.legs", shown(legs), remedy
 
 
 def _unbuilt_stock(reels: dict[str, Any]) -> Iterator[tuple[str, str, str]]:
@@ -168,19 +160,17 @@ def _cable_problems(where: str, cable: CableMake) -> Iterator[Problem]:
 
 
 def _cable_leg_problems(cables: Mapping[str, CableMake]) -> Iterator[Problem]:
-    owners: dict[str, str] = {}
     for name, cable in cables.items():
         if not is_plain_text(name):
             yield _unprintable(f"cables.{shown(name)}")
-        for leg in cable.legs:
-            if leg in owners:
+        for leg, count in Counter(cable.legs).items():
+            if count > 1:
                 yield Problem(
                     where=f"cables.{name}.legs",
-                    what="names a leg that another cable has",
+                    what=f"names a leg {count} times",
                     value=shown(leg),
-                    remedy=f"It is a leg of cables.{owners[leg]} as well; keep one.",
+                    remedy="A cable takes each leg once.",
                 )
-            owners.setdefault(leg, name)
 
 
 def _interface_problems(where: str, interface: Interface) -> Iterator[Problem]:
