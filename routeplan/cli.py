@@ -4,9 +4,10 @@ from __future__ import annotations
 
 import argparse
 import contextlib
+import gc
 import os
 import sys
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, NoReturn
 
@@ -115,6 +116,19 @@ def _complain(error: RouteplanError, *, as_json: bool) -> int:
     return 2
 
 
+@contextlib.contextmanager
+def _resting_collector() -> Iterator[None]:
+    """Let the garbage collector rest: what a plan and its imports make is all still needed."""
+    was_enabled = gc.isenabled()
+    gc.disable()
+    try:
+        yield
+    finally:
+        if was_enabled:
+            gc.enable()
+
+
+@_resting_collector()
 def _plan(arguments: argparse.Namespace) -> int:
     from routeplan.planning import plan
     from routeplan.run import read_run

@@ -18,6 +18,10 @@ from routeplan.sheets.tables import csv_tables
 
 __all__ = ["LIST_NAME", "SHEET_NAMES", "json_text", "make_sheets", "write_sheets"]
 
+_compact = json.JSONEncoder(
+    ensure_ascii=False, allow_nan=False, check_circular=False, separators=(", ", ": ")
+).encode
+
 SHEET_NAMES = (
     *(entry.csv for entry in csv_tables()),
     "map.html",
@@ -97,7 +101,3 @@ def json_text(document: Mapping[str, Json]) -> str:
         else:
             parts.append(f"{_compact(key)}: {_compact(value)}")
     return "{\n " + ",\n ".join(parts) + "\n}\n"
-
-
-def _compact(value: object) -> str:
-    return json.dumps(value, ensure_ascii=False, allow_nan=False, separators=(", ", ": "))

@@ -18,7 +18,7 @@ def seconds(*code: str) -> float:
     """Return how long a process takes. [s]"""
     begin = time.perf_counter()
     done = subprocess.run([sys.executable, *code], check=False, capture_output=True)
-    if done.returncode > 1:
+    if done.returncode:
         raise SystemExit(done.stderr.decode())
     return time.perf_counter() - begin
 
