@@ -3,33 +3,40 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 from routeplan.light.grid import coarse_channels
 from routeplan.sheets.lookup import Row, numbers, row_at, rows_at, text_at, value_at
+from routeplan.sheets.picture_parts import (
+    CHARACTER,
+    DASHED,
+    LEFT,
+    RIGHT,
+    TICK,
+    WIDTH,
+    band,
+    cut_text,
+    frame,
+    legend,
+    picture,
+    step_digits,
+)
 from routeplan.sheets.svg_parts import (
-    HAIR,
     INK,
     MUTED,
     PAPER,
     Scale,
-    curve_path,
     nice_step,
     svg_text,
 )
-from routeplan.sheets.text import number_text, plain, safe
+from routeplan.sheets.text import number_text, plain
 
 __all__ = ["PICTURES_MOST", "level_svg", "spectrum_svg"]
 
 PICTURES_MOST = 4
 """Wavelengths of one circuit whose power is drawn; the others are in the data alone."""
 
-_WIDTH = 760
-_LEFT, _RIGHT = 52, _WIDTH - 64
-_GRID = "#d8d4c8"
-_TICK = "#8b8778"
-_CHARACTER = 6.1  # drawing units a character takes, on the safe side
 _SENSITIVITY = "sensitivity"
 _LINE = 12  # drawing units from one line of text to the next
 
@@ -68,21 +75,21 @@ def spectrum_svg(circuit: Row) -> str:
     allowed = [value_at(row, "max_db_per_km") or 0.0 for row in ceilings]
     step_db = nice_step(max(*highest, *allowed) * 1.02, 5)
     most_db = math.ceil(max(*highest, *allowed) * 1.02 / step_db) * step_db
-    across = Scale(low=nm[0], high=nm[-1], step=20.0, start=_LEFT, end=_RIGHT)
+    across = Scale(low=nm[0], high=nm[-1], step=20.0, start=LEFT, end=RIGHT)
     up = Scale(low=0.0, high=most_db, step=step_db, start=bottom, end=top)
     used = sorted({value_at(row, "wavelength_nm") or 0.0 for row in rows_at(circuit, "budgets")})
     types = ", ".join(plain(each) for each in _texts(spectrum.get("fibre_types")))
     title = f"Attenuation of {types} along {text_at(circuit, 'name')}"
     parts = [
-        *_frame(up, unit="dB/km", title=title, bottom=bottom),
-        *_band(nm, highest, typical, across, up),
+        *frame(up, unit="dB/km", title=title, bottom=bottom),
+        *band(nm, highest, typical, across, up),
         *(_ceiling(row, across, up) for row in ceilings),
         *_used(used, across, top=top, bottom=bottom),
-        *_legend(_SPECTRUM_LEGEND if ceilings else _SPECTRUM_LEGEND[:2], y=34),
+        *legend(_SPECTRUM_LEGEND if ceilings else _SPECTRUM_LEGEND[:2], y=34),
         *_wavelength_axis(across, bottom=bottom),
         *_channels(used, across, y=bottom + 28),
     ]
-    return _svg(parts, height=height, label=title)
+    return picture(parts, height=height, label=title)
 
 
 def level_svg(circuit: Row, levels: Row) -> str:
@@ -122,18 +129,18 @@ def level_svg(circuit: Row, levels: Row) -> str:
     high_dbm = math.ceil((max(seen) + 0.04 * step_db) / step_db) * step_db
     up = Scale(low=low_dbm, high=high_dbm, step=step_db, start=bottom, end=top)
     step_m = nice_step(glass_m[-1], 10)
-    across = Scale(low=0.0, high=glass_m[-1], step=step_m, start=_LEFT, end=_RIGHT)
+    across = Scale(low=0.0, high=glass_m[-1], step=step_m, start=LEFT, end=RIGHT)
     title = _level_title(circuit, levels)
     parts = [
-        *_frame(up, unit="dB" if is_relative else "dBm", title=title, bottom=bottom),
+        *frame(up, unit="dB" if is_relative else "dBm", title=title, bottom=bottom),
         *_marks(circuit, levels, across, top=top, bottom=bottom),
-        *_band(glass_m, strongest, weakest, across, up),
+        *band(glass_m, strongest, weakest, across, up),
         *_limit_parts(limits, strongest[-1], up),
-        *_legend(_level_legend(is_relative=is_relative, is_most_known=most_tx is not None), y=34),
+        *legend(_level_legend(is_relative=is_relative, is_most_known=most_tx is not None), y=34),
         *_arrivals(strongest[-1], weakest[-1], up),
         *_glass_axis(across, bottom=bottom, y=height - 8),
     ]
-    return _svg(parts, height=height, label=title)
+    return picture(parts, height=height, label=title)
 
 
 def _texts(value: object) -> list[str]:
@@ -149,65 +156,10 @@ def _level_title(circuit: Row, levels: Row) -> str:
     return f"{what} along the glass at {nm:g} nm, {ends[0]} to {ends[1]}"
 
 
-def _svg(parts: Iterable[str], *, height: int, label: str) -> str:
-    return (
-        f'<svg class="profile" viewBox="0 0 {_WIDTH} {height}" role="img" '
-        f'aria-label="{safe(label)}" xmlns="http://www.w3.org/2000/svg">{"".join(parts)}</svg>'
-    )
-
-
-def _frame(up: Scale, *, unit: str, title: str, bottom: int) -> list[str]:
-    """Return title, level lines with their values, and the unit above them."""
-    digits = _digits(up.step)
-    lines = "".join(f"M{_LEFT} {up.at(tick):.1f}H{_RIGHT}" for tick in up.ticks())
-    values = [
-        svg_text(
-            _LEFT - 9, up.at(t) + 3.5, number_text(t, digits=digits), anchor="end", colour=MUTED
-        )
-        for t in up.ticks()
-    ]
-    return [
-        svg_text(_LEFT - 44, 14, _cut(title, _WIDTH - 8), bold=True),
-        f'<path d="{lines}" stroke="{_GRID}" stroke-width=".6"/>',
-        f'<path d="M{_LEFT} {bottom}H{_RIGHT}" stroke="{INK}" stroke-width="1"/>',
-        svg_text(_LEFT - 9, 48, unit, anchor="end", colour=MUTED),
-        *values,
-    ]
-
-
-def _digits(step: float) -> int:
-    """Return how many decimals a step needs, three at most."""
-    return next(d for d in range(4) if d == 3 or abs(step * 10**d - round(step * 10**d)) < 1e-9)
-
-
-def _cut(text: str, room: float) -> str:
-    most = int(room / (_CHARACTER + 0.6))
-    return text if len(text) <= most else f"{text[: most - 3]}..."
-
-
-def _band(
-    x: Sequence[float],
-    upper: Sequence[float],
-    lower: Sequence[float],
-    across: Scale,
-    up: Scale,
-) -> list[str]:
-    """Return two curves with the ground between them tinted: upper dashed, lower full."""
-    above = curve_path([(across.at(a), up.at(b)) for a, b in zip(x, upper, strict=True)])
-    below = curve_path([(across.at(a), up.at(b)) for a, b in zip(x, lower, strict=True)])
-    back = curve_path([(across.at(a), up.at(b)) for a, b in zip(x[::-1], lower[::-1], strict=True)])
-    return [
-        f'<path d="{above}L{back[1:]}Z" fill="{HAIR}"/>',
-        f'<path d="{above}" fill="none" stroke="{INK}" stroke-width="1.3" {_DASHED}/>',
-        f'<path d="{below}" fill="none" stroke="{INK}" stroke-width="1.8"/>',
-    ]
-
-
-_DASHED = 'stroke-dasharray="6 3"'
 _DOTTED = 'stroke-dasharray="1.5 3"'
 _SPECTRUM_LEGEND = (
     ("typical", 'stroke-width="1.8"'),
-    ("as ordered, at most", f'stroke-width="1.3" {_DASHED}'),
+    ("as ordered, at most", f'stroke-width="1.3" {DASHED}'),
     ("ITU-T ceiling", f'stroke-width="2.2" {_DOTTED}'),
 )
 
@@ -217,16 +169,7 @@ def _level_legend(*, is_relative: bool, is_most_known: bool) -> list[tuple[str, 
     if not is_relative:
         weakest = f"weakest: least launched, {weakest}"
         strongest = f"{'strongest: most' if is_most_known else 'least'} launched, {strongest}"
-    return [(weakest, 'stroke-width="1.8"'), (strongest, f'stroke-width="1.3" {_DASHED}')]
-
-
-def _legend(entries: Sequence[tuple[str, str]], *, y: float) -> list[str]:
-    parts, x = [], float(_LEFT)
-    for text, style in entries:
-        parts.append(f'<path d="M{x:.1f} {y - 3.5:.1f}h26" stroke="{INK}" fill="none" {style}/>')
-        parts.append(svg_text(x + 32, y, text))
-        x += 32 + _CHARACTER * len(text) + 22
-    return parts
+    return [(weakest, 'stroke-width="1.8"'), (strongest, f'stroke-width="1.3" {DASHED}')]
 
 
 def _ceiling(row: Row, across: Scale, up: Scale) -> str:
@@ -248,15 +191,15 @@ def _used(used: Sequence[float], across: Scale, *, top: int, bottom: int) -> lis
     parts = [f'<path d="{lines}" stroke="{INK}" stroke-width=".9"/>'] if used else []
     groups: list[list[float]] = []
     for nm in used:
-        if groups and across.at(nm) - across.at(groups[-1][-1]) < _CHARACTER * 8:
+        if groups and across.at(nm) - across.at(groups[-1][-1]) < CHARACTER * 8:
             groups[-1].append(nm)
         else:
             groups.append([nm])
     for group in groups:
         text = f"{group[0]:g}" if len(group) == 1 else f"{group[0]:g} to {group[-1]:g}"
-        half = (_CHARACTER + 0.6) * len(text) / 2
+        half = (CHARACTER + 0.6) * len(text) / 2
         x = (across.at(group[0]) + across.at(group[-1])) / 2
-        x = min(max(x, _LEFT - 20 + half), _WIDTH - half)
+        x = min(max(x, LEFT - 20 + half), WIDTH - half)
         parts.append(svg_text(x, top - 7, text, anchor="middle", bold=True))
     return parts
 
@@ -269,9 +212,9 @@ def _wavelength_axis(across: Scale, *, bottom: int) -> list[str]:
     marks = "".join(f"M{across.at(nm):.1f} {bottom}v4" for nm in ticks)
     named = [nm for nm in ticks if round(nm / across.step) % 2 == 1]
     return [
-        f'<path d="{marks}" stroke="{_TICK}" stroke-width=".8"/>',
+        f'<path d="{marks}" stroke="{TICK}" stroke-width=".8"/>',
         *(svg_text(across.at(nm), bottom + 16, f"{nm:g}", anchor="middle") for nm in named),
-        svg_text(_RIGHT + 60, bottom + 16, "nm", anchor="end"),
+        svg_text(RIGHT + 60, bottom + 16, "nm", anchor="end"),
     ]
 
 
@@ -285,14 +228,14 @@ def _channels(used: Sequence[float], across: Scale, *, y: int) -> list[str]:
         fill = INK if is_used else PAPER
         parts.append(
             f'<rect x="{start:.1f}" y="{y}" width="{end - start:.1f}" height="8" fill="{fill}" '
-            f'stroke="{_TICK}" stroke-width=".8"/>'
+            f'stroke="{TICK}" stroke-width=".8"/>'
         )
         if number % 2 == 0 or is_used:
             name = channel.name
             middle = across.at(channel.centre_nm)
             row = y + 19 + (_LINE if number % 2 else 0)
             parts.append(svg_text(middle, row, name, anchor="middle", colour=MUTED, bold=is_used))
-    parts.append(svg_text(_RIGHT + 60, y + 8, "CWDM", anchor="end", colour=MUTED))
+    parts.append(svg_text(RIGHT + 60, y + 8, "CWDM", anchor="end", colour=MUTED))
     return parts
 
 
@@ -322,11 +265,11 @@ def _limit_parts(limits: Sequence[_Limit], strongest_dbm: float, up: Scale) -> l
     for limit in limits:
         y = up.at(limit.dbm)
         parts.append(
-            f'<path d="M{_LEFT} {y:.1f}H{_RIGHT}" stroke="{INK}" stroke-width="1" '
+            f'<path d="M{LEFT} {y:.1f}H{RIGHT}" stroke="{INK}" stroke-width="1" '
             f'stroke-dasharray="{limit.dash}"/>'
         )
         text = f"{limit.text} {number_text(limit.dbm, digits=1)} dBm"
-        x, anchor = (_RIGHT - 4.0, "end") if limit.is_high else (_LEFT + 8.0, "start")
+        x, anchor = (RIGHT - 4.0, "end") if limit.is_high else (LEFT + 8.0, "start")
         is_below = strongest_dbm > limit.dbm if limit.is_high else limit.text == _SENSITIVITY
         parts.append(_haloed(x, y + (12 if is_below else -4), text, anchor))
     return parts
@@ -334,7 +277,7 @@ def _limit_parts(limits: Sequence[_Limit], strongest_dbm: float, up: Scale) -> l
 
 def _haloed(x: float, y: float, text: str, anchor: str) -> str:
     """Return a text on a piece of paper colour, so that lines do not cross it."""
-    width = _CHARACTER * len(text)
+    width = CHARACTER * len(text)
     start = x - width if anchor == "end" else x
     return (
         f'<rect x="{start - 2:.1f}" y="{y - 9:.1f}" width="{width + 4:.1f}" height="11.5" '
@@ -349,8 +292,8 @@ def _arrivals(strongest: float, weakest: float, up: Scale) -> list[str]:
         middle = (low + high) / 2
         high, low = middle - _LINE / 2, middle + _LINE / 2
     return [
-        svg_text(_RIGHT + 6, high, number_text(strongest, digits=1)),
-        svg_text(_RIGHT + 6, low, number_text(weakest, digits=1), bold=True),
+        svg_text(RIGHT + 6, high, number_text(strongest, digits=1)),
+        svg_text(RIGHT + 6, low, number_text(weakest, digits=1), bold=True),
     ]
 
 
@@ -367,12 +310,12 @@ def _marks(circuit: Row, levels: Row, across: Scale, *, top: int, bottom: int) -
         x = across.at(at_m)
         kinds = {text_at(row, "kind") for row in here}
         parts.append(
-            f'<path d="M{x:.1f} {top}V{bottom}" stroke="{_TICK}" stroke-width=".7" '
+            f'<path d="M{x:.1f} {top}V{bottom}" stroke="{TICK}" stroke-width=".7" '
             f'stroke-dasharray="2 2.5"/>{_mark_shape(x, bottom, kinds)}'
         )
-        name = _cut(", ".join(dict.fromkeys(plain(text_at(row, "name")) for row in here)), 150)
-        width = (_CHARACTER + 0.6) * len(name)
-        start = min(max(x - width / 2, _LEFT - 20), _WIDTH - 8 - width)
+        name = cut_text(", ".join(dict.fromkeys(plain(text_at(row, "name")) for row in here)), 150)
+        width = (CHARACTER + 0.6) * len(name)
+        start = min(max(x - width / 2, LEFT - 20), WIDTH - 8 - width)
         if start >= free_from + 6:
             parts.append(svg_text(start, bottom + 20, name, bold=True))
             free_from = start + width
@@ -390,17 +333,17 @@ def _mark_shape(x: float, y: float, kinds: set[str]) -> str:
 
 
 def _glass_axis(across: Scale, *, bottom: int, y: int) -> list[str]:
-    digits = _digits(across.step / 1000)
+    digits = step_digits(across.step / 1000)
     ticks = [tick for tick in across.ticks() if tick < across.high - across.step * 0.5]
     marks = "".join(f"M{across.at(tick):.1f} {bottom + 28}v5" for tick in (*ticks, across.high))
     return [
-        f'<path d="M{_LEFT} {bottom + 28}H{_RIGHT}" stroke="{_TICK}" stroke-width=".8"/>',
-        f'<path d="{marks}" stroke="{_TICK}" stroke-width=".8"/>',
+        f'<path d="M{LEFT} {bottom + 28}H{RIGHT}" stroke="{TICK}" stroke-width=".8"/>',
+        f'<path d="{marks}" stroke="{TICK}" stroke-width=".8"/>',
         *(
             svg_text(across.at(t), y, number_text(t / 1000, digits=digits), anchor="middle")
             for t in ticks
         ),
         svg_text(
-            _RIGHT + 60, y, f"{number_text(across.high / 1000, digits=3)} km glass", anchor="end"
+            RIGHT + 60, y, f"{number_text(across.high / 1000, digits=3)} km glass", anchor="end"
         ),
     ]
