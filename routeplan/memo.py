@@ -6,7 +6,7 @@ from collections.abc import Callable, Hashable, Mapping
 from dataclasses import dataclass, field
 from hashlib import blake2b
 from operator import attrgetter
-from typing import Any, TypeVar
+from typing import Any, TypeVar, cast
 
 import numpy as np
 from pydantic import BaseModel
@@ -15,6 +15,7 @@ __all__ = ["Memo", "fingerprint", "remembered", "swept"]
 
 Result = TypeVar("Result")
 
+_PLAIN = frozenset({str, int, float, bool, type(None)})
 _TURNS_KEPT = 3  # what the last plans used: enough to step back, and memory stays bounded
 
 
@@ -77,27 +78,34 @@ def fingerprint(value: object, memo: Memo | None = None) -> Hashable:
     memo
         Where the fingerprint of a frozen thing is kept from one time to the next.
     """
-    if value is None or isinstance(value, str | int | float):
+    if type(value) in _PLAIN:
         return value
-    if isinstance(value, tuple | list):
-        return tuple([fingerprint(entry, memo) for entry in value])
-    if isinstance(value, Mapping):
-        return tuple([(key, fingerprint(entry, memo)) for key, entry in sorted(value.items())])
+    if isinstance(value, tuple):
+        return tuple([e if type(e) in _PLAIN else fingerprint(e, memo) for e in value])
     if isinstance(value, np.ndarray):
         digest = blake2b(value.tobytes(), digest_size=16).digest()
         return (value.shape, value.dtype.str, digest)
-    known = memo.prints.get(id(value)) if memo else None
-    key = known[2] if known else _content(value, memo)
-    if memo:
+    if memo is None:
+        return _content(value, None)
+    turn, _, key = memo.prints.get(id(value), (-1, None, None))
+    if turn < 0:
+        key = _content(value, memo)
+    if turn != memo.turn:
         memo.prints[id(value)] = (memo.turn, value, key)
     return key
 
 
 def _content(value: object, memo: Memo | None) -> Hashable:
+    if isinstance(value, list):
+        return fingerprint(tuple(value), memo)
+    if isinstance(value, Mapping):
+        return tuple([(key, fingerprint(entry, memo)) for key, entry in sorted(value.items())])
     if isinstance(value, BaseModel):
         return (type(value).__name__, value.model_dump_json())
+    if isinstance(value, np.generic):
+        return cast("Hashable", value.item())
     names = getattr(type(value), "__dataclass_fields__", None)
     if names is None:
         raise TypeError(f"no fingerprint of {type(value).__name__}")
     fields = attrgetter(*names, "__class__")(value)
-    return (type(value).__name__, *[fingerprint(entry, memo) for entry in fields[:-1]])
+    return (type(value).__name__, *fingerprint(fields[:-1], memo))  # type: ignore[misc]

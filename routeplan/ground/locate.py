@@ -27,7 +27,7 @@ class LineIndex:
     The steps of several polylines, with a box around every `block` of them; see `index_lines`.
 
     Every line is taken in its canonical direction, so that answers do not hang on how it was
-    drawn; `index_begin` and `index_end` may fall.
+    drawn; `index_begin` and `index_end` may fall. Boxes are (4, n): west, south, east, north.
     """
 
     begin: Floats
@@ -35,9 +35,9 @@ class LineIndex:
     line: Whole
     index_begin: Floats
     index_end: Floats
+    step_boxes: Floats
     block: int
-    low: Floats
-    high: Floats
+    block_boxes: Floats
     reference_lon: float
 
 
@@ -70,15 +70,22 @@ def index_lines(shapes: Sequence[tuple[Floats, Floats]]) -> LineIndex:
     end = np.concatenate([lonlat[1:] for lonlat in moved])
     block = max(_BLOCK_LEAST, isqrt(len(begin)) // 4)
     starts = np.arange(0, len(begin), block)
+    low, high = np.minimum(begin, end).T, np.maximum(begin, end).T
     return LineIndex(
         begin=begin,
         end=end,
         line=np.repeat(np.arange(len(shapes)), [len(lonlat) - 1 for lonlat in moved]),
         index_begin=np.concatenate([index[:-1] for _, index in one_way]),
         index_end=np.concatenate([index[1:] for _, index in one_way]),
+        step_boxes=np.pad(
+            np.concatenate([low, high]),
+            ((0, 0), (0, -len(begin) % block)),
+            constant_values=np.nan,  # to whole blocks, with boxes that meet nothing
+        ),
         block=block,
-        low=np.minimum.reduceat(np.minimum(begin, end), starts),
-        high=np.maximum.reduceat(np.maximum(begin, end), starts),
+        block_boxes=np.concatenate(
+            [np.minimum.reduceat(low, starts, axis=1), np.maximum.reduceat(high, starts, axis=1)]
+        ),
         reference_lon=reference,
     )
 
@@ -125,15 +132,18 @@ def _note(
 ) -> None:
     """Add the nearest place on every line to its point's hits."""
     (point, step), (share, offset) = pairs, feet
-    index = lines.index_begin[step] + share * (lines.index_end[step] - lines.index_begin[step])
     line = lines.line[step]
     # Ties in distance (a shared vertex) go to the lower line and step: the same every time.
-    order = np.lexsort((step, line, offset, point))
-    columns = (point[order], line[order], index[order], offset[order])
+    order = np.lexsort((step, offset, line, point))
+    first = np.ones(len(order), dtype=bool)
+    first[1:] = (np.diff(point[order]) != 0) | (np.diff(line[order]) != 0)
+    order = order[first]
+    order = order[np.lexsort((line[order], offset[order], point[order]))]
+    begin, end = lines.index_begin[step[order]], lines.index_end[step[order]]
+    index = begin + share[order] * (end - begin)
+    columns = (point[order], line[order], index, offset[order])
     for at, number, where, far in zip(*(column.tolist() for column in columns), strict=True):
-        found = hits[at]
-        if all(hit.line != number for hit in found):
-            found.append(Hit(line=number, index=where, offset_m=far))
+        hits[at].append(Hit(line=number, index=where, offset_m=far))
 
 
 def _points_near(points: Floats, reference_lon: float) -> Floats:
@@ -143,12 +153,12 @@ def _points_near(points: Floats, reference_lon: float) -> Floats:
 
 def _pairs(lines: LineIndex, points: Floats, radius_m: Floats) -> Iterator[tuple[Whole, Whole]]:
     """Yield points and the steps whose boxes lie near them; all of one point come together."""
-    reach = _reach_deg(points, radius_m)
-    low, high = points - reach, points + reach
-    rows = max(1, _AT_ONCE // len(lines.low))
+    reach = _reach_deg(points, radius_m).T
+    boxes = np.concatenate([points.T - reach, points.T + reach])
+    rows = max(1, _AT_ONCE // lines.block_boxes.shape[1])
     for first in range(0, len(points), rows):
-        own = slice(first, first + rows)
-        meets = _meet(low[own, None], high[own, None], lines.low[None], lines.high[None])
+        own = boxes[:, first : first + rows, None]
+        meets = _meet(own, lines.block_boxes[:, None, :])
         point, block = np.nonzero(meets)
         counts = np.bincount(point, minlength=meets.shape[0])
         ends = np.cumsum(counts)
@@ -157,31 +167,26 @@ def _pairs(lines: LineIndex, points: Floats, radius_m: Floats) -> Iterator[tuple
             # As many whole points as fit, and at least one.
             room = np.searchsorted(ends, begin + _AT_ONCE // lines.block, side="right")
             end = int(ends[max(room - 1, point[begin])])
-            yield _near_steps(lines, low, high, first + point[begin:end], block[begin:end])
+            yield _near_steps(lines, boxes, first + point[begin:end], block[begin:end])
             begin = end
 
 
-def _near_steps(
-    lines: LineIndex, low: Floats, high: Floats, point: Whole, block: Whole
-) -> tuple[Whole, Whole]:
+def _near_steps(lines: LineIndex, boxes: Floats, point: Whole, block: Whole) -> tuple[Whole, Whole]:
+    """Return the points and steps whose boxes meet, of those in some blocks."""
     step = (block[:, None] * lines.block + np.arange(lines.block)).ravel()
     owner = np.repeat(point, lines.block)
-    if block.size and block.max() == len(lines.low) - 1:
-        inside = step < len(lines.begin)
-        step, owner = step[inside], owner[inside]
-    begin, end = lines.begin[step], lines.end[step]
-    near = _meet(low[owner], high[owner], np.minimum(begin, end), np.maximum(begin, end))
+    near = _meet(boxes[:, owner], lines.step_boxes[:, step])
     return owner[near], step[near]
 
 
-def _meet(low: Floats, high: Floats, other_low: Floats, other_high: Floats) -> NDArray[np.bool_]:
-    """Tell which boxes meet; the last axis is longitude and latitude."""
-    return np.asarray(
-        (low[..., 0] <= other_high[..., 0])
-        & (other_low[..., 0] <= high[..., 0])
-        & (low[..., 1] <= other_high[..., 1])
-        & (other_low[..., 1] <= high[..., 1])
-    )
+def _meet(boxes: Floats, others: Floats) -> NDArray[np.bool_]:
+    """Tell which boxes meet."""
+    west, south, east, north = boxes
+    meets: NDArray[np.bool_] = west <= others[2]
+    meets = meets & (others[0] <= east)
+    meets &= south <= others[3]
+    meets &= others[1] <= north
+    return meets
 
 
 def _reach_deg(points: Floats, radius_m: Floats) -> Floats:
