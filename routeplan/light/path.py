@@ -140,21 +140,21 @@ def _steps(
     yield from [SpliceStep(where=start, is_pigtail=True)] * (pigtails - pigtails // 2)
     for number, use in enumerate(uses):
         if number:
-            node = _ends_of(use, tracks)[0]
-            yield from _through(node, joint_at, site_names, fitted)
-        track = tracks[use.cable].steps
-        for step in track if use.forward else reversed(track):
-            yield from _along(step, use.fibre, fitted)
+            met = tuple(_through(_ends_of(use, tracks)[0], joint_at, site_names, fitted))
+            # Whichever way a circuit runs, what stands at a node stands in one order.
+            yield from met if uses[number - 1].cable < use.cable else met[::-1]
+        along = [met for step in tracks[use.cable].steps for met in _along(step, use, fitted)]
+        yield from along if use.forward else reversed(along)
     yield from [SpliceStep(where=end, is_pigtail=True)] * (pigtails // 2)
-    yield from fitted.put_at("site", end)
+    yield from reversed(tuple(fitted.put_at("site", end)))
     yield from [fitted.pair(end)] * (matings // 2)
 
 
-def _along(step: Step, fibre: int, fitted: Fittings) -> Iterator[Step]:
-    """Yield a step of a cable as a circuit meets it, and what is put behind it."""
+def _along(step: Step, use: FibreUse, fitted: Fittings) -> Iterator[Step]:
+    """Yield a step of a cable, in the cable's direction, and what is put behind it."""
     match step:
         case Glass():
-            yield replace(step, fibre=fibre)
+            yield replace(step, fibre=use.fibre)
             yield from fitted.put_at("section", step.section)
         case SpliceStep():
             yield fitted.splice(step.where)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from dataclasses import replace
 
 import pytest
 
@@ -222,7 +223,6 @@ def test_unlike_fibre_is_a_warning_a_check_and_a_line() -> None:
     toml = CIRCUIT + "wavelengths_nm = [1550]\n"
     run = two_leg_run(toml, hut_is_site=False)
     far = run.cables["far"].model_copy(update={"fibre_type": "G.654.E"})
-    from dataclasses import replace
 
     found = plan_document(plan(replace(run, cables={**run.cables, "far": far})))
     assert [row["where"] for row in found["warnings"]] == ["joint J1"]
@@ -234,8 +234,6 @@ def test_unlike_fibre_is_a_warning_a_check_and_a_line() -> None:
 @pytest.mark.parametrize("existing_db", [None, 1.7])
 def test_an_existing_span_brings_its_own_length_and_loss(existing_db: float | None) -> None:
     """Its declared glass and loss stand in the budget, at both wavelengths; else its type's."""
-    from dataclasses import replace
-
     run = two_leg_run(CIRCUIT + "wavelengths_nm = [1550]\n", hut_is_site=False)
     dark = replace(run.lines[1], placement="existing", existing_m=3333.0, existing_db=existing_db)
     found = plan_document(plan(replace(run, lines=(run.lines[0], dark))))

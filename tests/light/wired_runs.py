@@ -40,7 +40,7 @@ def straight_run(toml: str, *, length_m: float = 9000.0) -> Run:
         make_place("site", _at(length_m), HILL),  # type: ignore[arg-type]
     ]
     line = make_line(straight(length_m), "duct", name="Way")
-    return make_run([line], [*sites, *_places(spots)], toml=HEAD + toml)
+    return make_run([line], [*sites, *_places(spots)], toml=toml + HEAD)
 
 
 def two_leg_run(toml: str, *, hut_is_site: bool = True) -> Run:
@@ -51,7 +51,7 @@ def two_leg_run(toml: str, *, hut_is_site: bool = True) -> Run:
     ]
     names = {STUDIO: 0.0, HILL: 6000.0} | ({HUT: 3000.0} if hut_is_site else {})
     sites = [make_place("site", _at(at_m), name) for name, at_m in names.items()]  # type: ignore[arg-type]
-    return make_run(lines, sites, toml=HEAD + "[cables.near]\n[cables.far]\n" + toml)
+    return make_run(lines, sites, toml=toml + HEAD + "[cables.near]\n[cables.far]\n")
 
 
 @cache
