@@ -66,10 +66,9 @@ def anchored(
         With every site that has no street near it.
     """
     _check_sites(sites)
-    owner = np.repeat(np.arange(len(network.length_m)), np.diff(network.shape_first))
     found, problems = [], []
     for site in sites:
-        anchor = _nearest(network, owner, site, usable=usable, most_m=off_street_max_m)
+        anchor = _nearest(network, site, usable=usable, most_m=off_street_max_m)
         if anchor is None:
             problems.append(_far(network, site, off_street_max_m))
         else:
@@ -97,7 +96,6 @@ def _check_sites(sites: Sequence[tuple[str, float, float]]) -> None:
 
 def _nearest(
     network: Network,
-    owner: np.ndarray,
     site: tuple[str, float, float],
     *,
     usable: Flags,
@@ -106,7 +104,7 @@ def _nearest(
     """Return the nearest place, looking farther and farther."""
     reach_m = min(_FIRST_LOOK_M, most_m)
     while True:
-        best = _within(network, owner, site, usable=usable, reach_m=reach_m)
+        best = _within(network, site, usable=usable, reach_m=reach_m)
         if best is not None or reach_m >= most_m:
             return best
         reach_m = min(4.0 * reach_m, most_m)
@@ -114,7 +112,6 @@ def _nearest(
 
 def _within(
     network: Network,
-    owner: np.ndarray,
     site: tuple[str, float, float],
     *,
     usable: Flags,
@@ -124,16 +121,15 @@ def _within(
     north = reach_m / 110_000.0
     east = north / max(np.cos(np.radians(min(abs(lat) + north, 89.9))), 1e-3)
     vertices = network.shape_lonlat
-    away_lon = vertices[:, 0] - lon
-    away_lon = away_lon - 360.0 * np.round(away_lon / 360.0)
-    away_lat = vertices[:, 1] - lat
     # A step is near unless both its ends lie beyond the same side of the box.
-    side = (away_lon > east) * 1 + (away_lon < -east) * 2
-    side = (side + (away_lat > north) * 4 + (away_lat < -north) * 8).astype(np.int8)
-    near = (side[1:] & side[:-1]) == 0
-    near &= owner[1:] == owner[:-1]
-    step = np.flatnonzero(near)
-    step = step[usable[owner[step]]]
+    above, below = vertices[:, 1] > lat + north, vertices[:, 1] < lat - north
+    step = np.flatnonzero(~((above[1:] & above[:-1]) | (below[1:] & below[:-1])))
+    away = vertices[np.stack([step, step + 1]), 0] - lon
+    away -= 360.0 * np.round(away[:1] / 360.0)
+    step = step[(away.min(axis=0) <= east) & (away.max(axis=0) >= -east)]
+    owner = np.searchsorted(network.shape_first, step, side="right") - 1
+    inside = (step + 1 < network.shape_first[owner + 1]) & usable[owner]
+    step, owner = step[inside], owner[inside]
     if not len(step):
         return None
     begin = np.column_stack(local_xy_m(vertices[step], lon=lon, lat=lat))
@@ -145,7 +141,7 @@ def _within(
     at = int(np.argmin(off))
     if off[at] > reach_m:
         return None
-    return _anchor(network, site, int(owner[step[at]]), int(step[at]), float(share[at]))
+    return _anchor(network, site, int(owner[at]), int(step[at]), float(share[at]))
 
 
 def _anchor(

@@ -9,7 +9,7 @@ import numpy as np
 
 from routeplan.geodesy import steps_m, wrapped
 from routeplan.streets.crossings import Crossings, find_crossings
-from routeplan.streets.islands import parts_of
+from routeplan.streets.islands import labelled
 from routeplan.streets.model import Flags, Floats, Network, Whole
 
 __all__ = [
@@ -168,6 +168,7 @@ def assembled(
         row_first=row_first,
         row_node=row_node,
         row_edge=row_edge,
+        part=labelled(row_first, row_node),
     )
     return replace(network, notes=(*notes, *_said(network, twice, where)))
 
@@ -286,10 +287,11 @@ def _said(network: Network, twice: int, where: str) -> list[tuple[str, str]]:
     size = len(network.node_lonlat)
     if not size:
         return said
-    label = parts_of(network)
-    count = int(label.max()) + 1
+    count = int(network.part.max()) + 1
     if count > 1:
-        metres = np.bincount(label[network.edge_start], weights=network.length_m, minlength=count)
+        metres = np.bincount(
+            network.part[network.edge_start], weights=network.length_m, minlength=count
+        )
         outside = 100.0 * (1.0 - metres.max() / metres.sum())
         said.append(
             (

@@ -21,7 +21,7 @@ from routeplan.streets.model import Network
 
 __all__ = ["cache_path", "cached_network", "file_digest"]
 
-_VERSION = 1  # raise it whenever what is kept, or how it is worked out, changes
+_VERSION = 2  # raise it whenever what is kept, or how it is worked out, changes
 _TEXT = ("class_words", "name_words", "placement_words", "place_words", "notes")
 _BROKEN = (OSError, EOFError, ValueError, KeyError, TypeError, zipfile.BadZipFile, zlib.error)
 

@@ -33,7 +33,7 @@ def exposures_between(main: Way, standby: Way, *, distance_m: float) -> tuple[Ex
         From where on two ways count as apart. [m]
     """
     points, along = _points(main.lonlat)
-    away = near_m_of(points, standby.lonlat)
+    away = near_m_of(points, standby.lonlat, most_m=distance_m)
     shared = _shared_pieces(main, standby)
     is_shared = _within(along, shared)
     kinds = np.where(
@@ -51,9 +51,9 @@ def exposures_between(main: Way, standby: Way, *, distance_m: float) -> tuple[Ex
     return tuple(found)
 
 
-def near_m_of(points: Floats, lonlat: Floats) -> Floats:
+def near_m_of(points: Floats, lonlat: Floats, *, most_m: float) -> Floats:
     """
-    Return how far points are from a polyline.
+    Return how far points are from a polyline, infinite beyond `most_m`.
 
     Parameters
     ----------
@@ -61,6 +61,8 @@ def near_m_of(points: Floats, lonlat: Floats) -> Floats:
         Shape (n, 2). [deg]
     lonlat
         The polyline, shape (k, 2). [deg]
+    most_m
+        How far to look. [m]
     """
     import shapely
 
@@ -71,11 +73,10 @@ def near_m_of(points: Floats, lonlat: Floats) -> Floats:
     steps = np.stack([line[:-1] * flat, line[1:] * flat], axis=1)
     drawn: Any = shapely.linestrings(steps)
     tree = shapely.STRtree(drawn)
-    (number, _), far = tree.query_nearest(
-        shapely.points(moved), return_distance=True, all_matches=False
-    )
-    away = np.empty(len(points))
-    away[number] = far
+    marks: Any = shapely.points(moved)
+    number, step = tree.query(marks, predicate="dwithin", distance=most_m)
+    away = np.full(len(points), np.inf)
+    np.minimum.at(away, number, shapely.distance(marks[number], drawn[step]))
     return away
 
 

@@ -15,7 +15,7 @@ from routeplan.streets.costs import Prices
 from routeplan.streets.edges import cumulative_m
 from routeplan.streets.model import Floats, Network, Whole
 
-__all__ = ["Graph", "graph_of", "piece_of"]
+__all__ = ["Graph", "graph_of", "node_lonlat", "piece_of"]
 
 _SAME_PLACE_M = 0.01
 
@@ -85,10 +85,10 @@ def graph_of(network: Network, prices: Prices, anchors: Sequence[Anchor]) -> Gra
         prices=prices,
         anchors=tuple(anchors),
         terminals=tuple(cuts.terminals),
-        row_first=np.concatenate([network.row_first, rows]).astype(np.int32),
-        row_node=np.concatenate([cuts.node, [arc[0] for arc in cuts.arcs]]).astype(np.int32),
-        row_piece=np.concatenate([cuts.piece, [arc[1] for arc in cuts.arcs]]).astype(np.int32),
-        cost=np.concatenate([cuts.cost, [arc[2] for arc in cuts.arcs]]),
+        row_first=np.append(network.row_first, rows.astype(np.int32)),
+        row_node=np.append(cuts.node, np.array([arc[0] for arc in cuts.arcs], dtype=np.int32)),
+        row_piece=np.append(cuts.piece, np.array([arc[1] for arc in cuts.arcs], dtype=np.int32)),
+        cost=np.append(cuts.cost, np.array([arc[2] for arc in cuts.arcs], dtype=np.float64)),
         pieces=tuple(cuts.pieces),
     )
 
@@ -159,6 +159,15 @@ def piece_cost(network: Network, prices: Prices, edge: int, from_m: float, to_m:
         ]
         cost += prices.costs.sharp_bend_each * int(((marks > from_m) & (marks < to_m)).sum())
     return cost
+
+
+def node_lonlat(graph: Graph, node: int) -> tuple[float, float]:
+    """Return where a node is, a site's on its street."""
+    if node < len(graph.network.node_lonlat):
+        lon, lat = graph.network.node_lonlat[node]
+        return float(lon), float(lat)
+    anchor = graph.anchors[graph.terminals.index(node)]
+    return anchor.foot_lon, anchor.foot_lat
 
 
 def piece_of(graph: Graph, piece: int, tail: int) -> tuple[int, float, float]:

@@ -6,10 +6,10 @@ import numpy as np
 
 from routeplan.streets.model import Flags, Network, Whole
 
-__all__ = ["parts_of"]
+__all__ = ["labelled", "parts_of"]
 
 
-def parts_of(network: Network, usable: Flags | None = None) -> Whole:
+def parts_of(network: Network, usable: Flags) -> Whole:
     """
     Return for each node the number of the part of the network it belongs to.
 
@@ -18,17 +18,23 @@ def parts_of(network: Network, usable: Flags | None = None) -> Whole:
     network
         The network.
     usable
-        Which edges count, shape (m,); None: all.
+        Which edges count, shape (m,).
     """
+    if usable.all():
+        return network.part
+    keep = usable[network.row_edge]
+    row_first = np.concatenate([[0], np.cumsum(keep)])[network.row_first].astype(np.int32)
+    return labelled(row_first, network.row_node[keep])
+
+
+def labelled(row_first: Whole, row_node: Whole) -> Whole:
+    """Return for each row of an adjacency the number of the part it hangs together with."""
     from scipy.sparse import csr_array
     from scipy.sparse.csgraph import connected_components
 
-    size = len(network.node_lonlat)
-    row_first, row_node = network.row_first, network.row_node
-    if usable is not None and not usable.all():
-        keep = usable[network.row_edge]
-        row_first = np.concatenate([[0], np.cumsum(keep)])[row_first].astype(np.int32)
-        row_node = row_node[keep]
+    size = len(row_first) - 1
+    if not size:
+        return np.empty(0, dtype=np.int32)
     ones = np.ones(len(row_node), dtype=np.int8)
     graph = csr_array((ones, row_node, row_first), shape=(size, size))
     _, label = connected_components(graph, directed=False)

@@ -40,10 +40,11 @@ class Network:
 
     Edge e runs from `edge_start[e]` to `edge_end[e]` along
     `shape_lonlat[shape_first[e] : shape_first[e + 1]]` and is `length_m[e]` long on the WGS 84
-    ellipsoid; the longitude of a shape runs on over the antimeridian. Row v of the adjacency, `row_first[v] : row_first[v + 1]`, holds for every edge end
-    at node v the node at the other end (`row_node`) and the edge (`row_edge`). Text columns are
-    numbers into their list of words; the placement of an ordinary street is the word "".
-    A crossing weighs a half where it lies on an end of its edge, so that both halves make one.
+    ellipsoid; the longitude of a shape runs on over the antimeridian. Row v of the adjacency,
+    `row_first[v] : row_first[v + 1]`, holds for every edge end at node v the node at the other end
+    (`row_node`) and the edge (`row_edge`). `part[v]` numbers what node v hangs together with. Text
+    columns are numbers into their list of words; the placement of an ordinary street is the word
+    "". A crossing weighs a half where it lies on an end of its edge, so that both halves make one.
     `notes` are (where, message) pairs about what the source holds.
     """
 
@@ -72,6 +73,7 @@ class Network:
     row_first: Whole
     row_node: Whole
     row_edge: Whole
+    part: Whole
     notes: tuple[tuple[str, str], ...] = ()
 
 

@@ -142,7 +142,7 @@ def _overlap_ratio(way: Way, earlier: Way, near_m: float) -> float:
     steps = max(int(way.length_m / _POINT_STEP_M), 1)
     chain = np.linspace(0.0, 1.0, steps + 1)
     points = _points(way.lonlat, chain)
-    return float((near_m_of(points, earlier.lonlat) <= near_m).mean())
+    return float((near_m_of(points, earlier.lonlat, most_m=near_m) <= near_m).mean())
 
 
 def _points(lonlat: Floats, shares: Floats) -> Floats:

@@ -96,6 +96,9 @@ def _lines(named: NamedWay, others: Sequence[Floats]) -> list[dict[str, object]]
     return found
 
 
+_SHIFTS_M = (0.0, *(sign * _CLEAR_M * step for step in range(1, 9) for sign in (1, -1)))
+
+
 def _clear_of(way: Way, along_m: float, others: Sequence[Floats]) -> float:
     """
     Return where one placement ends and the next begins, off the line of every other way.
@@ -105,12 +108,14 @@ def _clear_of(way: Way, along_m: float, others: Sequence[Floats]) -> float:
     """
     from routeplan.streets.exposure import near_m_of
 
-    for shift in (0.0, *(sign * _CLEAR_M * k for k in range(1, 9) for sign in (1, -1))):
-        trial = along_m + shift
+    for shift_m in _SHIFTS_M:
+        trial = along_m + shift_m
         if not 0.0 < trial < way.length_m:
             continue
         point = _between(way.lonlat, trial, trial)[:1]
-        if all(float(near_m_of(point, line)[0]) >= _CLEAR_M / 2 for line in others):
+        if all(
+            float(near_m_of(point, line, most_m=_CLEAR_M)[0]) >= _CLEAR_M / 2 for line in others
+        ):
             return trial
     return along_m
 

@@ -142,7 +142,7 @@ def _mapped(network: Network, way: Way, chain: Floats) -> list[tuple[float, str]
     rows = np.flatnonzero(inside)
     if not len(rows):
         return []
-    rows = rows[near_m_of(network.place_lonlat[rows], way.lonlat) <= _MAPPED_M]
+    rows = rows[near_m_of(network.place_lonlat[rows], way.lonlat, most_m=_MAPPED_M) <= _MAPPED_M]
     found = [
         (
             _along_m(way.lonlat, chain, network.place_lonlat[row]),

@@ -51,7 +51,13 @@ def read_network(source: StreetSource | str | Path) -> Network:
     if not isinstance(source, StreetSource):
         source = StreetSource(streets=(Path(source),))
     files = [_file_of(path) for path in (*source.streets, *source.existing)]
-    options = (
+    options = options_of(source)
+    return cached_network(files, options, lambda: _built(source))
+
+
+def options_of(source: StreetSource) -> tuple[object, ...]:
+    """Return what a network depends on besides the bytes of its files."""
+    return (
         len(source.streets),
         [path.name for path in (*source.streets, *source.existing)],
         source.existing_placement,
@@ -59,7 +65,6 @@ def read_network(source: StreetSource | str | Path) -> Network:
         source.crs,
         source.noded,
     )
-    return cached_network(files, options, lambda: _built(source))
 
 
 def _file_of(path: Path) -> Path:

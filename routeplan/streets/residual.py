@@ -10,10 +10,12 @@ import numpy as np
 
 from routeplan.streets.graph import Graph
 from routeplan.streets.model import Floats, Whole
-from routeplan.streets.search import NO_NODE, arcs_to, distances
+from routeplan.streets.search import NO_NODE, arcs_to, distances_to, guessed_cost
 from routeplan.streets.ways import tails_of
 
 __all__ = ["PairArcs", "least_pair"]
+
+_USUALLY_DEARER = 0.6  # a second way seldom adds more to twice the best; if it does, look on
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -57,10 +59,14 @@ def least_pair(
     .. [2] R. Bhandari, Survivable Networks: Algorithms for Diverse Routing (1999), for undirected
        graphs and for splitting the junctions of the first way only.
     """
-    found, before = distances(graph.row_first, graph.row_node, graph.cost, source=source)
+    rows = (graph.row_first, graph.row_node, graph.cost)
+    guess = guessed_cost(graph, source, target)
+    found, before = distances_to(*rows, source=source, target=target, guess=guess)
     if source == target or not np.isfinite(found[target]):
         raise LookupError
     first = arcs_to(graph, before, target)
+    # Nodes farther than the target count as just as far: still no arc is less than nothing.
+    found = np.minimum(found, found[target])
     reduced = _reduced(graph, found)
     left = _Left.of(graph, reduced)
     path = [*tails_of(graph, first), target]
@@ -72,7 +78,9 @@ def least_pair(
     else:
         left.cost[first] = shared
         left.cost[back] = 0.0
-    away, previous = distances(left.row_first(), left.heads(), left.prices(), source=source)
+    rows = (left.row_first(), left.heads(), left.prices())
+    guess = _USUALLY_DEARER * float(found[target])
+    away, previous = distances_to(*rows, source=source, target=target, guess=guess)
     if not np.isfinite(away[target]):
         return PairArcs(first=first, second=None)
     second = _real_arcs(left, previous, source, target)
@@ -81,11 +89,8 @@ def least_pair(
 
 def _reduced(graph: Graph, found: Floats) -> Floats:
     """Return the price of every arc above what it brings nearer, at least 0."""
-    finite = np.where(np.isfinite(found), found, 0.0)
-    tail_part = np.repeat(finite, np.diff(graph.row_first))
-    reduced = graph.cost + tail_part - finite[graph.row_node]
-    reached = np.repeat(np.isfinite(found), np.diff(graph.row_first))
-    return np.where(reached, np.maximum(reduced, 0.0), np.inf)
+    tail_part = np.repeat(found, np.diff(graph.row_first))
+    return np.maximum(graph.cost + tail_part - found[graph.row_node], 0.0)
 
 
 def _twin(graph: Graph, arc: int, tail: int) -> int:

@@ -83,7 +83,8 @@ def separate_ways(
     by_junction = apart == "junctions"
     factor = SHARED_FACTOR if share == "least" else np.inf
     pair = _pair(graph, source, target, by_junction=by_junction, factor=factor)
-    found = bottlenecks_of(graph, pair.first, target, by_junction=by_junction)
+    is_tied = pair.second is None or share == "least"
+    found = bottlenecks_of(graph, pair.first, target, by_junction=by_junction) if is_tied else ()
     if pair.second is None:
         raise no_pair((sites[0][0], sites[1][0]), found)
     main, standby = _ways(graph, pair)

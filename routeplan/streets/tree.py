@@ -11,9 +11,8 @@ from routeplan.errors import InfeasibleError, Problem
 from routeplan.streets.anchors import OFF_STREET_MAX_M
 from routeplan.streets.best import Site, site_graph
 from routeplan.streets.costs import Prices
-from routeplan.streets.edges import edge_part
-from routeplan.streets.graph import Graph, piece_of
-from routeplan.streets.model import Network, Tree, Way
+from routeplan.streets.graph import Graph, node_lonlat
+from routeplan.streets.model import Floats, Network, Tree, Way
 from routeplan.streets.search import distances
 from routeplan.streets.steiner import exact_tree, exact_work, near_tree
 from routeplan.streets.ways import tails_of, way_of
@@ -159,13 +158,5 @@ def _back(graph: Graph, arc: int, tail: int) -> int:
     return first + int(np.flatnonzero(own)[0])
 
 
-def _positions(graph: Graph, nodes: Sequence[int]) -> np.ndarray:
-    found = []
-    for node in nodes:
-        if node < len(graph.network.node_lonlat):
-            found.append(graph.network.node_lonlat[node])
-            continue
-        arc = int(graph.row_first[node])
-        edge, from_m, to_m = piece_of(graph, int(graph.row_piece[arc]), node)
-        found.append(edge_part(graph.network, edge, from_m, to_m)[0])
-    return np.array(found).reshape(-1, 2)
+def _positions(graph: Graph, nodes: Sequence[int]) -> Floats:
+    return np.array([node_lonlat(graph, node) for node in nodes]).reshape(-1, 2)

@@ -128,6 +128,8 @@ def _street_parts(graph: Graph, arcs: Sequence[int]) -> list[Part]:
     for arc, tail in zip(arcs, tails_of(graph, arcs), strict=True):
         edge, from_m, to_m = piece_of(graph, int(graph.row_piece[arc]), tail)
         lonlat = edge_part(network, edge, from_m, to_m)
+        whole_m = float(network.length_m[edge])
+        is_whole = abs(to_m - from_m) == whole_m
         found.append(
             Part(
                 edge=edge,
@@ -139,7 +141,7 @@ def _street_parts(graph: Graph, arcs: Sequence[int]) -> list[Part]:
                 is_bridge=bool(network.is_bridge[edge]),
                 is_tunnel=bool(network.is_tunnel[edge]),
                 lonlat=lonlat,
-                length_m=float(steps_m(lonlat).sum()),
+                length_m=whole_m if is_whole else float(steps_m(lonlat).sum()),
                 cost=float(graph.cost[arc]),
             )
         )
