@@ -17,6 +17,7 @@ from routeplan.run.optics import (
     Panel,
     SectionFigures,
 )
+from routeplan.run.practice import Loss
 from routeplan.run.trouble import is_plain_text, listed, nearest_hint, shown
 
 if TYPE_CHECKING:
@@ -39,7 +40,8 @@ def optics_problems(declared: Declared) -> Iterator[Problem]:
     """Yield what is wrong with connectors, panels, joints, sections, interfaces and circuits."""
     yield from _grade_problems(declared)
     yield from _panel_problems(declared.panels)
-    yield from _joint_problems(declared.joints)
+    if declared.practice:
+        yield from _joint_problems(declared.joints, declared.practice.loss)
     yield from _section_problems(declared.sections)
     for name, interface in declared.interfaces.items():
         yield from _interface_problems(f"interface.{name}", interface)
@@ -93,7 +95,7 @@ def _panel_problems(panels: Sequence[Panel]) -> Iterator[Problem]:
             )
 
 
-def _joint_problems(joints: Sequence[JointFigures]) -> Iterator[Problem]:
+def _joint_problems(joints: Sequence[JointFigures], loss: Loss) -> Iterator[Problem]:
     yield from _repeated("joint", [joint.place for joint in joints])
     for joint in joints:
         where = f"joint {shown(joint.place)}"
@@ -110,6 +112,17 @@ def _joint_problems(joints: Sequence[JointFigures]) -> Iterator[Problem]:
                 what="says nothing of its splices",
                 remedy="Give measured_db, or any of splice_mean_db, splice_sigma_db and "
                 "splice_limit_db.",
+            )
+        mean_db, limit_db = joint.splice_mean_db, joint.splice_limit_db
+        mean_db = loss.splice_mean_db if mean_db is None else mean_db
+        limit_db = loss.splice_limit_db if limit_db is None else limit_db
+        if (joint.splice_mean_db, joint.splice_limit_db) != (None, None) and limit_db < mean_db:
+            yield Problem(
+                where=f"{where}, splice_limit_db",
+                what="is below the mean",
+                value=f"{limit_db:g} dB",
+                limit=f"at least {mean_db:g} dB",
+                remedy="Give splice_mean_db and splice_limit_db together.",
             )
 
 

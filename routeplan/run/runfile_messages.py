@@ -23,6 +23,7 @@ _UNITS = {
     "_dbm": "dBm",
     "_db": "dB",
     "_nm": "nm",
+    "_mm": "mm",
     "_gbps": "Gbit/s",
     "_m": "m",
 }
@@ -32,6 +33,7 @@ _BOUNDS = {"greater_than_equal": "at least", "greater_than": "more than"} | {
 }
 _WHATS = {
     "int_type": "is not a whole number",
+    "bool_type": "is not true or false",
     "float_type": "is not a number",
     "string_type": "is not text",
     "finite_number": "is not a finite number",
