@@ -14,6 +14,7 @@ from typing import TYPE_CHECKING, NoReturn
 from routeplan import __version__
 from routeplan.errors import InputError, Problem, RouteplanError
 from routeplan.quick_options import OPTIONS
+from routeplan.route_options import ROUTE_OPTIONS
 from routeplan.terminal import progress, say, say_json, say_json_text, visible
 
 if TYPE_CHECKING:
@@ -74,11 +75,30 @@ def make_parser() -> argparse.ArgumentParser:
     _add_json(budget)
     budget.set_defaults(act=_budget)
 
+    route = commands.add_parser("route", help="find ways along streets and write them to plan")
+    place_help = "LON,LAT or NAME=LON,LAT in degrees, or a site of --run"
+    route.add_argument("start", metavar="FROM", help=place_help)
+    route.add_argument("end", metavar="TO", help=place_help)
+    _add_route_options(route)
+    _add_json(route)
+    route.set_defaults(act=_route)
+
     tables = commands.add_parser("tables", help="show the published numbers with their sources")
     tables.add_argument("name", metavar="NAME", nargs="?", help="one table; left out: list them")
     _add_json(tables)
     tables.set_defaults(act=_tables)
     return parser
+
+
+def _add_route_options(parser: argparse.ArgumentParser) -> None:
+    for option in ROUTE_OPTIONS:
+        if option.metavar:
+            action = "append" if option.is_repeated else "store"
+            parser.add_argument(
+                option.label, metavar=option.metavar, action=action, help=option.text
+            )
+        else:
+            parser.add_argument(option.label, action="store_true", help=option.text)
 
 
 def _add_json(parser: argparse.ArgumentParser) -> None:
@@ -229,6 +249,22 @@ def _budget(arguments: argparse.Namespace) -> int:
     else:
         say(quick_text(answer))
     return 1 if answer.verdict == "fails" else 0
+
+
+def _route(arguments: argparse.Namespace) -> int:
+    from routeplan.route_options import order_of
+    from routeplan.routing import find_ways, routed_text
+
+    order = order_of(vars(arguments))
+    with progress(4) as advance:
+        routed = find_ways(order, on_step=advance)
+    if arguments.json:
+        say_json(routed.document)
+    else:
+        say("\n".join(visible(line) for line in routed_text(routed).splitlines()))
+    for where, message in routed.warnings[:_SHOWN_WARNINGS]:
+        say(visible(f"warning: {where}: {message}"), stream=sys.stderr)
+    return 0
 
 
 def _tables(arguments: argparse.Namespace) -> int:

@@ -283,7 +283,7 @@ def _said(network: Network, twice: int, where: str) -> list[tuple[str, str]]:
     """Return what is worth knowing about a network as it was read."""
     said = []
     if twice:
-        said.append((where, f"{twice} pieces of street are drawn twice and count once"))
+        said.append((where, f"{twice} of the pieces of street are drawn twice and count once"))
     size = len(network.node_lonlat)
     if not size:
         return said

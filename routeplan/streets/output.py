@@ -11,7 +11,15 @@ import numpy as np
 from routeplan.streets.model import Floats, ReachPoint, Tree, Way
 from routeplan.streets.reach import stretches
 
-__all__ = ["NamedWay", "SiteMark", "collection_of", "collection_text", "rows_of", "tree_ways"]
+__all__ = [
+    "NamedWay",
+    "SiteMark",
+    "collection_of",
+    "collection_text",
+    "line_between",
+    "rows_of",
+    "tree_ways",
+]
 
 _CROSSES = {"rail": "rail", "water": "water", "motorway": "road"}
 _DIGITS = 9
@@ -83,7 +91,7 @@ def _lines(named: NamedWay, others: Sequence[Floats]) -> list[dict[str, object]]
     groups = stretches(way)
     bounds = [0.0, *(_clear_of(way, end, others) for _, _, end in groups[:-1]), way.length_m]
     for number, (placement, _, _) in enumerate(groups):
-        line = _between(way.lonlat, bounds[number], bounds[number + 1])
+        line = line_between(way.lonlat, bounds[number], bounds[number + 1])
         names = _street_names(way, groups[number][1], groups[number][2])
         known: dict[str, object] = {
             "name": named.name if len(groups) == 1 else f"{named.name} {number + 1}",
@@ -112,7 +120,7 @@ def _clear_of(way: Way, along_m: float, others: Sequence[Floats]) -> float:
         trial = along_m + shift_m
         if not 0.0 < trial < way.length_m:
             continue
-        point = _between(way.lonlat, trial, trial)[:1]
+        point = line_between(way.lonlat, trial, trial)[:1]
         if all(
             float(near_m_of(point, line, most_m=_CLEAR_M)[0]) >= _CLEAR_M / 2 for line in others
         ):
@@ -120,7 +128,7 @@ def _clear_of(way: Way, along_m: float, others: Sequence[Floats]) -> float:
     return along_m
 
 
-def _between(lonlat: Floats, from_m: float, to_m: float) -> Floats:
+def line_between(lonlat: Floats, from_m: float, to_m: float) -> Floats:
     from routeplan.geodesy import steps_m, unwrapped, wrapped
 
     chain = np.concatenate([[0.0], np.cumsum(steps_m(lonlat))])
