@@ -17,7 +17,7 @@ from routeplan.streets.search import least_arcs
 from routeplan.streets.turns import least_arcs_with_turns
 from routeplan.streets.ways import way_of
 
-__all__ = ["best_way", "legs_between", "site_graph"]
+__all__ = ["best_way", "legs_between", "no_way", "site_graph"]
 
 Site = tuple[str, float, float]
 

@@ -13,7 +13,7 @@ from routeplan.streets.graph import Graph, piece_of
 from routeplan.streets.model import Bottleneck, Floats, Whole
 from routeplan.streets.ways import tails_of
 
-__all__ = ["bottlenecks_of", "no_pair"]
+__all__ = ["bottlenecks_of", "no_pair", "spoken"]
 
 _NAMED = 3
 

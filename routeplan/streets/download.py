@@ -13,7 +13,7 @@ from typing import Any, Literal
 from routeplan.errors import InputError, Problem
 from routeplan.streets.model import Network
 
-__all__ = ["Request", "download_streets"]
+__all__ = ["Request", "download_streets", "downloaded_network"]
 
 _INSTEAD = "Give a local file with --streets: .osm, .osm.pbf, .osm.bz2, .graphml or a line layer."
 _RADIUS_MAX_M = 100_000.0

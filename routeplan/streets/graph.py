@@ -15,7 +15,7 @@ from routeplan.streets.costs import Prices
 from routeplan.streets.edges import cumulative_m
 from routeplan.streets.model import Floats, Network, Whole
 
-__all__ = ["Graph", "graph_of", "node_lonlat", "piece_of"]
+__all__ = ["Graph", "graph_of", "node_lonlat", "piece_cost", "piece_of"]
 
 _SAME_PLACE_M = 0.01
 

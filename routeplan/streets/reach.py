@@ -13,7 +13,7 @@ from routeplan.streets.costs import all_rows
 from routeplan.streets.exposure import near_m_of
 from routeplan.streets.model import Floats, Network, ReachPoint, Way
 
-__all__ = ["Spacing", "reach_points", "usual_spacing"]
+__all__ = ["Spacing", "reach_points", "stretches", "usual_spacing"]
 
 _MAPPED_M = 15.0  # house rule: half a street's width and the error of a position
 _NO_REACH = ("bridge", "water", "indoor", "existing")

@@ -10,7 +10,7 @@ from routeplan.errors import GeometryError, Problem
 from routeplan.streets.cache import cached_network
 from routeplan.streets.model import Floats, Network
 
-__all__ = ["StreetSource", "read_network"]
+__all__ = ["StreetSource", "options_of", "read_network"]
 
 _OSM = (".osm", ".pbf", ".bz2")
 

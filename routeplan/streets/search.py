@@ -11,7 +11,7 @@ from routeplan.geodesy import steps_m
 from routeplan.streets.graph import Graph, node_lonlat
 from routeplan.streets.model import Floats, Whole
 
-__all__ = ["arcs_to", "distances", "distances_to", "guessed_cost", "least_arcs"]
+__all__ = ["arcs_to", "distances", "distances_to", "guessed_cost", "least_arc", "least_arcs"]
 
 NO_NODE = -9999  # what scipy writes where there is no node before
 

@@ -20,7 +20,7 @@ from routeplan.streets.model import Floats, Network, SeparateWays, Way
 from routeplan.streets.residual import PairArcs, least_pair
 from routeplan.streets.ways import way_of
 
-__all__ = ["SHARED_FACTOR", "separate_ways"]
+__all__ = ["SHARED_FACTOR", "exposed_m", "separate_ways"]
 
 SHARED_FACTOR = 10_000.0
 """How many times its price a street costs the second way, where sharing cannot be helped."""

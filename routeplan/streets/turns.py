@@ -10,7 +10,7 @@ from routeplan.streets.graph import Graph
 from routeplan.streets.model import Floats, Whole
 from routeplan.streets.search import NO_NODE, distances
 
-__all__ = ["least_arcs_with_turns"]
+__all__ = ["arc_headings_rad", "least_arcs_with_turns"]
 
 
 def least_arcs_with_turns(
