@@ -27,7 +27,7 @@ __all__ = [
 
 Whole = NDArray[np.int64]
 
-_PIECE = 8  # steps of a leg that share a box
+_PIECE = 16  # steps of a leg that share a box
 _AT_ONCE = 1 << 18  # pairs of segments held in memory together
 _M_PER_DEGREE = 110_000.0  # a little less than any degree of latitude
 _EDGE_LON = 150.0  # legs beyond it are also looked for at the other end of the map
@@ -40,7 +40,7 @@ class LegSegments:
 
     `begin`, `end` (n, 2) [deg]; `start_m`, `stop_m` (n,) are ground metres from the leg's
     canonical start; `leg` (n,); `scale` (n, 2) is metres a degree, east and north. `first` and
-    `last` (legs,) are each leg's first step and one beyond its last. Pieces of up to 8 steps
+    `last` (legs,) are each leg's first step and one beyond its last. Pieces of up to 16 steps
     have boxes in `tree`; `piece_first`, `piece_count` and `piece_turn` (p,) are their steps and
     by how many degrees their box was moved around the earth.
     """

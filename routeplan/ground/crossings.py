@@ -50,6 +50,8 @@ ALONG_DISTANCE_M = 10.0
 ALONG_LENGTH_M = 50.0
 ALONG_ANGLE_DEG = 20.0
 
+_PHYSICAL = ("road", "rail", "water", "power", "pipeline")  # what a cable has to get past
+
 How = Literal["crosses", "touches", "along", "inside"]
 
 _NONE = np.zeros(0, dtype=np.int64)
@@ -111,7 +113,7 @@ def find_crossings(
     lengths and angles are taken in metres from the step's own beginning, which on a step of 200 m
     is good to a millimetre below latitude 80, over the antimeridian as elsewhere.
 
-    Boxes around pieces of 8 steps go into a tree that is asked once for all features and once for
+    Boxes around pieces of 16 steps go into a tree that is asked once for all features and once for
     the segments of those met; memory grows with what lies near the legs, not with the layers.
 
     Parameters
@@ -263,19 +265,30 @@ def areas_layer(areas: Sequence[Area]) -> FeatureLayer:
     )
 
 
-def crossings_of(found: Sequence[FoundCrossing]) -> tuple[Crossing, ...]:
+def crossings_of(
+    found: Sequence[FoundCrossing], declared: Sequence[Crossing] = (), *, apart_m: float = 15.0
+) -> tuple[Crossing, ...]:
     """
-    Return the found lines that are crossed, and the water gone through, as crossings of a leg.
+    Return what was found as crossings of a leg, less what the planner declared already.
 
-    Those of a road, rail, water or power line or a pipeline; water that is an area has the
-    length inside as its width, a line has none.
+    Those are the lines crossed and the water gone through. Water that is an area has the length
+    inside as its width, and takes the place of a river's line in it; a line has no width.
 
     Parameters
     ----------
     found
         What was found.
+    declared
+        Declared crossings. One of the same kind on the same leg stands for a found one within its
+        own half width and `apart_m`.
+    apart_m
+        How far a declared crossing may lie off; house rule: the width of a road. [m]
     """
-    physical = ("road", "rail", "water", "power", "pipeline")
+    crossed = [
+        one
+        for one in found
+        if one.kind in _PHYSICAL and one.how in ("crosses", "inside") and not _is_in(one, found)
+    ]
     return tuple(
         Crossing(
             leg=one.leg,
@@ -286,6 +299,28 @@ def crossings_of(found: Sequence[FoundCrossing]) -> tuple[Crossing, ...]:
             lon=one.lon,
             lat=one.lat,
         )
-        for one in found
-        if one.kind in physical and one.how in ("crosses", "inside")
+        for one in crossed
+        if not any(_stands_for(known, one, apart_m) for known in declared)
     )
+
+
+def _is_in(one: FoundCrossing, found: Sequence[FoundCrossing]) -> bool:
+    """Tell whether a line of water is crossed within an area of water."""
+    return (
+        one.kind == "water"
+        and one.how == "crosses"
+        and any(
+            other.how == "inside"
+            and other.kind == "water"
+            and other.leg == one.leg
+            and other.start_mm <= one.start_mm <= other.end_mm
+            for other in found
+        )
+    )
+
+
+def _stands_for(known: Crossing, one: FoundCrossing, apart_m: float) -> bool:
+    if known.leg != one.leg or known.crosses != one.kind:
+        return False
+    reach_mm = 1000.0 * (apart_m + (known.width_m or 0.0) / 2.0)
+    return one.start_mm - reach_mm <= known.ground_mm <= one.end_mm + reach_mm

@@ -171,41 +171,57 @@ def _window_cells(sheet: Sheet) -> tuple[int, int]:
 
 
 def _window_heights(sheet: Sheet, read: Read, col: Floats, row: Floats) -> Floats:
-    c0, c1 = _bounds(col, sheet.cols)
-    r0, r1 = _bounds(row, sheet.rows)
+    c0, c1, is_inner = _bounds(col, sheet.cols)
+    r0, r1, is_level = _bounds(row, sheet.rows)
     stored, void = read(r0, r1, c0, c1)
     heights = np.empty(len(col))
     for begin in range(0, len(col), _CHUNK):
         part = slice(begin, begin + _CHUNK)
-        heights[part] = _bilinear(sheet, stored, void, col[part] - c0, row[part] - r0)
+        left, across = _cell(col[part], c0, c1, is_inner=is_inner)
+        top, along = _cell(row[part], r0, r1, is_inner=is_level)
+        top *= c1 - c0
+        top += left
+        heights[part] = _bilinear(sheet, stored, void=void, first=top, across=across, along=along)
     tile = sheet.tiles[0]
     if tile.factor_m != 1.0 or tile.offset_m:
         heights = heights * tile.factor_m + tile.offset_m
     return heights
 
 
-def _bounds(at: Floats, count: int) -> tuple[int, int]:
-    """Return the first and one beyond the last cell that bear on positions."""
-    first = min(max(int(at.min()), 0), max(count - 2, 0))
-    return first, min(max(int(at.max()), first) + 2, count)
+def _bounds(at: Floats, count: int) -> tuple[int, int, bool]:
+    """Return the first and one beyond the last cell that bear, and whether all lie between two."""
+    low, high = float(at.min()), float(at.max())
+    first = min(max(int(low), 0), max(count - 2, 0))
+    return first, min(max(int(high), first) + 2, count), low >= 0.0 and high < count - 1
+
+
+def _cell(at: Floats, first: int, last: int, *, is_inner: bool) -> tuple[Whole, Floats]:
+    """Return the cell before each position, from the window's first, and how far on it lies."""
+    if not is_inner:
+        at = np.clip(at, first, last - 1)
+    cell = at.astype(np.int32)
+    if not is_inner:
+        np.minimum(cell, max(last - 2, first), out=cell)
+    share = at - cell
+    whole = cell.astype(np.intp)
+    whole -= first
+    return whole, share
 
 
 def _bilinear(
-    sheet: Sheet, stored: NDArray[np.generic], void: float | None, col: Floats, row: Floats
+    sheet: Sheet,
+    stored: NDArray[np.generic],
+    *,
+    void: float | None,
+    first: Whole,
+    across: Floats,
+    along: Floats,
 ) -> Floats:
     """Return stored values between centres of a window's cells, NaN where one is unknown."""
     rows, cols = stored.shape
-    np.clip(col, 0.0, cols - 1.0, out=col)
-    np.clip(row, 0.0, rows - 1.0, out=row)
-    left = np.minimum(col.astype(np.intp), max(cols - 2, 0))
-    top = np.minimum(row.astype(np.intp), max(rows - 2, 0))
-    across, along = np.subtract(col, left, out=col), np.subtract(row, top, out=row)
-    first = top
-    first *= cols
-    first += left
     right, down = int(cols > 1), cols * int(rows > 1)
     flat = stored.ravel()
-    corners = [flat.take(first + step) for step in (0, right, down, down + right)]
+    corners = [flat[step:].take(first) for step in (0, right, down, down + right)]
     unknown = _unknown(sheet, corners, void)
     nw, ne, sw, se = (values.astype(np.float64) for values in corners)
     for values, miss in zip((nw, ne, sw, se), unknown, strict=False):

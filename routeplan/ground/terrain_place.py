@@ -17,6 +17,7 @@ __all__ = ["cell_positions", "cell_step_m", "crs_is_geographic", "far_from_run",
 
 _AREA_MARGIN_DEG = 3.0  # grids are often used somewhat beyond the zone they are made for
 _CHUNK = 65536
+_CACHED = 8192  # keeps every temporary array in the processor's cache
 _FIT_FROM = 4096  # fewer points are transformed one by one
 _FIT_CELLS = 0.002  # how far a fitted position may lie off
 
@@ -181,8 +182,8 @@ def _exact(sheet: Sheet, lon: Floats, lat: Floats) -> tuple[Floats, Floats]:
         x, y = _to_grid(sheet.crs).transform(lon, lat)
     if crs_is_geographic(sheet.crs):
         middle = a * (sheet.cols - 1) / 2 + b * (sheet.rows - 1) / 2 + c
-        turns = np.rint((x - middle) / 360.0)
-        x = x - 360.0 * turns if turns.any() else x
+        if not (np.min(x) >= middle - 180.0 and np.max(x) <= middle + 180.0):
+            x = x - 360.0 * np.rint((x - middle) / 360.0)
     size = a * e - b * d
     if b == 0.0 and d == 0.0:
         return (x - c) / a, (y - f) / e
@@ -216,8 +217,12 @@ def _fitted(sheet: Sheet, lon: Floats, lat: Floats, count: int) -> tuple[Floats,
     for table, value in zip(tables, truth, strict=True):
         if not np.abs(_polynomial(table, u, v) - value).max() <= _FIT_CELLS:
             return None
-    u, v = (lon - middle[0]) / half[0], (lat - middle[1]) / half[1]
-    return _polynomial(tables[0], u, v), _polynomial(tables[1], u, v)
+    col, row = np.empty(len(lon)), np.empty(len(lon))
+    for begin in range(0, len(lon), _CACHED):
+        part = slice(begin, begin + _CACHED)
+        u, v = (lon[part] - middle[0]) / half[0], (lat[part] - middle[1]) / half[1]
+        col[part], row[part] = _polynomial(tables[0], u, v), _polynomial(tables[1], u, v)
+    return col, row
 
 
 def _polynomial(table: Floats, u: Floats, v: Floats) -> Floats:

@@ -1,17 +1,17 @@
-"""Print how fast crossings are found, as ratios to a bare tree query plus intersection."""
+"""
+Print how fast crossings are found, as ratios to a bare tree query plus intersection.
+
+Run as a module from the project's folder: python -m tests.benchmarks.bench_crossings
+"""
 
 from __future__ import annotations
 
-import sys
 import time
 import tracemalloc
 from collections.abc import Callable
-from pathlib import Path
 
 import numpy as np
 import shapely
-
-sys.path.insert(0, str(Path(__file__).parents[2]))
 
 from routeplan.ground.crossings import find_crossings
 from routeplan.ground.features import FeatureLayer, feature_layer, lines_from_arrays

@@ -15,6 +15,7 @@ from routeplan.ground.crossings import (
     crossings_of,
     find_crossings,
 )
+from routeplan.ground.model import Crossing
 from routeplan.run.model import Area, Source
 from tests.ground.crossing_layers import area, cells, layer_of, leg_of, line
 
@@ -243,3 +244,41 @@ def test_found_crossings_become_those_of_the_model() -> None:
     assert power.ground_mm == pytest.approx(3 * CELL_MM, abs=1)
     assert loch.width_m == pytest.approx(4 * CELL_MM / 1000, abs=0.002)
     assert loch.ground_mm == pytest.approx(7 * CELL_MM, abs=1)
+
+
+def test_a_rivers_line_in_its_own_water_is_one_crossing() -> None:
+    """The area says how wide; a stream elsewhere stays."""
+    river = line([(7, -5), (7, 5)])
+    stream = line([(15, -5), (15, 5)])
+    layers = [layer_of(river, stream, kind="water"), layer_of(area(SQUARE), kind="water")]
+    wide, narrow = crossings_of(find_crossings([EAST], layers))
+    assert wide.width_m == pytest.approx(4 * CELL_MM / 1000, abs=0.002)
+    assert (narrow.ground_mm, narrow.width_m) == (pytest.approx(15 * CELL_MM, abs=1), None)
+
+
+@pytest.mark.parametrize(
+    ("crosses", "off_m", "width_m", "leg", "count"),
+    [
+        ("rail", 0.0, None, "L1", 0),
+        ("rail", 14.0, None, "L1", 0),
+        ("rail", 16.0, None, "L1", 1),
+        ("rail", 16.0, 4.0, "L1", 0),
+        ("road", 0.0, None, "L1", 1),
+        ("rail", 0.0, None, "L2", 1),
+    ],
+)
+def test_a_declared_crossing_stands_for_the_found_one(
+    crosses: str, off_m: float, width_m: float | None, leg: str, count: int
+) -> None:
+    """Same kind, same leg, near by: the planner's own word is kept and not doubled."""
+    found_there = find_crossings([EAST], [layer_of(line([(5, -5), (5, 5)]), kind="rail")])
+    declared = Crossing(
+        leg=leg,
+        name="Level crossing",
+        crosses=crosses,
+        ground_mm=found_there[0].start_mm + round(off_m * 1000),
+        width_m=width_m,
+        lon=9.0,
+        lat=47.0,
+    )
+    assert len(crossings_of(found_there, [declared])) == count
