@@ -104,7 +104,8 @@ _NOT_YET = """\
 _COMMANDS_HEAD = """\
 # Commands
 
-`routeplan COMMAND ...`, or `python -m routeplan COMMAND ...`. Nothing is sent over the network.
+`routeplan COMMAND ...`, or `python -m routeplan COMMAND ...`. None uses the network, save `route` where
+it is asked to download streets.
 """
 
 _COMMANDS_TAIL = """\
