@@ -67,7 +67,7 @@ def circuit_way(
             places.setdefault(name, WayPlace(anchor=("site", name), fibre_type=fibre_type))
     for name, place in _along(uses, laid, layout, nodes):
         places.setdefault(name, place)
-    spliced = {joint.node for joint in layout.joints}
+    spliced = {joint.node for joint in layout.joints if joint.ends}
     return CircuitWay(
         start=site_names[nodes[0]],
         end=site_names[nodes[-1]],
@@ -82,15 +82,22 @@ def _along(
     """Yield joints by id and by place, then every other place of the cables."""
     ways = {cable.way.cable.id: cable.way for cable in laid}
     types = {cable.id: cable.make.fibre_type for cable in layout.cables}
-    own = [use.cable for use in uses]
+    own = {use.cable: use for use in reversed(uses)}
+    first = uses[0].cable
     for joint in layout.joints:
-        if joint.mark.cable in own if joint.node is None else joint.node in nodes[1:-1]:
-            cable = joint.mark.cable if joint.mark.cable in own else own[0]
+        on = own.get(joint.mark.cable)
+        if joint.node is None:
+            is_met = on is not None and on.covers(joint.mark.chain_mm)
+        else:
+            is_met = joint.node in nodes[1:-1] and bool(joint.ends)
+        if is_met:
+            cable = joint.mark.cable if on else first
             place = WayPlace(anchor=("joint", joint.id), fibre_type=types[cable])
             yield from ((joint.id, place), (joint.reach_name, place))
-    for cable in own:
+    for use in uses:
+        cable = use.cable
         sections = [section for section in layout.sections if section.cable == cable]
-        for spot in ways[cable].spots:
+        for spot in (spot for spot in ways[cable].spots if use.covers(spot.chain_mm)):
             for section in sections:
                 if section.start_chain_mm <= spot.chain_mm <= section.end_chain_mm:
                     anchor: Anchor = ("section", section.id)
@@ -99,4 +106,4 @@ def _along(
 
 def _ends_of(use: FibreUse, cables: Mapping[str, Cable]) -> tuple[str, str]:
     cable = cables[use.cable]
-    return (cable.start, cable.end) if use.forward else (cable.end, cable.start)
+    return use.nodes(cable.start, cable.end)

@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 
-from routeplan.cable.fibres import assign_fibres
+from routeplan.cable.fibres import FibrePlan, assign_fibres
+from routeplan.cable.hops import cable_hops, entered_glass_mm
 from routeplan.cable.layout import LaidCable
 from routeplan.cable.model import FibreUse, Layout
 from routeplan.cable.rulers import existing_glass_mm
@@ -33,7 +34,7 @@ from routeplan.run.model import Run
 from routeplan.run.optics import ANY_INTERFACE, CircuitOrder
 from routeplan.units import m_from_mm
 
-__all__ = ["CircuitPlan", "joint_figures", "light_circuits", "measured_glass"]
+__all__ = ["CircuitPlan", "circuit_fibres", "joint_figures", "light_circuits", "measured_glass"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -75,6 +76,9 @@ def light_circuits(
     laid: Sequence[LaidCable],
     layout: Layout,
     orders: Sequence[CircuitOrder],
+    *,
+    uses: Sequence[FibreUse],
+    problems: Iterable[Problem] = (),
 ) -> tuple[CircuitPlan, ...]:
     """
     Return every circuit with its fibres, paths and budgets.
@@ -91,6 +95,10 @@ def light_circuits(
         Sections and joints.
     orders
         Circuits, both ends of each named.
+    uses
+        Their fibres.
+    problems
+        What kept circuits from fibres, to be told with all the rest.
 
     Raises
     ------
@@ -98,20 +106,33 @@ def light_circuits(
         With everything in the circuits, panels, joints and sections that does not fit the plan.
     """
     site_nodes = {node.name: node.id for node in ground.nodes if node.is_site}
-    glass_mm = {rulers.cable: int(rulers.glass_mm[-1]) for rulers in layout.rulers}
-    problems = optics_problems(run, orders)
-    problems += fitting_problems(run, ground, laid, layout)
-    uses: tuple[FibreUse, ...] = ()
-    try:
-        uses = assign_fibres(orders, layout.cables, site_nodes=site_nodes, glass_mm=glass_mm)
-    except InputError as error:
-        problems += error.problems
+    problems = [
+        *optics_problems(run, orders),
+        *fitting_problems(run, ground, laid, layout),
+        *problems,
+    ]
     ways = _ways(orders, uses, laid, layout, {name: key for key, name in site_nodes.items()})
     problems += _way_problems(orders, ways)
     if problems:
         raise InputError(problems)
     plant = _plant(run, laid, layout, site_nodes)
     return tuple(_circuit(plant, order, uses, ways[order.name]) for order in orders)
+
+
+def circuit_fibres(
+    ground: Ground, laid: Sequence[LaidCable], orders: Sequence[CircuitOrder]
+) -> FibrePlan:
+    """
+    Return the fibres of circuits over the cables as laid.
+
+    Raises
+    ------
+    InputError
+        See `routeplan.cable.fibres.assign_fibres`.
+    """
+    site_nodes = {node.name: node.id for node in ground.nodes if node.is_site}
+    cables = [cable.way.cable for cable in laid]
+    return assign_fibres(orders, cables, site_nodes=site_nodes, hops=cable_hops(laid))
 
 
 def joint_figures(run: Run, layout: Layout) -> dict[str, PartLoss]:
@@ -161,7 +182,7 @@ def _plant(
     return _Plant(
         run=run,
         tracks={track.cable: track for track in _tracks(laid, layout)},
-        joint_at={joint.node: joint.id for joint in layout.joints if joint.node},
+        joint_at={joint.node: joint.id for joint in layout.joints if joint.node and joint.ends},
         site_names={node_id: name for name, node_id in site_nodes.items()},
         panels={panel.site: panel_mating(loss, panel) for panel in run.panels},
         splices=joint_figures(run, layout),
@@ -293,4 +314,5 @@ def _tracks(laid: Sequence[LaidCable], layout: Layout) -> Iterator[CableTrack]:
             [section for section in layout.sections if section.cable == own.id],
             [j for j in layout.joints if j.mark.cable == own.id and j.node is None],
             existing,
+            entered_glass_mm(cable),
         )

@@ -2,16 +2,17 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Literal
 
 from routeplan.cable.assembly import fewer_joints, put_together
+from routeplan.cable.fibres import FibrePlan
 from routeplan.cable.layout import LaidCable, lay_cables
 from routeplan.cable.model import Layout, Splice
 from routeplan.cable.schedule import joint_splice_count, splice_rows
 from routeplan.check import Check
-from routeplan.circuits import CircuitPlan, joint_figures, light_circuits
+from routeplan.circuits import CircuitPlan, circuit_fibres, joint_figures, light_circuits
 from routeplan.errors import InputError, Problem
 from routeplan.ground.legs import lay_ground
 from routeplan.ground.model import Ground
@@ -74,10 +75,12 @@ def plan(run: Run, *, memo: Memo | None = None) -> Plan:
         lambda: lay_ground(run),
     )  # fmt: skip
     orders, order_warnings = _orders(run, ground)
-    laid = lay_cables(run, ground, memo=memo)
-    layout = put_together(run, ground, laid)
-    circuits = light_circuits(run, ground, laid, layout, orders)
-    uses = [use for circuit in circuits for use in circuit.uses]
+    called = frozenset(str(end) for order in orders for end in (order.from_, order.to))
+    laid = lay_cables(run, ground, memo=memo, called=called)
+    fibres, problems = _fibres(ground, laid, orders)
+    uses = fibres.uses
+    layout = put_together(run, ground, laid, uses)
+    circuits = light_circuits(run, ground, laid, layout, orders, uses=uses, problems=problems)
     counts = joint_splice_count(layout.joints, layout.sections, layout.cables, uses)
     return Plan(
         run=run,
@@ -92,6 +95,7 @@ def plan(run: Run, *, memo: Memo | None = None) -> Plan:
             *ground.warnings,
             *order_warnings,
             *(warning for cable in laid for warning in cable.warnings),
+            *_fibre_warnings(fibres),
             *light_warnings(run, layout, circuits),
         ),
     )
@@ -123,6 +127,26 @@ def _orders(run: Run, ground: Ground) -> tuple[tuple[CircuitOrder, ...], list[tu
     if problems:
         raise InputError(problems)
     return tuple(orders), []
+
+
+def _fibres(
+    ground: Ground, laid: Sequence[LaidCable], orders: Sequence[CircuitOrder]
+) -> tuple[FibrePlan, tuple[Problem, ...]]:
+    """Return the fibres of circuits; none, and why, where they cannot have them."""
+    try:
+        return circuit_fibres(ground, laid, orders), ()
+    except InputError as error:
+        return FibrePlan(uses=(), change_count=0, is_proven=True), tuple(error.problems)
+
+
+def _fibre_warnings(fibres: FibrePlan) -> Iterator[tuple[str, str]]:
+    if not fibres.is_proven:
+        count = fibres.change_count
+        yield (
+            "circuits",
+            f"fibres change number from cable to cable {count} times; whether fewer would do was "
+            "not searched to the end",
+        )
 
 
 def _default_order(run: Run, start: str, end: str) -> CircuitOrder:

@@ -2,20 +2,33 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from typing import Literal, TypeAlias
 
 import numpy as np
 
 from routeplan.cable.layout import LaidCable
-from routeplan.cable.model import CableEnd, Cut, Joint, Layout, Mark, Proof, Reel, Section
+from routeplan.cable.model import (
+    Cable,
+    CableEnd,
+    Cut,
+    FibreUse,
+    Joint,
+    Layout,
+    Mark,
+    Proof,
+    Reel,
+    Section,
+)
 from routeplan.cable.reel_models import BoughtSection
 from routeplan.cable.reels import one_joint_fewer
-from routeplan.cable.spans import LaidSpan, joint_cents
+from routeplan.cable.schedule import joint_splice_count
+from routeplan.cable.spans import LaidSpan, closure_cents, joint_cents
 from routeplan.cable.way import Spot, leg_at, positions_on
 from routeplan.ground.model import Ground, Node
 from routeplan.run.model import Run
+from routeplan.units import cents_from_amount
 
 __all__ = ["fewer_joints", "put_together"]
 
@@ -31,6 +44,8 @@ class _Tally:
     joints: dict[str, Joint] = field(default_factory=dict)
     node_joints: dict[str, str] = field(default_factory=dict)
     ends: dict[str, list[CableEnd]] = field(default_factory=dict)
+    entered: dict[str, list[Mark]] = field(default_factory=dict)
+    bare_cents: dict[str, int] = field(default_factory=dict)  # joints at nodes, without splices
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -41,7 +56,9 @@ class _Stop:
     joint: str | None = None
 
 
-def put_together(run: Run, ground: Ground, laid: Sequence[LaidCable]) -> Layout:
+def put_together(
+    run: Run, ground: Ground, laid: Sequence[LaidCable], uses: Sequence[FibreUse] = ()
+) -> Layout:
     """
     Put cables together: sections, joints and reels numbered in run order, and the whole cost.
 
@@ -53,18 +70,26 @@ def put_together(run: Run, ground: Ground, laid: Sequence[LaidCable]) -> Layout:
         Where it goes.
     laid
         Its cables, laid out.
+    uses
+        Fibres of its circuits: a cable that passes a site is opened there for those that get in
+        or out.
     """
     tally = _Tally()
+    opened = {(use.cable, at) for use in uses for at in use.span_mm or ()}
     for cable in laid:
         stops = _stops_along(cable, ground, tally, run=run)
+        _enter(cable, tally, opened, run=run)
         for span in cable.spans:
             for bought in span.best.sections:
                 _add_section(cable, span, bought, stops=stops, tally=tally)
-    joints = tuple(_with_ends(joint, tally.ends) for joint in tally.joints.values())
+    cables = tuple(cable.way.cable for cable in laid)
+    joints = _counted(
+        [_with_ends(joint, tally) for joint in tally.joints.values()], cables, tally, uses, run=run
+    )
     cost = sum(reel.cost_cents for reel in tally.reels) + sum(j.cost_cents for j in joints)
     pairs = zip(tally.reels, tally.sections, strict=True)
     return Layout(
-        cables=tuple(cable.way.cable for cable in laid),
+        cables=cables,
         rulers=tuple(cable.rulers for cable in laid),
         sections=tuple(tally.sections),
         joints=joints,
@@ -97,20 +122,22 @@ def _stops_along(cable: LaidCable, ground: Ground, tally: _Tally, *, run: Run) -
 def _stop_at_node(cable: LaidCable, chain_mm: int, node: Node, tally: _Tally, *, run: Run) -> _Stop:
     if node.is_site:
         return _Stop(name=node.name)
-    if node.id not in tally.node_joints:
-        joint_id = f"J{len(tally.joints) + 1}"
-        tally.node_joints[node.id] = joint_id
-        tally.joints[joint_id] = _joint_at(cable, joint_id, chain_mm, node, run=run)
-    joint_id = tally.node_joints[node.id]
+    joint_id = _node_joint(cable, chain_mm, node, tally, run=run)
     return _Stop(name=joint_id, joint=joint_id)
 
 
-def _joint_at(cable: LaidCable, joint_id: str, chain_mm: int, node: Node, *, run: Run) -> Joint:
-    """Return the joint at a branch node, marked on the first cable that ends there."""
+def _node_joint(cable: LaidCable, chain_mm: int, node: Node, tally: _Tally, *, run: Run) -> str:
+    """Return the joint at a node, made when the first cable comes there and marked on it."""
+    if node.id in tally.node_joints:
+        return tally.node_joints[node.id]
+    joint_id = f"J{len(tally.joints) + 1}"
     leg, ground_mm = leg_at(cable.way, chain_mm)
     place = node.place
     fitness, factor = (place.joint, place.joint_cost_factor) if place else ("yes", 1.0)
-    return Joint(
+    costs = run.practice.costs
+    tally.node_joints[node.id] = joint_id
+    tally.bare_cents[joint_id] = closure_cents(fitness, factor, costs)
+    tally.joints[joint_id] = Joint(
         id=joint_id,
         node=node.id,
         mark=Mark(cable=cable.way.cable.id, chain_mm=chain_mm),
@@ -120,10 +147,11 @@ def _joint_at(cable: LaidCable, joint_id: str, chain_mm: int, node: Node, *, run
         lat=node.lat,
         reach_name=place.name if place else node.name,
         kind="splice",
-        assumed=place is None,
+        assumed=place is None and not node.is_site,
         ends=(),
-        cost_cents=joint_cents(fitness, factor, cable.way.cable, run.practice.costs),
+        cost_cents=joint_cents(fitness, factor, cable.way.cable, costs),
     )
+    return joint_id
 
 
 def _joint_on(
@@ -207,10 +235,56 @@ def _reading(cable: LaidCable, chain_mm: int) -> tuple[int, int]:
     return int(rulers.sheath_mm[at]), int(rulers.glass_mm[at])
 
 
-def _with_ends(joint: Joint, ends: Mapping[str, Sequence[CableEnd]]) -> Joint:
+def _enter(
+    cable: LaidCable, tally: _Tally, opened: Collection[tuple[str, int]], *, run: Run
+) -> None:
+    """Note where a cable is opened at mid-span: at branches always, at sites if light gets out."""
+    way = cable.way
+    for passed in way.passed:
+        node, at = passed.node, passed.chain_mm
+        is_used = (way.cable.id, at) in opened
+        if passed.is_entered and (is_used or not node.is_site):
+            joint_id = _node_joint(cable, at, node, tally, run=run)
+            mark = Mark(cable=way.cable.id, chain_mm=at)
+            tally.entered.setdefault(joint_id, []).append(mark)
+
+
+def _with_ends(joint: Joint, tally: _Tally) -> Joint:
     # The arriving end first: what comes in, then what goes on.
-    ordered = sorted(ends.get(joint.id, ()), key=lambda end: end.side == "start")
-    return replace(joint, ends=tuple(ordered))
+    ordered = sorted(tally.ends.get(joint.id, ()), key=lambda end: end.side == "start")
+    opened = [
+        (section.id, mark.chain_mm)
+        for mark in tally.entered.get(joint.id, ())
+        for section in tally.sections
+        if section.cable == mark.cable
+        and section.start_chain_mm < mark.chain_mm < section.end_chain_mm
+    ]
+    return replace(
+        joint,
+        ends=tuple(ordered),
+        opened=tuple(name for name, _ in opened),
+        opened_mm=tuple(at for _, at in opened),
+    )
+
+
+def _counted(
+    joints: Sequence[Joint],
+    cables: Sequence[Cable],
+    tally: _Tally,
+    uses: Sequence[FibreUse],
+    *,
+    run: Run,
+) -> tuple[Joint, ...]:
+    """Return the joints with the cost of those that open a cable: only what is cut is spliced."""
+    entered = [joint for joint in joints if joint.opened]
+    counts = joint_splice_count(entered, tally.sections, cables, uses) if entered else {}
+    each = cents_from_amount(run.practice.costs.splice_each)
+    return tuple(
+        replace(joint, cost_cents=tally.bare_cents[joint.id] + counts[joint.id] * each)
+        if joint.opened
+        else joint
+        for joint in joints
+    )
 
 
 def _proof(laid: Sequence[LaidCable], cost_cents: int) -> Proof:

@@ -87,7 +87,8 @@ def cable_courses(
             entered=frozenset(
                 node.id
                 for node in course.nodes[1:-1]
-                if node.id in ends or (node.is_site and node.name in called)
+                if course.nodes.count(node) == 1
+                and (node.id in ends or (node.is_site and node.name in called))
             ),
         )
         for course in courses

@@ -2,32 +2,33 @@
 
 from __future__ import annotations
 
-import heapq
 from collections import Counter, defaultdict
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from difflib import get_close_matches
 from itertools import pairwise
 
+from routeplan.cable.fibre_choice import Strand, chosen_fibres
+from routeplan.cable.fibre_wishes import hops_via, via_problems, wanted_problems
+from routeplan.cable.hops import Hop, Way, least_glass_way
 from routeplan.cable.model import Cable, FibreUse
 from routeplan.errors import InputError, Problem
 from routeplan.run.practice import CircuitOrder
 
-__all__ = ["Hop", "Way", "assign_fibres", "circuit_ways", "least_glass_way", "meetings"]
+__all__ = ["FibrePlan", "assign_fibres", "circuit_ways", "meetings"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class Hop:
-    """A cable between two nodes where light can get in and out of it."""
+class FibrePlan:
+    """
+    Fibres of all circuits, and how often a strand changes its number from cable to cable.
 
-    cable: str
-    start: str
-    end: str
-    glass_mm: int
+    `is_proven` says that it could not be less often.
+    """
 
-
-Way = tuple[tuple[Hop, bool], ...]
-"""Hops in order along a circuit, each with whether it runs in the cable's own direction."""
+    uses: tuple[FibreUse, ...]
+    change_count: int
+    is_proven: bool
 
 
 def assign_fibres(
@@ -35,15 +36,15 @@ def assign_fibres(
     cables: Sequence[Cable],
     *,
     site_nodes: Mapping[str, str],
-    glass_mm: Mapping[str, int],
-) -> tuple[FibreUse, ...]:
+    hops: Sequence[Hop],
+) -> FibrePlan:
     """
     Give every circuit its cables and fibres.
 
-    Each circuit takes the way of least glass. Circuits are served in file order, strand by strand:
-    a strand takes the lowest fibre number free on all cables of its way, so that it keeps number
-    and colour; where there is none, the lowest free number on each cable. Strand 1 carries light
-    from `from` to `to`, strand 2 back.
+    Each circuit takes the way of least glass, over the cables it names if it names any. Fibres it
+    names are kept. All others are chosen together, see `chosen_fibres`: the fewest changes of
+    number from cable to cable, then the lowest numbers in file order, strand by strand. Strand 1
+    carries light from `from` to `to`, strand 2 back.
 
     Parameters
     ----------
@@ -53,43 +54,57 @@ def assign_fibres(
         Cables in file order.
     site_nodes
         Node id of each site name.
-    glass_mm
-        Fibre length of each cable, by cable id. [mm]
+    hops
+        The pieces of cable between places where light gets in and out.
 
     Returns
     -------
-    uses
-        By circuit in file order, by strand, then in order along the circuit; `forward` tells
+    plan
+        Uses by circuit in file order, by strand, then in order along the circuit; `forward` tells
         whether the circuit, from its `from` end, runs along the cable in the cable's direction.
 
     Raises
     ------
     InputError
-        With every circuit that names no or an unknown site, one site twice, or sites no cables
-        join, and every cable that has too few fibres.
+        With every circuit that names no or an unknown site, one site twice, sites no cables
+        join, or cables and fibres that it cannot have; and every cable with too few fibres.
     """
-    ways, problems = _found_ways(circuits, cables, site_nodes, glass_mm)
+    ways, problems = _found_ways(circuits, cables, site_nodes, hops)
     problems += _short_cables(circuits, cables, ways)
+    problems += wanted_problems(circuits, cables, ways)
     if problems:
         raise InputError(problems)
-    free = {cable.id: set(range(1, cable.make.fibre_count + 1)) for cable in cables}
-    uses: list[FibreUse] = []
-    for circuit in circuits:
-        way = ways[circuit.name]
-        for strand in range(1, circuit.fibre_count + 1):
-            fibres = _strand_fibres([free[hop.cable] for hop, _ in way])
-            for (hop, forward), fibre in zip(way, fibres, strict=True):
-                free[hop.cable].remove(fibre)
-                uses.append(
-                    FibreUse(
-                        circuit=circuit.name,
-                        strand=strand,
-                        cable=hop.cable,
-                        fibre=fibre,
-                        forward=forward,
-                    )
-                )
-    return tuple(uses)
+    counts = {cable.id: cable.make.fibre_count for cable in cables}
+    strands = [
+        (circuit, strand) for circuit in circuits for strand in range(1, circuit.fibre_count + 1)
+    ]
+    choice = chosen_fibres(
+        [
+            Strand(
+                pieces=tuple((hop.cable, hop.span_mm) for hop, _ in ways[circuit.name]),
+                wanted=circuit.fibres[strand - 1] if circuit.fibres else None,
+            )
+            for circuit, strand in strands
+        ],
+        counts,
+    )
+    if choice is None:
+        raise InputError(_no_fibres(circuits))
+    uses = tuple(
+        FibreUse(
+            circuit=circuit.name,
+            strand=strand,
+            cable=hop.cable,
+            fibre=fibre,
+            forward=forward,
+            span_mm=hop.span_mm,
+            start=hop.start,
+            end=hop.end,
+        )
+        for (circuit, strand), fibres in zip(strands, choice.fibres, strict=True)
+        for (hop, forward), fibre in zip(ways[circuit.name], fibres, strict=True)
+    )
+    return FibrePlan(uses=uses, change_count=choice.change_count, is_proven=choice.is_proven)
 
 
 def circuit_ways(
@@ -97,7 +112,7 @@ def circuit_ways(
     cables: Sequence[Cable],
     *,
     site_nodes: Mapping[str, str],
-    glass_mm: Mapping[str, int],
+    hops: Sequence[Hop],
 ) -> dict[str, Way]:
     """
     Return the way of least glass of every circuit, by circuit name.
@@ -105,43 +120,12 @@ def circuit_ways(
     Raises
     ------
     InputError
-        As `assign_fibres`, fibre counts left aside.
+        As `assign_fibres`, fibres left aside.
     """
-    ways, problems = _found_ways(circuits, cables, site_nodes, glass_mm)
+    ways, problems = _found_ways(circuits, cables, site_nodes, hops)
     if problems:
         raise InputError(problems)
     return ways
-
-
-def least_glass_way(hops: Sequence[Hop], *, start: str, end: str) -> Way | None:
-    """
-    Return the way of least glass between two nodes, or None where there is none.
-
-    Exact (Dijkstra). Ties go to the fewest hops, then to the hops earliest in `hops`, compared as
-    sorted places in it, so that a circuit turned round takes the same way.
-    """
-    near: defaultdict[str, list[tuple[int, str, bool]]] = defaultdict(list)
-    for index, hop in enumerate(hops):
-        near[hop.start].append((index, hop.end, True))
-        near[hop.end].append((index, hop.start, False))
-    # Labels are (glass, hops, sorted places, ...): adding one hop to two of them never turns
-    # their order round, which is what Dijkstra needs to be exact.
-    queue: list[tuple[int, int, tuple[int, ...], str, tuple[tuple[int, bool], ...]]]
-    queue = [(0, 0, (), start, ())]
-    done: set[str] = set()
-    while queue:
-        glass_mm, count, places, node, way = heapq.heappop(queue)
-        if node == end:
-            return tuple((hops[index], forward) for index, forward in way)
-        if node in done:
-            continue
-        done.add(node)
-        for index, far, forward in near[node]:
-            if far not in done:
-                label = glass_mm + hops[index].glass_mm, count + 1
-                step = tuple(sorted((*places, index))), far, (*way, (index, forward))
-                heapq.heappush(queue, (*label, *step))
-    return None
 
 
 def meetings(uses: Iterable[FibreUse]) -> tuple[tuple[FibreUse, FibreUse], ...]:
@@ -157,20 +141,20 @@ def _found_ways(
     circuits: Sequence[CircuitOrder],
     cables: Sequence[Cable],
     site_nodes: Mapping[str, str],
-    glass_mm: Mapping[str, int],
+    hops: Sequence[Hop],
 ) -> tuple[dict[str, Way], list[Problem]]:
     """Return the ways of the circuits that have one, and what is wrong with the others."""
-    hops = [
-        Hop(cable=cable.id, start=cable.start, end=cable.end, glass_mm=glass_mm[cable.id])
-        for cable in cables
-    ]
     problems = list(_repeated_names(circuits))
     ways: dict[str, Way] = {}
+    known: dict[tuple[str, str, tuple[str, ...]], Way | None] = {}
     for circuit in circuits:
-        found = list(_end_problems(circuit, site_nodes))
+        found = [*_end_problems(circuit, site_nodes), *via_problems(circuit, cables)]
         if not found:
-            ends = site_nodes[str(circuit.from_)], site_nodes[str(circuit.to)]
-            way = least_glass_way(hops, start=ends[0], end=ends[1])
+            asked = (site_nodes[str(circuit.from_)], site_nodes[str(circuit.to)], circuit.via)
+            if asked not in known:
+                allowed = hops_via(hops, cables, circuit.via)
+                known[asked] = least_glass_way(allowed, start=asked[0], end=asked[1])
+            way = known[asked]
             if way is None:
                 found.append(_no_way(circuit))
             else:
@@ -179,27 +163,20 @@ def _found_ways(
     return ways, problems
 
 
-def _strand_fibres(free: Sequence[set[int]]) -> list[int]:
-    """Return the fibre a strand takes on each cable of its way."""
-    common = set.intersection(*free)
-    return [min(common)] * len(free) if common else [min(fibres) for fibres in free]
-
-
 def _short_cables(
     circuits: Sequence[CircuitOrder], cables: Sequence[Cable], ways: Mapping[str, Way]
 ) -> list[Problem]:
-    """Return a problem for every cable with fewer fibres than the circuits on it need."""
-    needed: Counter[str] = Counter()
-    takers: defaultdict[str, list[str]] = defaultdict(list)
+    """Return a problem for every cable with fewer fibres than the circuits on it need somewhere."""
+    loads: defaultdict[str, list[tuple[tuple[int, int] | None, CircuitOrder]]] = defaultdict(list)
     for circuit in circuits:
         for hop, _ in ways.get(circuit.name, ()):
-            needed[hop.cable] += circuit.fibre_count
-            takers[hop.cable].append(f'"{circuit.name}"')
+            loads[hop.cable].append((hop.span_mm, circuit))
+    needed = {cable.id: _most_needed(loads[cable.id]) for cable in cables}
     return [
         Problem(
             where=f'cable "{cable.name}"',
             what="has too few fibres for its circuits "
-            + _listed(list(dict.fromkeys(takers[cable.id]))),
+            + _listed(list(dict.fromkeys(f'"{circuit.name}"' for _, circuit in loads[cable.id]))),
             value=f"{needed[cable.id]} fibres needed",
             limit=f"{cable.make.fibre_count} fibres",
             remedy=f"Order at least {needed[cable.id]} fibres there, or fewer circuits.",
@@ -207,6 +184,19 @@ def _short_cables(
         for cable in cables
         if needed[cable.id] > cable.make.fibre_count
     ]
+
+
+def _most_needed(loads: Sequence[tuple[tuple[int, int] | None, CircuitOrder]]) -> int:
+    """Return the fibres that circuits need where they need most of a cable at once."""
+    steps: list[tuple[float, int]] = []
+    for span, circuit in loads:
+        low, high = span or (float("-inf"), float("inf"))
+        steps += ((low, circuit.fibre_count), (high, -circuit.fibre_count))
+    most = here = 0
+    for _, change in sorted(steps):  # what ends at a point is taken off before what begins there
+        here += change
+        most = max(most, here)
+    return most
 
 
 def _repeated_names(circuits: Sequence[CircuitOrder]) -> Iterable[Problem]:
@@ -248,7 +238,24 @@ def _known_sites(site: str, site_nodes: Mapping[str, str]) -> str:
     return f"{guess}Sites are {known}."
 
 
+def _no_fibres(circuits: Sequence[CircuitOrder]) -> Problem:
+    """Return the problem of pieces that fit one by one, but were not fitted together."""
+    return Problem(
+        where="circuits",
+        what="no fibres were found for all of them together "
+        + _listed([f'"{circuit.name}"' for circuit in circuits]),
+        remedy="Fix fewer fibres with `fibres`, or order more of them.",
+    )
+
+
 def _no_way(circuit: CircuitOrder) -> Problem:
+    if circuit.via:
+        return Problem(
+            where=f'circuit "{circuit.name}", via',
+            what=f'these cables do not join "{circuit.from_}" and "{circuit.to}"',
+            value=_listed([f'"{name}"' for name in circuit.via]),
+            remedy="Name every cable on its way.",
+        )
     return Problem(
         where=f'circuit "{circuit.name}"',
         what=f'no cables join "{circuit.from_}" and "{circuit.to}"',

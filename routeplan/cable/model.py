@@ -127,7 +127,12 @@ class CableEnd:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Joint:
-    """Where cable ends meet; `node` is set where that is a node and not a place on a leg."""
+    """
+    Where cable ends meet; `node` is set where that is a node and not a place on a leg.
+
+    `opened` are sections of cables that pass, entered at mid-span, each at its chain value of
+    `opened_mm`. A joint at a site has nothing but those: what is cut there goes to the panel.
+    """
 
     id: str
     node: str | None
@@ -142,6 +147,7 @@ class Joint:
     ends: tuple[CableEnd, ...]
     cost_cents: int
     opened: tuple[str, ...] = ()
+    opened_mm: tuple[int, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -169,13 +175,19 @@ class Layout:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class FibreEnd:
-    """One fibre where a section ends in a joint, with its tube and fibre colours."""
+    """
+    One fibre where it comes into a joint, with its tube and fibre colours.
+
+    `side` is the end of the section it is at there; where the section is entered at mid-span,
+    "end" is the piece from its start, which ends there, and "start" the piece that goes on.
+    """
 
     cable: str
     section: str
     fibre: int
     tube_colour: str
     fibre_colour: str
+    side: Literal["start", "end", ""] = ""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -194,13 +206,30 @@ class Splice:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class FibreUse:
-    """One fibre of one cable that a circuit runs on; `strand` counts the circuit's own fibres."""
+    """
+    One fibre of one cable that a circuit runs on; `strand` counts the circuit's own fibres.
+
+    `span_mm` are the chain values between which it does, and `start` and `end` the nodes there,
+    in the cable's own direction; left out they are the cable's ends.
+    """
 
     circuit: str
     strand: int
     cable: str
     fibre: int
     forward: bool
+    span_mm: tuple[int, int] | None = None
+    start: str = ""
+    end: str = ""
+
+    def nodes(self, start: str, end: str) -> tuple[str, str]:
+        """Return the nodes it comes from and goes to, of a cable from `start` to `end`."""
+        nodes = self.start or start, self.end or end
+        return nodes if self.forward else nodes[::-1]
+
+    def covers(self, chain_mm: int) -> bool:
+        """Return whether a chain value of its cable lies on it, its ends among them."""
+        return self.span_mm is None or self.span_mm[0] <= chain_mm <= self.span_mm[1]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -17,7 +17,7 @@ from routeplan.errors import InfeasibleError, Problem
 from routeplan.run.practice import Costs, Practice
 from routeplan.units import cents_from_amount, exact_from_number, mm_from_m
 
-__all__ = ["LaidSpan", "bound_tail_mm", "joint_cents", "laid_spans", "tail_mm"]
+__all__ = ["LaidSpan", "bound_tail_mm", "closure_cents", "joint_cents", "laid_spans", "tail_mm"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -47,10 +47,15 @@ def bound_tail_mm(way: Way, chain_mm: int, practice: Practice) -> int:
 
 def joint_cents(fitness: str, factor: float, cable: Cable, costs: Costs) -> int:
     """Return what a straight joint costs: closure and visit, and a splice for every fibre."""
-    weight = factor * (costs.avoid_factor if fitness == "avoid" else 1.0)
-    return cents_from_amount(costs.joint_each * weight) + cents_from_amount(
+    return closure_cents(fitness, factor, costs) + cents_from_amount(
         costs.splice_each * cable.make.fibre_count
     )
+
+
+def closure_cents(fitness: str, factor: float, costs: Costs) -> int:
+    """Return what a closure and the visit to it cost, without its splices."""
+    weight = factor * (costs.avoid_factor if fitness == "avoid" else 1.0)
+    return cents_from_amount(costs.joint_each * weight)
 
 
 def laid_spans(way: Way, bare: BareRuler, *, practice: Practice) -> tuple[LaidSpan, ...]:

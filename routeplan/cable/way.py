@@ -197,11 +197,13 @@ def _node_spots(way: Way) -> Iterator[Spot]:
 
 
 def _unentered_on_existing(way: Way) -> Way:
-    """Return the way with nothing entered inside somebody else's span."""
-    theirs = is_within(way, [p.chain_mm for p in way.passed], frozenset({"existing"}))
+    """Return the way with nothing entered inside somebody else's span, or at the joint to it."""
+    spans = [(s.start_mm, s.end_mm) for s in way.stretches if s.placement == "existing"]
     passed = [
-        replace(each, is_entered=each.is_entered and not is_theirs)
-        for each, is_theirs in zip(way.passed, theirs, strict=True)
+        replace(each, is_entered=False)
+        if any(start <= each.chain_mm <= end for start, end in spans)
+        else each
+        for each in way.passed
     ]
     return replace(way, passed=tuple(passed))
 

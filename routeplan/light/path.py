@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 
 from routeplan.cable.model import Cable, FibreUse, Joint, Section
 from routeplan.light.fittings import Fittings
@@ -14,12 +14,19 @@ __all__ = ["CableTrack", "cable_track", "circuit_paths"]
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class CableTrack:
-    """Glass, joints and existing spans along one cable, in its own direction, for any fibre."""
+    """
+    Glass, joints and existing spans along one cable, in its own direction, for any fibre.
+
+    `spans_mm` are the chain values between which each step lies; `readings_mm` the glass before
+    the chain values at which it can be entered, and before the start of each section.
+    """
 
     cable: str
     start: str
     end: str
     steps: tuple[Step, ...]
+    spans_mm: tuple[tuple[int, int], ...] = ()
+    readings_mm: Mapping[int, int] = field(default_factory=dict)
 
 
 def cable_track(
@@ -27,6 +34,7 @@ def cable_track(
     sections: Sequence[Section],
     joints: Sequence[Joint],
     existing: Sequence[tuple[int, ExistingSpan]],
+    entered_mm: Mapping[int, int] | None = None,
 ) -> CableTrack:
     """
     Return what lies along one cable.
@@ -41,8 +49,10 @@ def cable_track(
         Joints on its chain, not those at its ends.
     existing
         Somebody else's spans in its way, each with the chain value where it begins. [mm]
+    entered_mm
+        Glass reading at each chain value where the cable can be entered at mid-span. [mm]
     """
-    along: list[tuple[int, int, Step]] = []
+    along: list[tuple[int, int, int, Step]] = []
     for section in sections:
         glass = Glass(
             section=section.id,
@@ -51,15 +61,24 @@ def cable_track(
             fibre_type=cable.make.fibre_type,
             glass_m=section.glass_mm / 1000,
         )
-        along.append((section.start_chain_mm, 1, glass))
-    along.extend((chain_mm, 1, span) for chain_mm, span in existing)
-    along.extend((joint.mark.chain_mm, 0, SpliceStep(where=joint.id)) for joint in joints)
+        along.append((section.start_chain_mm, 1, section.end_chain_mm, glass))
+    # Nothing is entered inside an existing span, so that its end does not matter.
+    along.extend((chain_mm, 1, chain_mm, span) for chain_mm, span in existing)
+    for joint in joints:
+        at = joint.mark.chain_mm
+        along.append((at, 0, at, SpliceStep(where=joint.id)))
     ordered = sorted(along, key=lambda item: item[:2])
     return CableTrack(
         cable=cable.id,
         start=cable.start,
         end=cable.end,
-        steps=tuple(step for _, _, step in ordered),
+        steps=tuple(step for *_, step in ordered),
+        spans_mm=tuple((start, end) for start, _, end, _ in ordered),
+        readings_mm={
+            **{section.start_chain_mm: section.start_glass_mm for section in sections},
+            **{section.end_chain_mm: section.end_glass_mm for section in sections},
+            **(entered_mm or {}),
+        },
     )
 
 
@@ -89,7 +108,7 @@ def circuit_paths(
     tracks
         What lies along each cable, by cable id.
     joint_at
-        Joint id of every node that has one.
+        Joint id of every node that has one, but for sites.
     site_names
         Name of every site, by node id.
     ends
@@ -143,11 +162,30 @@ def _steps(
             met = tuple(_through(_ends_of(use, tracks)[0], joint_at, site_names, fitted))
             # Whichever way a circuit runs, what stands at a node stands in one order.
             yield from met if uses[number - 1].cable < use.cable else met[::-1]
-        along = [met for step in tracks[use.cable].steps for met in _along(step, use, fitted)]
+        track = _steps_of(use, tracks[use.cable])
+        along = [met for step in track for met in _along(step, use, fitted)]
         yield from along if use.forward else reversed(along)
     yield from [SpliceStep(where=end, is_pigtail=True)] * (pigtails // 2)
     yield from reversed(tuple(fitted.put_at("site", end)))
     yield from [fitted.pair(end)] * (matings // 2)
+
+
+def _steps_of(use: FibreUse, track: CableTrack) -> Sequence[Step]:
+    """Return what lies along the piece of a cable that a fibre is used on."""
+    if use.span_mm is None:
+        return track.steps
+    low, high = use.span_mm
+    found: list[Step] = []
+    for step, (start, end) in zip(track.steps, track.spans_mm, strict=True):
+        if isinstance(step, Glass) and start < high and low < end:
+            if start < low or high < end:
+                glass_mm = track.readings_mm[min(end, high)] - track.readings_mm[max(start, low)]
+                found.append(replace(step, glass_m=glass_mm / 1000))
+            else:
+                found.append(step)
+        elif not isinstance(step, Glass) and low <= start and end <= high:
+            found.append(step)
+    return found
 
 
 def _along(step: Step, use: FibreUse, fitted: Fittings) -> Iterator[Step]:
@@ -165,7 +203,7 @@ def _along(step: Step, use: FibreUse, fitted: Fittings) -> Iterator[Step]:
 
 def _ends_of(use: FibreUse, tracks: Mapping[str, CableTrack]) -> tuple[str, str]:
     track = tracks[use.cable]
-    return (track.start, track.end) if use.forward else (track.end, track.start)
+    return use.nodes(track.start, track.end)
 
 
 def _attenuator(fitted: Fittings, site: str) -> tuple[Step, ...]:

@@ -221,6 +221,20 @@ class CircuitOrder(Section):
         default=None, description="Site; left out: the other end of the longest leg."
     )
     fibre_count: Literal[1, 2] = Field(description="Fibres of the circuit. [-]")
+    via: Annotated[tuple[Name, ...], Strict(False)] = Field(
+        default=(),
+        max_length=100,
+        description="Cables its way takes; left out: those with the least glass.",
+    )
+    fibres: Annotated[
+        tuple[Annotated[int, Field(ge=1, le=6912)], ...],
+        Strict(False),
+        AfterValidator(without_repeats),
+    ] = Field(
+        default=(),
+        max_length=2,
+        description="Fibre numbers it takes all the way, one for each fibre; left out: chosen.",
+    )
     interface: Name | None = Field(
         default=None,
         description='Interface, of the table `interfaces` or one\'s own; "any": all that close it.',

@@ -53,7 +53,7 @@ def _glass_places(
 ) -> Iterator[tuple[int, tuple[tuple[str, int], tuple[str, int]]]]:
     """Yield for every piece of glass its step's number and the leg and station of both its ends."""
     ways = {cable.way.cable.id: cable.way for cable in planned.laid}
-    forward = {use.cable: use.forward for use in circuit.uses}
+    own = {use.cable: use for use in circuit.uses}
     spans = {
         section.id: (section.cable, section.start_chain_mm, section.end_chain_mm)
         for section in planned.layout.sections
@@ -68,6 +68,8 @@ def _glass_places(
         if isinstance(step, Glass | ExistingSpan):
             name = step.section if isinstance(step, Glass) else step.where
             cable, start, end = spans[name]
-            first, last = (start, end) if forward[cable] else (end, start)
+            low, high = own[cable].span_mm or (start, end)
+            start, end = max(start, low), min(end, high)
+            first, last = (start, end) if own[cable].forward else (end, start)
             here, there = leg_at(ways[cable], first), leg_at(ways[cable], last)
             yield number, ((here[0].name, here[1]), (there[0].name, there[1]))

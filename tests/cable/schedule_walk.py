@@ -4,10 +4,12 @@ from __future__ import annotations
 
 from collections import Counter, defaultdict
 from collections.abc import Sequence
-from itertools import groupby
+from dataclasses import replace
+from itertools import groupby, pairwise
 
+from routeplan.cable.colours import fibre_colours
 from routeplan.cable.model import FibreUse, Splice
-from routeplan.cable.schedule import EXISTING
+from routeplan.cable.schedule import EXISTING, PANEL
 from routeplan.run.practice import CircuitOrder
 from tests.cable.small_plants import SmallPlant
 
@@ -108,21 +110,56 @@ def check_walks(
 def check_joints(plant: SmallPlant, rows: Sequence[Splice], *, fibres_per_tray: int) -> None:
     """Every fibre of every end stands in its joint once, trays fill in order, counts agree."""
     by_joint = {key: list(of) for key, of in groupby(rows, key=lambda row: row.joint)}
-    assert list(by_joint) == [joint.id for joint in plant.joints]
+    assert list(by_joint) == [joint.id for joint in plant.joints if joint.kind == "splice"]
     cable_of = {section.id: section.cable for section in plant.sections}
-    count_of = {cable.id: cable.make.fibre_count for cable in plant.cables}
+    makes = {cable.id: cable.make for cable in plant.cables}
+    count_of = {name: make.fibre_count for name, make in makes.items()}
     for joint in plant.joints:
         here = by_joint[joint.id]
-        assert [(row.tray, row.position) for row in here] == [
-            (number // fibres_per_tray + 1, number % fibres_per_tray + 1)
-            for number in range(len(here))
+        check_trays([row for row in here if row.kind != "express"], fibres_per_tray)
+        uncut = [row for row in here if row.kind == "express"]
+        assert [(row.tray, row.position) for row in uncut] == [
+            (0, number) for number in range(1, len(uncut) + 1)
         ]
+        for row in uncut:
+            assert row.b is not None
+            assert replace(row.a, side="start") == row.b
+            assert (row.a.side, row.a.section in joint.opened) == ("end", True)
         kinds = [row.kind for row in here]
-        assert kinds == sorted(kinds, key=["splice", "stored"].index)
+        assert kinds == sorted(kinds, key=["splice", "stored", "express"].index)
         assert all((row.b is None) == (row.kind == "stored") for row in here)
-        ends = [e for row in here for e in (row.a, row.b) if e and e.section != EXISTING]
-        assert Counter((e.section, e.fibre) for e in ends) == Counter(
-            (end.section, fibre)
-            for end in joint.ends
-            for fibre in range(1, count_of[cable_of[end.section]] + 1)
+        outside = (EXISTING, PANEL)
+        ends = [e for row in here for e in (row.a, row.b) if e and e.section not in outside]
+        pieces = [(end.section, end.side) for end in joint.ends]
+        pieces += [(name, side) for name in joint.opened for side in ("start", "end")]
+        assert Counter((e.section, e.side, e.fibre) for e in ends) == Counter(
+            (section, side, fibre)
+            for section, side in pieces
+            for fibre in range(1, count_of[cable_of[section]] + 1)
         )
+        for end in ends:
+            make = makes[end.cable]
+            assert (end.tube_colour, end.fibre_colour) == fibre_colours(
+                end.fibre, code=make.colour_code, fibres_per_tube=make.fibres_per_tube
+            )
+
+
+def check_trays(rows: Sequence[Splice], fibres_per_tray: int) -> None:
+    """Trays hold what they can, from position 1, and part no tube that fits on one."""
+    trays = [[row.position for row in of] for _, of in groupby(rows, key=lambda row: row.tray)]
+    assert [row.tray for row in rows] == sorted(row.tray for row in rows)
+    assert sorted({row.tray for row in rows}) == list(range(1, len(trays) + 1))
+    for positions in trays:
+        assert positions == list(range(1, len(positions) + 1))
+        assert len(positions) <= fibres_per_tray
+    tubes = [
+        list(of)
+        for _, of in groupby(
+            rows, key=lambda row: (row.a.section, row.a.side, row.a.tube_colour, row.kind)
+        )
+    ]
+    for before, tube in pairwise([[], *tubes]):
+        is_parted = len({row.tray for row in tube}) > 1
+        assert not is_parted or len(tube) > fibres_per_tray
+        if before and tube[0].tray > before[-1].tray:
+            assert before[-1].position + len(tube) > fibres_per_tray

@@ -56,6 +56,7 @@ def make_joint(
     node: str | None = None,
     kind: str = "splice",
     opened: tuple[str, ...] = (),
+    opened_mm: tuple[int, ...] = (),
 ) -> Joint:
     """Return a joint of these (section, side) ends."""
     return Joint(
@@ -72,6 +73,7 @@ def make_joint(
         ends=tuple(CableEnd(section=s, side=side) for s, side in ends),  # type: ignore[arg-type]
         cost_cents=0,
         opened=opened,
+        opened_mm=opened_mm,
     )
 
 

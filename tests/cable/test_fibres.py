@@ -3,19 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from itertools import groupby, product
+from itertools import groupby, pairwise, product
 
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from routeplan.cable.fibres import (
-    Hop,
-    assign_fibres,
-    circuit_ways,
-    least_glass_way,
-    meetings,
-)
+from routeplan.cable.fibres import assign_fibres, circuit_ways, meetings
+from routeplan.cable.hops import Hop, least_glass_way, whole_hops
 from routeplan.cable.model import Cable, FibreUse
 from routeplan.errors import InputError
 from routeplan.run.practice import CircuitOrder
@@ -32,7 +27,8 @@ def assign(
 ) -> tuple[FibreUse, ...]:
     """Assign with the sites A to D, every cable a metre of glass unless told."""
     glass_mm = glass_mm or {cable.id: 1000 for cable in cables}
-    return assign_fibres(circuits, cables, site_nodes=SITES, glass_mm=glass_mm)
+    hops = whole_hops(cables, glass_mm)
+    return assign_fibres(circuits, cables, site_nodes=SITES, hops=hops).uses
 
 
 def strands(uses: Sequence[FibreUse]) -> dict[tuple[str, int], list[tuple[str, int, bool]]]:
@@ -100,30 +96,47 @@ def orders(draw: st.DrawFn) -> list[CircuitOrder]:
 def test_equals_trying_everything(
     plant: tuple[list[Cable], dict[str, int]], circuits: list[CircuitOrder]
 ) -> None:
-    """Ways and fibres are those that trying every way and every set of free fibres finds best."""
+    """Ways and fibres are the best of all ways and of all sets of fibres together."""
     cables, glass_mm = plant
     hops = [Hop(cable=c.id, start=c.start, end=c.end, glass_mm=glass_mm[c.id]) for c in cables]
     ways = {c.name: best_way(hops, SITES[str(c.from_)], SITES[str(c.to)]) for c in circuits}
     free = {cable.id: list(range(1, cable.make.fibre_count + 1)) for cable in cables}
-    expected: dict[tuple[str, int], list[tuple[str, int, bool]]] | None = {}
-    for circuit in circuits:
-        way = ways[circuit.name]
-        for strand in range(1, circuit.fibre_count + 1):
-            choices = list(product(*(free[cable] for cable, _ in way))) if way else []
-            if not way or not choices or expected is None:
-                expected = None
-                break
-            best = min(choices, key=lambda fibres: (len(set(fibres)) > 1, fibres))
-            for (cable, _), fibre in zip(way, best, strict=True):
-                free[cable].remove(fibre)
-            expected[circuit.name, strand] = [
-                (cable, fibre, forward) for (cable, forward), fibre in zip(way, best, strict=True)
-            ]
-    if expected is None:
+    asked = [(c.name, n) for c in circuits for n in range(1, c.fibre_count + 1)]
+    if not all(ways.values()):
+        best = None
+    else:
+        choices = joint_choices([ways[name] or () for name, _ in asked], free)
+        best = min(choices, key=lambda all_: (sum(map(changes, all_)), all_), default=None)
+    if best is None:
         with pytest.raises(InputError, match=r"no cables join|has too few fibres"):
             assign(circuits, cables, glass_mm)
-    else:
-        assert strands(assign(circuits, cables, glass_mm)) == expected
+        return
+    assert strands(assign(circuits, cables, glass_mm)) == {
+        (name, strand): [
+            (cable, fibre, forward)
+            for (cable, forward), fibre in zip(ways[name] or (), fibres, strict=True)
+        ]
+        for (name, strand), fibres in zip(asked, best, strict=True)
+    }
+
+
+def changes(fibres: Sequence[int]) -> int:
+    """Return how often the number changes."""
+    return sum(one != other for one, other in pairwise(fibres))
+
+
+def joint_choices(
+    ways: Sequence[Sequence[tuple[str, bool]]], free: Mapping[str, Sequence[int]]
+) -> Iterator[tuple[tuple[int, ...], ...]]:
+    """Yield every choice of fibres for all strands together, none used twice."""
+    if not ways:
+        yield ()
+        return
+    for fibres in product(*(free[cable] for cable, _ in ways[0])):
+        left = {cable: list(numbers) for cable, numbers in free.items()}
+        for (cable, _), fibre in zip(ways[0], fibres, strict=True):
+            left[cable].remove(fibre)
+        yield from ((fibres, *others) for others in joint_choices(ways[1:], left))
 
 
 @given(plant=plants(), ends=st.permutations(NODES))
@@ -160,12 +173,27 @@ def test_number_is_kept_along_the_way() -> None:
     }
 
 
-def test_number_changes_where_it_must() -> None:
-    """With no number free on all cables, each cable gives its lowest free fibre."""
+def test_an_earlier_circuit_makes_room() -> None:
+    """Where a later circuit would have to change number, an earlier one takes another fibre."""
     cables = [make_cable("K", "a", "b", fibre_count=3), make_cable("L", "b", "c", fibre_count=2)]
     circuits = [make_circuit("Short", "A", "B"), make_circuit("Through", "A", "C", fibre_count=1)]
+    assert strands(assign(circuits, cables)) == {
+        ("Short", 1): [("K", 1, True)],
+        ("Short", 2): [("K", 3, True)],
+        ("Through", 1): [("K", 2, True), ("L", 2, True)],
+    }
+
+
+def test_number_changes_where_it_must() -> None:
+    """With no number free on all cables, the number changes, to the lowest free one."""
+    cables = [make_cable("K", "a", "b", fibre_count=2), make_cable("L", "b", "c", fibre_count=1)]
+    wish = {"fibres": (1,)}
+    circuits = [
+        make_circuit("Short", "A", "B", fibre_count=1).model_copy(update=wish),
+        make_circuit("Through", "A", "C", fibre_count=1),
+    ]
     found = strands(assign(circuits, cables))
-    assert found["Through", 1] == [("K", 3, True), ("L", 1, True)]
+    assert found["Through", 1] == [("K", 2, True), ("L", 1, True)]
 
 
 def test_least_glass_beats_fewest_cables() -> None:
@@ -179,7 +207,8 @@ def test_least_glass_beats_fewest_cables() -> None:
 
     def way(direct_mm: int) -> list[str]:
         glass_mm = {"K": 1000, "L": 1000, "M": direct_mm}
-        found = circuit_ways(circuits, cables, site_nodes=SITES, glass_mm=glass_mm)
+        hops = whole_hops(cables, glass_mm)
+        found = circuit_ways(circuits, cables, site_nodes=SITES, hops=hops)
         return [hop.cable for hop, _ in found["One"]]
 
     assert way(2001) == ["K", "L"]
@@ -267,4 +296,4 @@ def test_long_lists_are_cut_short() -> None:
     """A message names eight sites and counts the rest."""
     sites = {f"Site {number}": f"n{number}" for number in range(20)}
     with pytest.raises(InputError, match=r'"Site 7" and 12 more'):
-        assign_fibres([make_circuit("One", "Site 1", "Nowhere")], [], site_nodes=sites, glass_mm={})
+        assign_fibres([make_circuit("One", "Site 1", "Nowhere")], [], site_nodes=sites, hops=[])

@@ -11,8 +11,9 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from routeplan.cable.fibres import assign_fibres
+from routeplan.cable.hops import whole_hops
 from routeplan.cable.model import Cable, FibreUse, Joint, Splice
-from routeplan.cable.schedule import EXISTING, OWNERS_COLOUR, joint_splice_count, splice_rows
+from routeplan.cable.schedule import EXISTING, OWNERS_COLOUR, PANEL, joint_splice_count, splice_rows
 from routeplan.errors import InputError, RangeError
 from routeplan.run.practice import CircuitOrder
 from tests.cable.schedule_walk import check_joints, check_walks
@@ -46,8 +47,8 @@ def assign(plant: SmallPlant, circuits: Sequence[CircuitOrder]) -> tuple[FibreUs
         circuits,
         plant.cables,
         site_nodes={site: site for site in plant.sites},
-        glass_mm={cable.id: 1000 for cable in plant.cables},
-    )
+        hops=whole_hops(plant.cables, {cable.id: 1000 for cable in plant.cables}),
+    ).uses
 
 
 def pairs(rows: Sequence[Splice]) -> list[tuple[str, int, str | None, int | None, str]]:
@@ -123,7 +124,7 @@ def test_straight_joint() -> None:
     last = rows[12]
     assert (last.tray, last.position) == (2, 1)
     assert (last.a.tube_colour, last.a.fibre_colour) == ("orange", "blue")
-    assert last.b == replace(last.a, section="K.2")
+    assert last.b == replace(last.a, section="K.2", side="start")
 
 
 def test_trays_of_twenty_four() -> None:
@@ -320,13 +321,73 @@ def test_mated_joint_has_no_splices() -> None:
     assert joint_splice_count(plant.joints, plant.sections, plant.cables, ()) == {"J1": 0}
 
 
-def test_mid_span_is_rejected() -> None:
-    """A joint that enters a cable mid-span is an error, in the rows and in the counts."""
-    plant = one_joint(make_joint("J1", [("K.1", "end"), ("K.2", "start")], opened=("K.1",)))
-    with pytest.raises(InputError, match="J1: enters a cable mid-span"):
-        schedule(plant)
-    with pytest.raises(InputError, match="J1: enters a cable mid-span"):
-        joint_splice_count(plant.joints, plant.sections, plant.cables, ())
+def test_a_cable_entered_at_a_branch() -> None:
+    """Only fibres of the circuit that leaves are cut; their far side is stored, all others pass."""
+    plant = entered_plant(node="n", ends=[("L.1", "start")])
+    uses = [
+        FibreUse(
+            circuit="C", strand=1, cable="K", fibre=2, forward=True, span_mm=(0, 500_000), end="n"
+        ),
+        FibreUse(circuit="C", strand=1, cable="L", fibre=2, forward=True),
+        FibreUse(circuit="Past", strand=1, cable="K", fibre=1, forward=True),
+    ]
+    rows = schedule(plant, uses)
+    check_joints(plant, rows, fibres_per_tray=12)
+    spliced = [row for row in rows if row.kind == "splice"]
+    assert [(row.a.section, row.a.fibre, row.circuit) for row in spliced] == [("L.1", 2, "C")]
+    assert spliced[0].b == replace(spliced[0].a, cable="K", section="K.1", side="end")
+    stored = [(row.a.section, row.a.side, row.a.fibre) for row in rows if row.kind == "stored"]
+    assert stored == [("L.1", "start", n) for n in (1, 3, 4)] + [("K.1", "start", 2)]
+    uncut = [(row.a.fibre, row.circuit) for row in rows if row.kind == "express"]
+    assert uncut == [(1, "Past"), (3, ""), (4, "")]
+    counts = joint_splice_count(plant.joints, plant.sections, plant.cables, uses)
+    assert counts == {"J1": 1}
+
+
+def test_a_cable_entered_at_a_site() -> None:
+    """A fibre cut at a site serves one circuit from either side, each spliced to a pigtail."""
+    plant = entered_plant(node="s", ends=[])
+    uses = [
+        FibreUse(
+            circuit="West",
+            strand=1,
+            cable="K",
+            fibre=3,
+            forward=True,
+            span_mm=(0, 500_000),
+            end="s",
+        ),
+        FibreUse(
+            circuit="East",
+            strand=1,
+            cable="K",
+            fibre=3,
+            forward=False,
+            span_mm=(500_000, 1_000_000),
+            start="s",
+        ),
+    ]
+    rows = schedule(plant, uses)
+    check_joints(plant, rows, fibres_per_tray=12)
+    cut = [(row.a.side, row.a.fibre, row.circuit) for row in rows if row.kind == "splice"]
+    assert cut == [("end", 3, "West"), ("start", 3, "East")]
+    assert {row.b and row.b.section for row in rows if row.kind == "splice"} == {PANEL}
+    assert [row.a.fibre for row in rows if row.kind == "express"] == [1, 2, 4]
+    counts = joint_splice_count(plant.joints, plant.sections, plant.cables, uses)
+    assert counts == {"J1": 2}
+
+
+def entered_plant(*, node: str, ends: list[tuple[str, str]]) -> SmallPlant:
+    """Return cable K of four fibres entered in its middle, and a cable L that ends there."""
+    cables = [
+        make_cable("K", "a", "b", fibre_count=4),
+        make_cable("L", node, "c", fibre_count=4),
+    ]
+    joint = make_joint("J1", ends, node=node, opened=("K.1",), opened_mm=(500_000,))
+    sections = tuple(cut_cable(cable, 1)[0][0] for cable in cables)
+    return SmallPlant(
+        cables=tuple(cables), sections=sections, joints=(joint,), sites=frozenset("abc")
+    )
 
 
 def test_tray_must_hold_something() -> None:
