@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import argparse
+import json
+import re
 import shutil
 from collections.abc import Iterator, Sequence
 from importlib.util import find_spec
@@ -11,7 +13,7 @@ from pathlib import Path
 from routeplan import plan, read_run
 from routeplan.sheets.write import make_sheets
 
-__all__ = ["demo_runs", "main", "map_text", "take_picture"]
+__all__ = ["data_text", "demo_runs", "main", "map_text", "take_picture"]
 
 _HERE = Path(__file__).parent
 _BROWSERS = ("chromium", "chromium-browser", "google-chrome", "chrome", "msedge")
@@ -27,6 +29,19 @@ def demo_runs() -> Iterator[Path]:
 def map_text(run: Path) -> str:
     """Return the map of a run as a page."""
     return make_sheets(plan(read_run(run)))["map.html"]
+
+
+def data_text(page: str) -> str:
+    """Return the data a map page draws from, one entry of its own a line."""
+    found = re.search(
+        r'<script type="application/json" id="run-data">(.*?)</script>', page, re.DOTALL
+    )
+    assert found is not None
+    data: dict[str, object] = json.loads(found[1])
+    lines = (
+        f"{json.dumps(key)}: {json.dumps(value, ensure_ascii=False)}" for key, value in data.items()
+    )
+    return "{\n" + ",\n".join(lines) + "\n}\n"
 
 
 def take_picture(page: Path, picture: Path) -> bool:
@@ -50,7 +65,7 @@ def take_picture(page: Path, picture: Path) -> bool:
 
 
 def main(arguments: Sequence[str] | None = None) -> int:
-    """Write the map of every demo run, and a picture of it where a browser is found."""
+    """Write map and data of every demo run, and a picture of it where a browser is found."""
     parser = argparse.ArgumentParser(description=__doc__)
     parser.add_argument("--out", type=Path, default=_HERE.parent / "maps", metavar="FOLDER")
     parser.add_argument("--no-pictures", action="store_true", help="write the pages only")
@@ -58,8 +73,11 @@ def main(arguments: Sequence[str] | None = None) -> int:
     asked.out.mkdir(parents=True, exist_ok=True)
     for run in demo_runs():
         page = asked.out / f"{run.name}.html"
-        page.write_text(map_text(run), "utf-8", newline="\n")
-        print(page)
+        text = map_text(run)
+        page.write_text(text, "utf-8", newline="\n")
+        data = page.with_suffix(".json")
+        data.write_text(data_text(text), "utf-8", newline="\n")
+        print(page, data, sep="\n")
         if not asked.no_pictures:
             picture = page.with_suffix(".png")
             print(
