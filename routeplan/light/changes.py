@@ -44,17 +44,19 @@ class Circuit:
     practice: LossPractice
     measured: Measured
 
-    def fits(self, change: Callable[[Path], Path] = lambda path: path) -> bool:
-        """Return whether every budget fits once each path is changed."""
-        changed = {direction: change(path) for direction, path in self.paths.items()}
-        budgets = circuit_budgets(
-            changed,
+    def budgets(self, change: Callable[[Path], Path]) -> tuple[Budget, ...]:
+        """Return its budgets once each path is changed."""
+        return circuit_budgets(
+            {direction: change(path) for direction, path in self.paths.items()},
             self.pair,
             self.wavelengths_nm,
             practice=self.practice,
             measured=self.measured,
         )
-        return circuit_verdict(budgets) == "fits"
+
+    def fits(self, change: Callable[[Path], Path] = lambda path: path) -> bool:
+        """Return whether every budget fits once each path is changed."""
+        return circuit_verdict(self.budgets(change)) == "fits"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -223,6 +225,9 @@ def _less_glass(circuit: Circuit) -> Change | None:
         for path in circuit.paths.values()
     ]
     whole_m = int(min(lengths, default=0.0))
+    bare = circuit.budgets(partial(stretched, more_m=-whole_m))
+    if any((_judged_db(budget, circuit.practice) or 0.0) < 0.0 for budget in bare):
+        return None  # what is left without any glass is too much already
     fails = 0
     for number in range(1, _LENGTH_STEPS + 1):
         fits = whole_m * number // _LENGTH_STEPS
@@ -238,3 +243,8 @@ def _less_glass(circuit: Circuit) -> Change | None:
         else:
             fails = middle
     return Change(kind="length", text=f"{fits} m of glass less would do, joints as they are.")
+
+
+def _judged_db(budget: Budget, practice: LossPractice) -> float | None:
+    """Return the margin that the verdict is on."""
+    return budget.margin_db if practice.verdict_on == "worst" else budget.statistical_margin_db

@@ -5,9 +5,9 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from math import e, log10
-from typing import TYPE_CHECKING, ClassVar
+from typing import TYPE_CHECKING, ClassVar, TypeAlias
 
-from routeplan.light.attenuation import attenuation_of
+from routeplan.light.attenuation import MeasuredPoint, attenuation_of
 from routeplan.light.constants import constant
 from routeplan.light.contributions import Measured, measured_of, step_loss
 from routeplan.light.delay import group_index
@@ -31,6 +31,8 @@ __all__ = [
 
 _M_PER_KM = 1000.0
 _S_PER_NS = 1e-9
+
+_Lit: TypeAlias = tuple[float, float]  # attenuation per km and group index at one wavelength
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -201,16 +203,21 @@ def reflections(
     """
     measured = measured or {}
     found: list[Reflection] = []
+    kinds: dict[tuple[str, tuple[MeasuredPoint, ...]], _Lit] = {}
     before_db = 0.0
     for step in path.steps:
-        own_db = _own_db(step, wavelength_nm, connector_return_loss_db, measured)
+        glass = _glass(step, wavelength_nm, measured, kinds)
+        own_db = glass[0] if glass else _own_db(step, connector_return_loss_db)
         if own_db is None and isinstance(step, Mating):
             return None
         if own_db is not None:
             where = step.section if isinstance(step, Glass) else step.where
             found.append(Reflection(where=where, return_loss_db=own_db, before_db=before_db))
-        loss = step_loss(step, wavelength_nm, practice=practice, measured=measured)
-        before_db += loss.mean_db if loss else 0.0
+        if glass:
+            before_db += glass[1]
+        else:
+            loss = step_loss(step, wavelength_nm, practice=practice, measured=measured)
+            before_db += loss.mean_db if loss else 0.0
     if receiver_return_loss_db is not None:
         end = Reflection(
             where="receiver", return_loss_db=receiver_return_loss_db, before_db=before_db
@@ -242,9 +249,7 @@ def return_loss_db(found: Sequence[Reflection] | None) -> float | None:
     return combined_return_loss_db(each.seen_db for each in found)
 
 
-def _own_db(
-    step: Step, wavelength_nm: float, connector_return_loss_db: float | None, measured: Measured
-) -> float | None:
+def _own_db(step: Step, connector_return_loss_db: float | None) -> float | None:
     """Return the return loss of one step, None if it sends nothing back or that is not known."""
     match step:
         case Mating():
@@ -252,25 +257,33 @@ def _own_db(
             return connector_return_loss_db if own_db is None else own_db
         case Part():
             return step.return_loss_db
-        case Glass() | ExistingSpan():
-            return _glass_db(step, wavelength_nm, measured)
         case _:
             return None
 
 
-def _glass_db(
-    step: Glass | ExistingSpan,
+def _glass(
+    step: Step,
     wavelength_nm: float,
     measured: Measured,
-) -> float | None:
-    points = measured_of(step, measured) if isinstance(step, Glass) else ()
-    curve = attenuation_of(step.fibre_type, points).typical
-    return backscatter_return_loss_db(
-        step.glass_m,
-        attenuation_db_per_km(wavelength_nm, curve),
-        wavelength_nm=wavelength_nm,
-        index=group_index(wavelength_nm, find_fibre(step.fibre_type)),
+    kinds: dict[tuple[str, tuple[MeasuredPoint, ...]], _Lit],
+) -> tuple[float | None, float] | None:
+    """Return what glass sends back and what it loses; each kind of it is looked up once."""
+    if not isinstance(step, Glass | ExistingSpan):
+        return None
+    points = tuple(measured_of(step, measured)) if isinstance(step, Glass) else ()
+    kind = step.fibre_type, points
+    if kind not in kinds:
+        curve = attenuation_of(step.fibre_type, points).typical
+        kinds[kind] = (
+            attenuation_db_per_km(wavelength_nm, curve),
+            group_index(wavelength_nm, find_fibre(step.fibre_type)),
+        )
+    db_per_km, index = kinds[kind]
+    back_db = backscatter_return_loss_db(
+        step.glass_m, db_per_km, wavelength_nm=wavelength_nm, index=index
     )
+    loss_db = step.loss_db if isinstance(step, ExistingSpan) else None
+    return back_db, db_per_km * (step.glass_m / _M_PER_KM) if loss_db is None else loss_db
 
 
 def _backscatter_db(wavelength_nm: float) -> float:
