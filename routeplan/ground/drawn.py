@@ -12,7 +12,15 @@ from numpy.typing import NDArray
 from routeplan import geodesy
 from routeplan.run.model import Floats, Line
 
-__all__ = ["Drawn", "cut_drawn", "draw_line", "joined_drawn", "reversed_drawn", "shape_of"]
+__all__ = [
+    "Drawn",
+    "along_m",
+    "cut_drawn",
+    "draw_line",
+    "joined_drawn",
+    "reversed_drawn",
+    "shape_of",
+]
 
 Flags: TypeAlias = NDArray[np.bool_]
 
@@ -231,3 +239,11 @@ def _joined_heights(parts: Sequence[Drawn]) -> Floats | None:
         heights[-1] = np.concatenate([heights[-1][:-1], both])
         heights.append(column[1:])
     return np.concatenate(heights)
+
+
+def along_m(line: Drawn, index: float) -> float:
+    """Return how far along a line, on the ellipsoid, a fractional index lies."""
+    count = len(line.ellipsoid_steps_m)
+    whole = min(int(min(index, count)), count - 1)
+    share = min(index, count) - whole
+    return float(line.ellipsoid_steps_m[:whole].sum() + share * line.ellipsoid_steps_m[whole])

@@ -10,9 +10,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from routeplan.errors import Problem
-from routeplan.geodesy import local_xy_m, wrapped
-from routeplan.ground.drawn import Drawn, cut_drawn, reversed_drawn, shape_of
-from routeplan.ground.locate import Hit, LineIndex, index_lines, near_lines, nearest_m, within_pairs
+from routeplan.geodesy import wrapped
+from routeplan.ground.drawn import Drawn, along_m, cut_drawn, reversed_drawn, shape_of
+from routeplan.ground.locate import Hit, LineIndex, index_lines, near_lines, within_pairs
+from routeplan.ground.sites import take_sites
 from routeplan.run.model import Floats, Place
 from routeplan.run.practice import Joining
 
@@ -62,7 +63,7 @@ def join_lines(drawn: Sequence[Drawn], sites: Sequence[Place], *, joining: Joini
     cuts: dict[int, list[tuple[float, int]]] = defaultdict(list)
     _cut_at_ends(lines, drawn, ends, cluster=cluster, cuts=cuts, joining=joining)
     junctions = _junction_positions(ends, cluster)
-    taken, problems, warnings = _take_sites(
+    taken, problems, warnings = take_sites(
         lines, drawn, sites, ends=ends, cluster=cluster, joining=joining
     )
     named: dict[int, Place] = {}
@@ -147,11 +148,11 @@ def _cut_at_ends(
             known = [*own_ends, *cuts[number]]
             if any(junction == here for _, junction in known):
                 continue
-            along_m = _along_m(line, hit.index)
+            reached_m = along_m(line, hit.index)
             near = [
                 junction
                 for index, junction in known
-                if abs(_along_m(line, index) - along_m) <= joining.join_tolerance_m
+                if abs(along_m(line, index) - reached_m) <= joining.join_tolerance_m
             ]
             if near:
                 _merge(cluster, cuts, old=here, new=near[0])
@@ -166,98 +167,6 @@ def _merge(
     cluster[:] = [new if junction == old else junction for junction in cluster]
     for number, known in cuts.items():
         cuts[number] = [(index, new if at == old else at) for index, at in known]
-
-
-def _take_sites(
-    lines: LineIndex,
-    drawn: Sequence[Drawn],
-    sites: Sequence[Place],
-    *,
-    ends: Floats,
-    cluster: Sequence[int],
-    joining: Joining,
-) -> tuple[list[tuple[Place, int | Hit]], list[Problem], list[tuple[str, str]]]:
-    """
-    Return where every site goes: a junction, or a place inside a line.
-
-    The site nearest to a line's end takes it; another one near that end, too, goes to its own
-    place inside a line.
-    """
-    taken: list[tuple[int, int | Hit]] = []
-    problems: list[Problem] = []
-    warnings: list[tuple[str, str]] = []
-    points = np.array([[site.lon, site.lat] for site in sites]).reshape(-1, 2)
-    radius = np.full(len(sites), joining.site_distance_max_m)
-    near_ends = _nearest_ends(points, ends, radius_m=joining.site_distance_max_m)
-    hits = near_lines(lines, points, radius_m=radius)
-    owner: dict[int, Place] = {}
-    assumed_sites = [bool(site.properties.get("kind_assumed")) for site in sites]
-    for number in sorted(range(len(sites)), key=lambda at: (assumed_sites[at], near_ends[at][1])):
-        site = sites[number]
-        assumed = assumed_sites[number]
-        end, distance_m = near_ends[number]
-        inside = [hit for hit in hits[number] if _is_inside(hit, drawn[hit.line], joining)]
-        if distance_m <= joining.site_distance_max_m and cluster[end] not in owner:
-            owner[cluster[end]] = site
-            taken.append((number, cluster[end]))
-        elif assumed:
-            warnings.append((str(site.source), _left_out(site, bool(hits[number]))))
-        elif inside and all(_apart(inside[0], other, drawn, joining) for _, other in taken):
-            taken.append((number, inside[0]))
-        elif distance_m <= joining.site_distance_max_m:
-            problems.append(_two_sites(owner[cluster[end]], site))
-        elif inside:
-            problems.append(_two_sites(_at(inside[0], taken, sites, drawn, joining), site))
-        else:
-            far_m = nearest_m(lines, points[number])
-            problems.append(_far_site(site, far_m, joining.site_distance_max_m))
-    taken.sort(key=lambda item: item[0])
-    return [(sites[number], where) for number, where in taken], problems, warnings
-
-
-def _is_inside(hit: Hit, line: Drawn, joining: Joining) -> bool:
-    """Tell whether a place on a line lies farther from its ends than they are joined over."""
-    reach = _along_m(line, hit.index)
-    return joining.join_tolerance_m < reach < _along_m(line, np.inf) - joining.join_tolerance_m
-
-
-def _apart(hit: Hit, other: int | Hit, drawn: Sequence[Drawn], joining: Joining) -> bool:
-    """Tell whether two sites on one line leave a piece between them."""
-    if not isinstance(other, Hit) or other.line != hit.line:
-        return True
-    line = drawn[hit.line]
-    apart = abs(_along_m(line, hit.index) - _along_m(line, other.index))
-    return apart > joining.join_tolerance_m
-
-
-def _at(
-    hit: Hit,
-    taken: Sequence[tuple[int, int | Hit]],
-    sites: Sequence[Place],
-    drawn: Sequence[Drawn],
-    joining: Joining,
-) -> Place:
-    return next(sites[n] for n, other in taken if not _apart(hit, other, drawn, joining))
-
-
-def _along_m(line: Drawn, index: float) -> float:
-    """Return how far along a line, on the ellipsoid, a fractional index lies."""
-    count = len(line.ellipsoid_steps_m)
-    whole = min(int(min(index, count)), count - 1)
-    share = min(index, count) - whole
-    return float(line.ellipsoid_steps_m[:whole].sum() + share * line.ellipsoid_steps_m[whole])
-
-
-def _nearest_ends(points: Floats, ends: Floats, *, radius_m: float) -> list[tuple[int, float]]:
-    """Return for each point the nearest line end and its distance, infinite beyond the radius."""
-    nearest: list[tuple[int, float]] = []
-    for point in points:
-        east, north = local_xy_m(ends, lon=point[0], lat=point[1])
-        distance = np.hypot(east, north)
-        at = int(np.argmin(distance))
-        near = float(distance[at])
-        nearest.append((at, near if near <= radius_m else np.inf))
-    return nearest
 
 
 def _without_stubs(
@@ -414,30 +323,3 @@ def _step_keys(lonlat: Floats) -> NDArray[np.uint64]:
     point ^= point >> np.uint64(29)
     point *= np.uint64(0xBF58476D1CE4E5B9)
     return np.asarray(point[1:] + point[:-1])
-
-
-def _two_sites(first: Place, second: Place) -> Problem:
-    return Problem(
-        where=str(second.source),
-        what=f'sites "{first.name}" and "{second.name}" take the same place on a line',
-        remedy="Draw each site's own line, or remove one of the sites",
-    )
-
-
-def _far_site(site: Place, far_m: float, limit_m: float) -> Problem:
-    return Problem(
-        where=str(site.source),
-        what=f'site "{site.name}" is far from every line',
-        value=f"{far_m:,.1f} m".replace(",", " "),
-        limit=f"site_distance_max_m = {limit_m:g}",
-        remedy="Move it, draw the line to it, or raise joining.site_distance_max_m",
-    )
-
-
-def _left_out(site: Place, is_near: bool) -> str:
-    if is_near:
-        return (
-            f'"{site.name}" has no kind and stands beside the line, not at an end: left out. Give '
-            'it kind = "site", or a reach kind such as "handhole"'
-        )
-    return f'"{site.name}" has no kind and is far from every line: left out'
