@@ -98,7 +98,8 @@ def _finite(layer: Layer, trouble: Trouble) -> Layer:
         bad = ~np.isfinite(shape.xy).all(axis=1)
         if shape.z is not None:
             bad |= np.isinf(shape.z)
-        high = np.zeros(len(bad), dtype=bool) if shape.z is None else np.abs(shape.z) > _HEIGHT_MOST
+        heights = np.zeros(len(shape.xy)) if shape.z is None else shape.z
+        high = np.abs(heights) > _HEIGHT_MOST
         if bad.any() or high.any():
             what = (
                 "has a coordinate that is not a finite number"

@@ -11,7 +11,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Annotated, Literal, TypeAlias
 
-from pydantic import AfterValidator, Field, Strict
+from pydantic import AfterValidator, BeforeValidator, Field, Strict
 
 from routeplan.run.fields import (
     Count,
@@ -39,9 +39,12 @@ __all__ = [
     "CableMake",
     "CircuitOrder",
     "Costs",
+    "FeatureKind",
+    "GroundRules",
     "Interface",
     "Joining",
     "Joints",
+    "LayerColumns",
     "Loss",
     "MeasuredAttenuation",
     "Practice",
@@ -57,7 +60,15 @@ AnyPlacement = Literal[
 OwnPlacement = Literal["aerial", "duct", "buried", "surface", "indoor", "bridge", "water"]
 
 
+FeatureKind = Literal["road", "rail", "water", "power", "pipeline", "boundary", "avoid", "permit"]
+
 MetresByPlacement: TypeAlias = Mapping[OwnPlacement, PositiveMetres]
+Text: TypeAlias = Annotated[str, Field(min_length=1)]
+
+
+def _listed(value: object) -> object:
+    """Return one text as a list of one."""
+    return [value] if isinstance(value, str) else value
 
 
 class Joining(Section):
@@ -73,6 +84,50 @@ class Joining(Section):
     track_tolerance_m: Metres = Field(description="How far thinning may move a recorded track. [m]")
 
 
+class GroundRules(Section):
+    """How the height of the ground counts, and what is near enough to be met."""
+
+    smooth_wave_m: Metres = Field(
+        description="Waves of the terrain so long are halved, shorter ones more; 0: none. [m]"
+    )
+    track_heights: bool = Field(
+        description="Whether the heights of a recorded track count for its length."
+    )
+    steep_ratio: Ratio = Field(description="Slope over which a stretch is listed as steep. [-]")
+    steep_length_m: Metres = Field(description="Shorter steep stretches are not listed. [m]")
+    crossing_width_m: Metres = Field(
+        description="Taken for a line found in a layer, from edge to edge and square to it. [m]"
+    )
+    along_distance_m: Metres = Field(
+        description="A line of a layer farther to the side is not run along. [m]"
+    )
+    along_length_m: PositiveMetres = Field(description="Least length of running along a line. [m]")
+
+
+class LayerColumns(Section):
+    """One layer of lines and areas that may be crossed, and which columns say what they are."""
+
+    file: Text = Field(description="Vector file or OpenStreetMap extract; file.gpkg|layer.")
+    kind: FeatureKind | None = Field(
+        default=None, description="What all of it is; left out: what a column says."
+    )
+    kind_column: Text | None = Field(
+        default=None, description="Column of the kind; left out: `kind` or `crosses`."
+    )
+    kinds: Mapping[str, FeatureKind] | None = Field(
+        default=None, description="Kind for each value of that column; other values are left out."
+    )
+    class_column: Text | None = Field(
+        default=None, description="Column of the class, as a road's; left out: `class`."
+    )
+    name_column: Text | None = Field(
+        default=None, description="Column of the name; left out: `name`."
+    )
+    owner_column: Text | None = Field(
+        default=None, description="Column of who is asked; left out: `owner` or `operator`."
+    )
+
+
 class CableMake(Section):
     """What cable is ordered."""
 
@@ -86,8 +141,14 @@ class CableMake(Section):
     measured: Annotated[tuple[MeasuredAttenuation, ...], Strict(False)] = Field(
         default=(), description="Measured attenuation; replaces that of the fibre type."
     )
+    terminate: Literal["circuits", "all"] = Field(
+        default="circuits",
+        description="Fibres that get a pigtail at the panels: those of circuits, or all.",
+    )
     legs: Annotated[tuple[Name, ...], Strict(False)] = Field(
-        default=(), description="Legs the cable takes, for a named cable."
+        default=(),
+        max_length=1000,
+        description="Legs a named cable takes, in order along it; it passes nodes and sites uncut.",
     )
 
 
@@ -135,7 +196,7 @@ class Reels(Section):
 class Joints(Section):
     """Where joints may be, and how many."""
 
-    assumed_spacing_m: PositiveMetres = Field(
+    assumed_spacing_m: Annotated[float, Field(ge=1, le=1_000_000)] = Field(
         description="Longest gap between places fit for a joint before some are assumed. [m]"
     )
     max_count: Count | None = Field(
@@ -146,6 +207,18 @@ class Joints(Section):
         description="Longest section by placement; left out: no limit. [m]",
     )
     fibres_per_tray: Literal[12, 24] = Field(description="Splices a closure's tray holds. [-]")
+    closure_splices_max: int | None = Field(
+        default=None,
+        ge=1,
+        le=10_000,
+        description="Splices a closure holds; left out: not known. [-]",
+    )
+    closure_ports: int | None = Field(
+        default=None,
+        ge=1,
+        le=100,
+        description="Cable ends a closure takes; left out: not known. [-]",
+    )
 
 
 class Costs(Section):
@@ -195,6 +268,7 @@ class Practice(Section):
     """The house rules of a run."""
 
     joining: Joining
+    ground: GroundRules
     slack: Slack
     reels: Reels
     joints: Joints
@@ -226,6 +300,20 @@ class RunHead(Section):
         default=(),
         description="Vector files of streets or a coast, drawn thin on the map and nothing else.",
     )
+    terrain: Annotated[
+        tuple[Text, ...],
+        Strict(False),
+        BeforeValidator(_listed, json_schema_input_type=tuple[Text, ...] | Text),
+    ] = Field(
+        default=(),
+        description="Rasters of heights (.tif, .hgt, .asc), for lines without heights: a file, "
+        "a folder or a list of them, the finest first.",
+    )
+    layers: Annotated[tuple[Text, ...], Strict(False)] = Field(
+        default=(),
+        description="OpenStreetMap extracts and vector files of what may be crossed; see "
+        "`[[layer]]` for files that name things in their own way.",
+    )
     placement: AnyPlacement = Field(description="Placement of lines that do not say.")
     units: Literal["metric", "us"] = Field(
         description="What people see: metric or us; files keep SI."
@@ -236,6 +324,10 @@ class RunFile(RunHead):
     """A whole run file, defaults filled in."""
 
     joining: Joining
+    ground: GroundRules
+    layer: Annotated[tuple[LayerColumns, ...], Strict(False)] = Field(
+        default=(), description="Layers of what may be crossed, with their columns."
+    )
     cable: CableMake = Field(description="The default cable.")
     cables: Mapping[Name, CableMake] = Field(
         default_factory=dict, description="Other cables by name, over the default cable."
