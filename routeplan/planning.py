@@ -10,6 +10,7 @@ from routeplan.cable.assembly import fewer_joints, put_together
 from routeplan.cable.fibres import FibrePlan
 from routeplan.cable.layout import LaidCable, lay_cables
 from routeplan.cable.model import Layout, Splice
+from routeplan.cable.panels import Port, panel_ports
 from routeplan.cable.schedule import joint_splice_count, splice_rows
 from routeplan.check import Check
 from routeplan.circuits import CircuitPlan, circuit_fibres, joint_figures, light_circuits
@@ -21,9 +22,10 @@ from routeplan.run.defaults import AssumedValue, assumed_values, default_value
 from routeplan.run.model import Run
 from routeplan.run.practice import CircuitOrder
 from routeplan.verify import plan_checks
+from routeplan.verify_cable import closure_checks
 from routeplan.verify_light import light_warnings
 
-__all__ = ["CircuitPlan", "Plan", "assumptions", "one_fewer", "plan", "splices"]
+__all__ = ["CircuitPlan", "Plan", "assumptions", "one_fewer", "plan", "ports", "splices"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -89,7 +91,10 @@ def plan(run: Run, *, memo: Memo | None = None) -> Plan:
         layout=layout,
         circuits=circuits,
         splice_counts=counts,
-        checks=plan_checks(run, layout, circuits),
+        checks=(
+            *plan_checks(run, layout, circuits),
+            *closure_checks(run, layout, counts),
+        ),
         warnings=(
             *run.warnings,
             *ground.warnings,
@@ -177,6 +182,16 @@ def splices(planned: Plan) -> tuple[Splice, ...]:
         if joint.id in own and not {joint.id, joint.reach_name} & measured
     }
     return tuple(replace(row, limit_db=limits_db.get(row.joint, row.limit_db)) for row in rows)
+
+
+def ports(planned: Plan) -> tuple[Port, ...]:
+    """Return the panel ports of every site, in the order of the nodes."""
+    return panel_ports(
+        planned.layout,
+        [use for circuit in planned.circuits for use in circuit.uses],
+        site_names={node.id: node.name for node in planned.ground.nodes if node.is_site},
+        fibre_counts={one.order.name: one.order.fibre_count for one in planned.circuits},
+    )
 
 
 def one_fewer(planned: Plan) -> tuple[int, int] | None:

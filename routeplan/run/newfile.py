@@ -20,7 +20,10 @@ _EXAMPLES = {  # keys without a default, as they would be written
     "crs": '"EPSG:27700"',
     "background": "[]",
     "cable.measured": "[ { wavelength_nm = 1310, attenuation_db_per_km = 0.33 } ]",
+    "cable.terminate": '"circuits"',
     "joints.max_count": "40",
+    "joints.closure_splices_max": "96",
+    "joints.closure_ports": "6",
     "joints.max_section_m": "{ duct = 6000 }",
 }
 _OTHERWISE = ("loss.connector_grade",)  # instead of the keys before it

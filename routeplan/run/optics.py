@@ -233,7 +233,7 @@ class CircuitOrder(Section):
     ] = Field(
         default=(),
         max_length=2,
-        description="Fibre numbers it takes all the way, one for each fibre; left out: chosen.",
+        description="Fibre numbers it takes all the way, one for each fibre; left out: chosen. [-]",
     )
     interface: Name | None = Field(
         default=None,

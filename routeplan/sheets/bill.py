@@ -6,12 +6,12 @@ from collections import Counter
 from collections.abc import Iterator
 
 from routeplan.circuits import CircuitPlan
-from routeplan.planning import Plan
+from routeplan.planning import Plan, ports
 from routeplan.run.defaults import practice_rows
 from routeplan.sheets.columns import Row
 from routeplan.units import amount_from_cents, cents_from_amount, m_from_mm
 
-__all__ = ["bill_rows", "has_invented_prices", "pigtail_counts"]
+__all__ = ["bill_rows", "has_invented_prices", "pigtail_counts", "pigtail_splice_count"]
 
 _REEL_PRICES = ("costs.cable_per_m", "costs.reel_each")
 _STOCK_PRICES = ("costs.stock_per_m",)
@@ -87,7 +87,7 @@ def _joint_lines(planned: Plan) -> Iterator[Row]:
             "total": amount_from_cents(cents * count),
             "note": _noted(planned, ", ".join(names), _JOINT_PRICES),
         }
-    pigtails = sum(pigtail_counts(planned))
+    pigtails = pigtail_splice_count(planned)
     if pigtails:
         each = amount_from_cents(cents_from_amount(costs.splice_each))
         note = f"not in the layout's cost; a splice is {each:.2f}"
@@ -97,6 +97,23 @@ def _joint_lines(planned: Plan) -> Iterator[Row]:
             "splice",
             _noted(planned, note, ("costs.splice_each",)),
         )
+    dropped = sum(port.is_entered for port in ports(planned))
+    if dropped:
+        yield _unpriced("Pigtail spliced in a closure", dropped, "piece", "cables that pass a site")
+
+
+def pigtail_splice_count(planned: Plan) -> int:
+    """
+    Return the pigtail splices behind all panels.
+
+    Those of circuits, less those in a closure where a fibre is cut out of a cable that passes,
+    and the spares of cables of which all is terminated; none where pigtails are not spliced.
+    """
+    dropped = Counter(port.circuit for port in ports(planned) if port.is_entered)
+    spares = sum(not port.circuit for port in ports(planned))
+    counts = zip(planned.circuits, pigtail_counts(planned), strict=True)
+    behind = sum(max(0, count - dropped[one.order.name]) for one, count in counts)
+    return behind + (spares if planned.run.practice.loss.pigtail_splices else 0)
 
 
 def pigtail_counts(planned: Plan) -> Iterator[int]:

@@ -7,13 +7,14 @@ from collections.abc import Iterator
 
 import numpy as np
 
+from routeplan.cable.colours import fibre_colours
 from routeplan.cable.layout import LaidCable
 from routeplan.cable.model import FibreEnd, Joint
 from routeplan.circuit_answers import changes, radio_figures, stretch_m, times
 from routeplan.ground.model import Crossing, Leg
 from routeplan.light.circuits import Closing
-from routeplan.planning import CircuitPlan, Plan, assumptions, one_fewer, splices
-from routeplan.sheets.bill import bill_rows, pigtail_counts
+from routeplan.planning import CircuitPlan, Plan, assumptions, one_fewer, ports, splices
+from routeplan.sheets.bill import bill_rows, pigtail_splice_count
 from routeplan.sheets.budget_rows import budget_row
 from routeplan.sheets.cautions import cautions_for
 from routeplan.sheets.levels import level_rows, mark_rows
@@ -57,6 +58,7 @@ def plan_document(planned: Plan) -> dict[str, Json]:
         "layout": _layout(planned),
         "joints": [_joint(planned, joint) for joint in planned.layout.joints],
         "splices": list(_splices(planned)),
+        "panels": list(_panels(planned)),
         "circuits": [_circuit(planned, circuit) for circuit in planned.circuits],
         "checks": [row_of("checks", check) for check in planned.checks],
         "bill": [],
@@ -95,7 +97,7 @@ def _totals(planned: Plan) -> Row:
             "joint_count": len(layout.joints),
             "closure_count": sum(joint.kind == "splice" for joint in layout.joints),
             "splice_count": sum(planned.splice_counts.values()),
-            "pigtail_splice_count": sum(pigtail_counts(planned)),
+            "pigtail_splice_count": pigtail_splice_count(planned),
             "cost": amount_from_cents(layout.proof.cost_cents),
         },
     )
@@ -237,6 +239,7 @@ def _joint(planned: Plan, joint: Joint) -> Row:
             "splice_count": planned.splice_counts[joint.id],
             "cost": amount_from_cents(joint.cost_cents),
             "ends": [{"section": end.section, "side": end.side} for end in joint.ends],
+            "opened": list(joint.opened),
         },
     )
 
@@ -256,6 +259,26 @@ def _splices(planned: Plan) -> Iterator[Row]:
     for splice in splices(planned):
         out = None if splice.b is None else _fibre_end(splice.b, names)
         yield row_of("splices", splice, **{"in": _fibre_end(splice.a, names)}, out=out)
+
+
+def _panels(planned: Plan) -> Iterator[Row]:
+    cables = {cable.id: cable for cable in planned.layout.cables}
+    polish = {panel.site: panel.polish for panel in planned.run.panels if panel.polish}
+    usual = planned.run.practice.loss.connector_polish
+    for port in ports(planned):
+        make = cables[port.cable].make
+        tube, fibre = fibre_colours(
+            port.fibre, code=make.colour_code, fibres_per_tube=make.fibres_per_tube
+        )
+        yield row_of(
+            "panels",
+            port,
+            cable=cables[port.cable].name,
+            section=port.section or None,
+            tube_colour=tube,
+            fibre_colour=fibre,
+            connector=polish.get(port.site, usual),
+        )
 
 
 def _fibre_end(end: FibreEnd, names: dict[str, str]) -> Row:

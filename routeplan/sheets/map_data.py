@@ -98,6 +98,7 @@ def _leg_columns(
     vertices = _vertices(leg)
     points = [(number, row) for number, row in enumerate(stations) if row["kind"] != "vertex"]
     spans, offsets = _section_spans(stations, sections)
+    near, far = ("to", "from") if _runs_back(stations) else ("from", "to")
     return {
         "name": plain(text_at(leg, "name")),
         "from": plain(text_at(leg, "from")),
@@ -116,10 +117,10 @@ def _leg_columns(
         ],
         "stations": {
             "ground": _column(stations, "ground_m"),
-            "sheath": _column(stations, "sheath_from_m"),
-            "sheathStep": _rises(stations, "sheath_from_m", "sheath_to_m"),
-            "glass": _column(stations, "glass_from_m"),
-            "glassStep": _rises(stations, "glass_from_m", "glass_to_m"),
+            "sheath": _column(stations, f"sheath_{near}_m"),
+            "sheathStep": _rises(stations, f"sheath_{near}_m", f"sheath_{far}_m"),
+            "glass": _column(stations, f"glass_{near}_m"),
+            "glassStep": _rises(stations, f"glass_{near}_m", f"glass_{far}_m"),
             "section": spans,
         },
         "sections": offsets,
@@ -132,6 +133,14 @@ def _leg_columns(
             "lat": steps((value_at(row, "lat") for _, row in points), scale=_PER_DEG),
         },
     }
+
+
+def _runs_back(stations: Sequence[Row]) -> bool:
+    """Return whether the cable runs against the leg, its rulers falling along it."""
+    if not stations:
+        return False
+    first, last = (value_at(row, "sheath_from_m") or 0.0 for row in (stations[0], stations[-1]))
+    return first > last
 
 
 def _section_spans(
@@ -149,7 +158,7 @@ def _section_spans(
     spans = []
     for here, there in zip(stations, [*stations[1:], *stations[-1:]], strict=True):
         ends = (text_at(here, "name"), text_at(there, "name"))
-        inner = next((row for row in (here, there) if row["kind"] not in ("joint", "site")), None)
+        inner = next((row for row in (here, there) if _is_inside(row, sections)), None)
         name = by_ends.get(ends) if inner is None else text_at(inner, "section")
         name = name or text_at(here, "section")
         if name not in numbers_of:
@@ -157,6 +166,16 @@ def _section_spans(
             offsets.append(_section_start(name, inner or here))
         spans.append(numbers_of[name])
     return spans, offsets
+
+
+def _is_inside(station: Row, sections: dict[str, Row]) -> bool:
+    """Return whether a station lies within its section: no end, or one that the cable passes."""
+    if station["kind"] not in ("joint", "site"):
+        return True
+    section = sections.get(text_at(station, "section"))
+    ends = () if section is None else (text_at(section, "from"), text_at(section, "to"))
+    is_passed = bool(ends) and text_at(station, "name") not in ends
+    return is_passed and bool(value_at(station, "section_m"))
 
 
 def _section_start(name: str, station: Row) -> list[object]:

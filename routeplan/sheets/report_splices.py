@@ -80,6 +80,8 @@ def _treatment(row: Row) -> str:
         return "stored"
     if kind == "express":
         return "pass uncut"
+    if text_at(end, "section") == "panel":
+        return "to the panel"
     alike = all(start.get(k) == end.get(k) for k in ("fibre", "tube_colour", "fibre_colour"))
     return "straight through" if alike else "crossed: see rows"
 
@@ -119,7 +121,15 @@ def _ends(document: Row, joint: Row) -> str:
         reel = f", reel {safe(text_at(row, 'reel'))}" if text_at(row, "reel") else ""
         name = safe(text_at(end, "section"))
         parts.append(f"section {name}{reach}{reel} {_SIDE_WORDS.get(side, '')}")
+    for entered in _texts(joint.get("opened")):
+        row = sections.get(entered, {})
+        ends = f" (from {safe(text_at(row, 'from'))} to {safe(text_at(row, 'to'))})" if row else ""
+        parts.append(f"section {safe(entered)}{ends} passes and is entered, not cut")
     return "; ".join(parts)
+
+
+def _texts(value: object) -> list[str]:
+    return [str(entry) for entry in value] if isinstance(value, list) else []
 
 
 def _work(joint: Row, splices: Sequence[Row]) -> str:
@@ -141,8 +151,9 @@ def _schedule(splices: Sequence[Row]) -> str:
     for tray, group in groupby(splices, key=lambda row: whole_at(row, "tray")):
         rows = list(group)
         runs = "; ".join(runs_of_splices(rows)[:8])
+        head = f"Tray {tray}" if tray else "On no tray"
         bodies.append(
-            f'<tbody><tr class="tray"><th colspan="{len(columns)}" scope="rowgroup">Tray {tray}: '
+            f'<tbody><tr class="tray"><th colspan="{len(columns)}" scope="rowgroup">{head}: '
             f"{safe(runs)}</th></tr>{''.join(table_row(columns, row) for row in rows)}</tbody>"
         )
     return f'<table class="splices"><thead>{heads}</thead>{"".join(bodies)}</table>\n'
@@ -191,6 +202,7 @@ def _between(row: Row) -> str:
         "straight through": "\N{RIGHTWARDS ARROW}",
         "stored": "\N{DOWNWARDS ARROW}",
         "pass uncut": "\N{LONG RIGHTWARDS ARROW}",
+        "to the panel": "\N{RIGHTWARDS ARROW}",
     }.get(_treatment(row), "<b>\N{MULTIPLICATION SIGN}</b>")
 
 

@@ -55,11 +55,8 @@ def _marks(planned: Plan, laid: LaidCable) -> dict[int, list[_Mark]]:
 
     way = laid.way
     own = [joint for joint in planned.layout.joints if joint.mark.cable == way.cable.id]
-    node_joints = {joint.node: joint.id for joint in planned.layout.joints if joint.node}
-    for at, node_id in ((0, way.cable.start), (way.length_mm, way.cable.end)):
-        node = planned.ground.node(node_id)
-        reach = node.place.kind if node.place and not node.is_site else None
-        put(at, "site" if node.is_site else "joint", node_joints.get(node_id, node.name), reach)
+    for at, mark in _node_marks(planned, laid):
+        marks.setdefault(at, []).append(mark)
     for joint in own:
         if joint.node is None:
             put(joint.mark.chain_mm, "joint", joint.id)
@@ -79,6 +76,24 @@ def _marks(planned: Plan, laid: LaidCable) -> dict[int, list[_Mark]]:
     return marks
 
 
+def _node_marks(planned: Plan, laid: LaidCable) -> Iterator[tuple[int, _Mark]]:
+    """Yield what stands at a cable's ends and at the nodes it passes."""
+    way = laid.way
+    joints = {joint.node: joint.id for joint in planned.layout.joints if joint.node}
+    for at, node_id in ((0, way.cable.start), (way.length_mm, way.cable.end)):
+        node = planned.ground.node(node_id)
+        reach = node.place.kind if node.place and not node.is_site else None
+        kind = "site" if node.is_site else "joint"
+        name = node.name if node.is_site else joints.get(node_id, node.name)
+        yield at, _Mark(kind=kind, name=name, reach_kind=reach)
+    for passed in way.passed:
+        node = passed.node
+        if node.is_site:
+            yield passed.chain_mm, _Mark(kind="site", name=node.name)
+        elif passed.is_entered and node.id in joints:
+            yield passed.chain_mm, _Mark(kind="joint", name=joints[node.id])
+
+
 def _leg_rows(
     planned: Plan,
     laid: LaidCable,
@@ -88,9 +103,11 @@ def _leg_rows(
     offset: int,
     marks: Mapping[int, list[_Mark]],
 ) -> Iterator[Row]:
-    vertices = offset + (leg.ground_mm if forward else leg.length_mm - leg.ground_mm[::-1])
+    vertices = offset + (leg.ground_mm if forward else leg.length_mm - leg.ground_mm)
     own = [at for at in marks if offset <= at <= offset + leg.length_mm]
+    # Along the leg, whichever way the cable takes it.
     chain = np.unique(np.concatenate([vertices, np.array(own, dtype=np.int64)]))
+    chain = chain if forward else chain[::-1]
     lonlat, heights = positions_on(laid.way, chain)
     (sheath_from, sheath_to), (glass_from, glass_to) = readings(laid.rulers, chain)
     sections = [s for s in planned.layout.sections if s.cable == laid.way.cable.id]
@@ -100,7 +117,7 @@ def _leg_rows(
         "leg": [leg.name] * len(chain),
         "cable": [laid.way.cable.name] * len(chain),
         **_named(marks, chain),
-        "placement": _placements(laid, chain),
+        "placement": _placements(laid, chain, forward=forward),
         "ground_m": (ground / 1000).tolist(),
         "sheath_from_m": (sheath_from / 1000).tolist(),
         "sheath_to_m": (sheath_to / 1000).tolist(),
@@ -141,10 +158,10 @@ def _named(marks: Mapping[int, list[_Mark]], chain: Millimetres) -> dict[str, li
     return {"kind": kinds, "name": names, "reach_kind": reaches}
 
 
-def _placements(laid: LaidCable, chain: Millimetres) -> list[Json]:
+def _placements(laid: LaidCable, chain: Millimetres, *, forward: bool) -> list[Json]:
     starts = [stretch.start_mm for stretch in laid.way.stretches]
-    at = np.searchsorted(starts, chain, side="right") - 1
-    return [laid.way.stretches[k].placement for k in at.tolist()]
+    at = np.searchsorted(starts, chain, side="right" if forward else "left") - 1
+    return [laid.way.stretches[max(k, 0)].placement for k in at.tolist()]
 
 
 def _sections_at(

@@ -323,6 +323,7 @@ def test_duct_run_by_hand(duct_plan: Plan) -> None:
         "splice_count": 12,
         "cost": 666.0,
         "ends": ends,
+        "opened": [],
     }
 
 

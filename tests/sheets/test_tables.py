@@ -26,7 +26,7 @@ def test_csv_names_and_tops_are_unique() -> None:
     """Each CSV and each key of plan.json belongs to one table."""
     names = [entry.csv for entry in csv_tables()]
     tops = [entry.path[0] for entry in TABLES.values() if len(entry.path) == 1]
-    assert len(names) == len(set(names)) == 7
+    assert len(names) == len(set(names)) == 8
     assert len(tops) == len(set(tops))
     assert not set(tops) & {column.key for column in HEAD}
 
@@ -118,7 +118,8 @@ def test_row_of_takes_attributes_but_for_those_given() -> None:
 
 def test_flat_rows_carry_what_is_around_them() -> None:
     """A line of a nested table begins with the columns it carries; nested rows are joined on."""
-    end = {"cable": "C", "section": "S1", "fibre": 1, "tube_colour": "blue", "fibre_colour": "red"}
+    end = {"cable": "C", "section": "S1", "side": "end", "fibre": 1}
+    end |= {"tube_colour": "blue", "fibre_colour": "red"}
     splice = {
         "joint": "J1",
         "tray": 1,

@@ -21,6 +21,7 @@ PROMISED = {
     "splice_schedule.csv",
     "stations.csv",
     "reels.csv",
+    "panels.csv",
     "loss_budget.csv",
     "bill.csv",
     "checks.csv",
