@@ -352,8 +352,10 @@ def routed_text(routed: Routed) -> str:
             columns.append((title, [_db(row.get(key)) for row in rows], ">"))
     widths = [max(len(title), *map(len, cells)) for title, cells, _ in columns]
     lines = [_line([title for title, _, _ in columns], columns, widths)]
-    for number in range(len(rows)):
-        lines.append(_line([cells[number] for _, cells, _ in columns], columns, widths))
+    lines.extend(
+        _line([cells[number] for _, cells, _ in columns], columns, widths)
+        for number in range(len(rows))
+    )
     lines += _exposure_lines(routed.document)
     lines += [f"wrote {path}" for path in routed.paths]
     if routed.document["attribution"]:

@@ -20,6 +20,7 @@ __all__ = [
     "edge_lengths_m",
     "joined_lines",
     "lines_from",
+    "unique_lines",
 ]
 
 _UNIT = 1e7  # OpenStreetMap's own resolution: a hundred-millionth of a turn is about a centimetre
@@ -125,6 +126,9 @@ def assembled(
     notes
         Notes of the reading.
     """
+    drawn = len(lines.first) - 1
+    lines = unique_lines(lines)
+    again = drawn - (len(lines.first) - 1)
     lines, vertex, position = _numbered(lines)
     begin, end, line = _cut(vertex, lines.first)
     begin, end, line, twice = _without_twins(vertex, begin, end, line, _keys(lines))
@@ -170,7 +174,7 @@ def assembled(
         row_edge=row_edge,
         part=labelled(row_first, row_node),
     )
-    return replace(network, notes=(*notes, *_said(network, twice, where)))
+    return replace(network, notes=(*notes, *_said(network, twice + again, where)))
 
 
 def _unbroken(shape_lonlat: Floats, shape_first: Whole) -> Floats:
@@ -182,6 +186,28 @@ def _unbroken(shape_lonlat: Floats, shape_first: Whole) -> Floats:
     total = np.cumsum(turns)
     starts = np.repeat(total[shape_first[:-1]], np.diff(shape_first))
     return shape_lonlat - np.column_stack([360.0 * (total - starts), np.zeros(len(total))])
+
+
+def unique_lines(lines: Lines) -> Lines:
+    """Return lines without those drawn before, vertex for vertex, in either direction."""
+    plain, vertex, _ = _numbered(lines)
+    filled = np.flatnonzero(np.diff(plain.first) > 0)
+    begin, end = plain.first[:-1][filled], plain.first[1:][filled] - 1
+    kept = _without_twins(vertex, begin, end, filled, _keys(lines))[2]
+    if len(kept) == len(lines.first) - 1:
+        return lines
+    sizes = np.diff(lines.first)
+    keep = np.zeros(len(sizes), dtype=bool)
+    keep[kept] = True
+    return Lines(
+        lonlat=lines.lonlat[np.repeat(keep, sizes)],
+        first=np.concatenate([[0], np.cumsum(sizes[keep])]).astype(np.int64),
+        road_class=[lines.road_class[at] for at in kept],
+        name=[lines.name[at] for at in kept],
+        placement=[lines.placement[at] for at in kept],
+        is_bridge=lines.is_bridge[keep],
+        is_tunnel=lines.is_tunnel[keep],
+    )
 
 
 def edge_lengths_m(shape_lonlat: Floats, shape_first: Whole) -> Floats:

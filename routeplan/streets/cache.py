@@ -21,7 +21,7 @@ from routeplan.streets.model import Network
 
 __all__ = ["cache_path", "cached_network", "file_digest"]
 
-_VERSION = 2  # raise it whenever what is kept, or how it is worked out, changes
+_VERSION = 3  # raise it whenever what is kept, or how it is worked out, changes
 _TEXT = ("class_words", "name_words", "placement_words", "place_words", "notes")
 _BROKEN = (OSError, EOFError, ValueError, KeyError, TypeError, zipfile.BadZipFile, zlib.error)
 
@@ -74,7 +74,7 @@ def cached_network(
 
 def _load(place: Path, stamp: str) -> Network | None:
     try:
-        with np.load(place, allow_pickle=False) as held:
+        with place.open("rb") as file, np.load(file, allow_pickle=False) as held:
             if bytes(held["stamp"]).decode() != stamp:
                 return None
             text = json.loads(bytes(held["text"]).decode())

@@ -64,6 +64,7 @@ def ways_page(
         f'<svg viewBox="0 0 {_WIDTH_PX:g} {_HEIGHT_PX:g}" role="img" aria-label="{escape(title)}">',
         _streets(network, frame),
         *_exposed(ways, exposures, frame),
+        *(_halo(named.way.lonlat, frame) for named in ways),
         *(_way(named.way.lonlat, number, named.name, frame) for number, named in enumerate(ways)),
         *(_site(site, frame) for site in sites),
         _scale(frame),
@@ -127,11 +128,15 @@ def _streets(network: Network, frame: _Frame) -> str:
     return f'<path d="{"".join(lines)}" fill="none" stroke="#c4c9c6" stroke-width="1.2"/>'
 
 
+def _halo(lonlat: Floats, frame: _Frame) -> str:
+    path = _path(frame.at(lonlat))
+    return f'<path d="{path}" fill="none" stroke="#fff" stroke-width="8" stroke-opacity=".7"/>'
+
+
 def _way(lonlat: Floats, number: int, name: str, frame: _Frame) -> str:
     colour, dash = _STROKES[number % len(_STROKES)]
     path = _path(frame.at(lonlat))
     return (
-        f'<path d="{path}" fill="none" stroke="#fff" stroke-width="8" stroke-opacity=".7"/>'
         f'<path d="{path}" fill="none" stroke="{colour}" stroke-width="4" '
         f'stroke-dasharray="{dash}"><title>{escape(name)}</title></path>'
     )

@@ -11,7 +11,7 @@ from typing import Any
 import numpy as np
 
 from routeplan.errors import GeometryError, Problem
-from routeplan.streets.assemble import Lines, lines_from
+from routeplan.streets.assemble import Lines, lines_from, unique_lines
 from routeplan.streets.model import Floats
 
 __all__ = ["lines_of_graph", "read_graphml"]
@@ -82,13 +82,14 @@ def lines_of_graph(graph: Any, *, where: str) -> Lines:
     if not rows:
         raise GeometryError(Problem(where=where, what="is a graph without an edge"))
     shapes = _on_earth([shape for shape, _ in rows], crs)
-    return lines_from(
+    lines = lines_from(
         shapes,
         road_class=[_first(data, "highway") or "street" for _, data in rows],
         name=[_first(data, "name") or _first(data, "ref") for _, data in rows],
         is_bridge=[_first(data, "bridge") not in ("", "no", "None") for _, data in rows],
         is_tunnel=[_first(data, "tunnel") not in ("", "no", "None") for _, data in rows],
     )
+    return unique_lines(lines)
 
 
 def _shape(data: Mapping[str, Any], start: tuple[float, float], end: tuple[float, float]) -> Floats:

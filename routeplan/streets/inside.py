@@ -99,5 +99,6 @@ def _shares(network: Network, ground: Any) -> Floats:
     edges, lines = edges[~within], lines[~within]
     whole = shapely.length(lines)
     part = shapely.length(shapely.intersection(lines, ground))
+    part -= shapely.length(shapely.intersection(lines, shapely.boundary(ground)))  # on the border
     shares[edges] = np.clip(np.where(whole > 0, part / np.where(whole > 0, whole, 1.0), 0.0), 0, 1)
     return shares

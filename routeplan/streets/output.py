@@ -129,6 +129,7 @@ def _clear_of(way: Way, along_m: float, others: Sequence[Floats]) -> float:
 
 
 def line_between(lonlat: Floats, from_m: float, to_m: float) -> Floats:
+    """Return the part of a polyline between two places along it."""
     from routeplan.geodesy import steps_m, unwrapped, wrapped
 
     chain = np.concatenate([[0.0], np.cumsum(steps_m(lonlat))])

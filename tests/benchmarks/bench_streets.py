@@ -16,6 +16,7 @@ import sys
 import tempfile
 import time
 from collections.abc import Callable
+from itertools import pairwise
 from pathlib import Path
 
 import networkx as nx
@@ -89,9 +90,7 @@ def multigraph(network: Network, prices: Prices) -> nx.MultiDiGraph:
 def greedy_pair_cost(graph: nx.Graph, source: int, target: int) -> float:
     """Return what two ways cost when the best one is taken out and the search run again."""
     first = nx.shortest_path(graph, source, target, weight="weight")
-    taken = [
-        (a, b, dict(graph.edges[a, b])) for a, b in zip(first, first[1:], strict=False)
-    ]
+    taken = [(a, b, dict(graph.edges[a, b])) for a, b in pairwise(first)]
     total = sum(data["weight"] for _, _, data in taken)
     graph.remove_edges_from([(a, b) for a, b, _ in taken])
     try:

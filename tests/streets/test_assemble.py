@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
+
 import networkx as nx
 import numpy as np
 import pytest
@@ -24,7 +26,9 @@ def lines(*shapes: list[tuple[float, float]], **more: object):  # type: ignore[n
 def test_a_shared_vertex_is_a_junction() -> None:
     """Two lines with a common vertex inside both are four edges round one node."""
     network = assembled(
-        lines([(10, 50), (10.001, 50), (10.002, 50)], [(10.001, 49.999), (10.001, 50), (10.001, 50.1)])
+        lines(
+            [(10, 50), (10.001, 50), (10.002, 50)], [(10.001, 49.999), (10.001, 50), (10.001, 50.1)]
+        )
     )
     assert len(network.length_m) == 4
     assert len(network.node_lonlat) == 5
@@ -53,7 +57,7 @@ def test_a_street_drawn_twice_counts_once() -> None:
     """The same line again, backwards too, is left out and said; another class is kept."""
     one = [(10, 50), (10.0005, 50.0001), (10.001, 50)]
     network = assembled(lines(one, one[::-1], one))
-    assert network.length_m.sum() == pytest.approx(assembled(lines(one)).length_m.sum())
+    assert len(network.length_m) == 1
     assert "drawn twice and count once" in network.notes[0][1]
     both = lines_from([np.array(one)] * 2, road_class=["street"] * 2, placement=["", "duct"])
     assert len(assembled(both).length_m) == 4
@@ -91,7 +95,7 @@ def test_edges_and_connections_are_those_of_the_lines(drawn: list[list[tuple[int
     """Whatever is drawn, the network joins what the lines join and is as long as their union."""
     shapes = [np.array([(10 + x / 1000, 50 + y / 1000) for x, y in line]) for line in drawn]
     network = assembled(lines_from(shapes, road_class=["street"] * len(shapes)))
-    steps = {frozenset(pair) for line in drawn for pair in zip(line, line[1:], strict=False)}
+    steps = {frozenset(pair) for line in drawn for pair in pairwise(line)}
     wanted = nx.Graph([tuple(step) for step in steps if len(step) == 2])
     found = nx.Graph()
     for edge in range(len(network.length_m)):
@@ -106,7 +110,10 @@ def test_edges_and_connections_are_those_of_the_lines(drawn: list[list[tuple[int
     for node in range(len(network.node_lonlat)):
         row = slice(int(network.row_first[node]), int(network.row_first[node + 1]))
         for other, edge in zip(network.row_node[row], network.row_edge[row], strict=True):
-            assert {node, int(other)} == {int(network.edge_start[edge]), int(network.edge_end[edge])}
+            assert {node, int(other)} == {
+                int(network.edge_start[edge]),
+                int(network.edge_end[edge]),
+            }
 
 
 def test_noding_joins_what_crosses_and_touches() -> None:

@@ -242,7 +242,7 @@ def river_town() -> Network:
 
     def block(west: float) -> list[np.ndarray]:
         corner = np.array([[0, 0], [1, 0], [1, 1], [0, 1], [0, 0]]) * STEP
-        ring = corner + [west, 50.0]
+        ring = corner + np.array([west, 50.0])
         return [ring[k : k + 2] for k in range(4)]
 
     bridge = np.array([[10.0 + STEP, 50.0 + STEP], [10.005, 50.0 + STEP]])

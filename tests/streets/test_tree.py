@@ -61,9 +61,7 @@ def test_arcs_make_a_tree(seed: int) -> None:
         except LookupError:
             return
         tree = nx.MultiGraph()
-        tree.add_edges_from(
-            zip(tails_of(graph, arcs), graph.row_node[arcs].tolist(), strict=True)
-        )
+        tree.add_edges_from(zip(tails_of(graph, arcs), graph.row_node[arcs].tolist(), strict=True))
         assert nx.is_tree(tree)
         assert set(nodes) <= set(tree)
         assert {node for node, degree in tree.degree if degree == 1} <= set(nodes)
