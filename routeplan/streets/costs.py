@@ -170,6 +170,8 @@ def _table() -> dict[str, dict[str, float]]:
 
 
 def _bad_changes(changes: Mapping[str, float]) -> list[Problem]:
+    if not changes:
+        return []
     from routeplan.run.trouble import nearest_hint, shown
 
     known = cost_words()
