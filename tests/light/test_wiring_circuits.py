@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from pathlib import Path
 
 import pytest
 from hypothesis import given, settings
@@ -13,6 +14,7 @@ from routeplan.light.circuits import circuit_budgets
 from routeplan.planning import plan
 from routeplan.sheets.document import plan_document
 from routeplan.sheets.report import report_html
+from routeplan.sheets.summary import summary_text
 from routeplan.tables import raw_rows
 from tests.light.wired_runs import (
     CIRCUIT,
@@ -328,3 +330,16 @@ def test_the_report_shows_what_was_asked() -> None:
         assert text in page
     radio = report_html(document(RF + CIRCUIT + 'interface = "antenna"\n'))
     assert "loss of signal" in radio
+
+
+def test_the_summary_says_what_closes_what_mends_and_what_is_odd() -> None:
+    """What a person reads aloud: interfaces, changes and the failing polarity, each on its line."""
+
+    def summary(toml: str, length_m: float = 9000.0) -> list[str]:
+        return summary_text(planned(toml, length_m), folder=Path("sheets"), names=[]).splitlines()
+
+    assert any(line.startswith("P: closed by ") for line in summary(ANY))
+    rolled = [line for line in summary(LR + 'rolls = ["HH 4"]\n') if "polarity" in line]
+    assert len(rolled) == 1
+    assert "the pair is rolled at Hill panel, HH 4" in rolled[0]
+    assert any("would fit: another optic" in line for line in summary(LR, 26000.0))
