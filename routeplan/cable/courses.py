@@ -65,11 +65,12 @@ def cable_courses(
         raise RunFileError(problems)
     claimed = list(_claimed(run.cables, ground.legs))
     taken = {leg.id for _, _, legs in claimed for leg, _ in legs}
-    named = [*claimed, *_unclaimed(run, [leg for leg in ground.legs if leg.id not in taken])]
+    nodes = {node.id: node for node in ground.nodes}
+    left = [leg for leg in ground.legs if leg.id not in taken]
+    named = [*claimed, *_unclaimed(run, left, nodes)]
     order = {leg.id: number for number, leg in enumerate(ground.legs)}
     named.sort(key=lambda each: min(order[leg.id] for leg, _ in each[2]))
     counts = Counter(name for name, _, _ in named)
-    nodes = {node.id: node for node in ground.nodes}
     courses = [
         _course(
             f"C{number}",
@@ -165,7 +166,7 @@ def _claimed(cables: Mapping[str, CableMake], legs: Sequence[Leg]) -> Iterator[_
             yield name, make, _directed([known[leg] for leg in make.legs])
 
 
-def _unclaimed(run: Run, legs: Sequence[Leg]) -> Iterator[_Named]:
+def _unclaimed(run: Run, legs: Sequence[Leg], nodes: Mapping[str, Node]) -> Iterator[_Named]:
     """Yield the cables of legs that no cable claims: by the name their lines give, or alone."""
     by_name: defaultdict[str, list[Leg]] = defaultdict(list)
     for leg in legs:
@@ -175,7 +176,19 @@ def _unclaimed(run: Run, legs: Sequence[Leg]) -> Iterator[_Named]:
             yield leg.name, run.cables.get(leg.name, run.cable), ((leg, True),)
     for name, own in by_name.items():
         make = run.cables.get(name, run.cable)
-        yield from ((name, make, taken) for taken in _unbranched(own))
+        yield from ((name, make, _opened(taken, nodes)) for taken in _unbranched(own))
+
+
+def _opened(taken: Taken, nodes: Mapping[str, Node]) -> Taken:
+    """Return a ring begun at a site if it has one, whichever leg was drawn first."""
+    if len(taken) == 1 or _from(taken[0]) != _to(taken[-1]):
+        return taken
+    starts = [nodes[_from(each)] for each in taken]
+    first = min(
+        range(len(taken)),
+        key=lambda at: (not starts[at].is_site, starts[at].lon, starts[at].lat),
+    )
+    return taken[first:] + taken[:first]
 
 
 def _unbranched(legs: Sequence[Leg]) -> Iterator[Taken]:

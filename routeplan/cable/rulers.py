@@ -51,8 +51,9 @@ def bare_ruler(
     """
     Return the sheath ruler with undulation, spare cable and ends, but no joints.
 
-    Every spot, step and bound of a stretch is a knot, and each piece between knots is rounded to
-    a millimetre by itself, so that putting a joint at a spot moves nothing else.
+    Every spot, step, place it is entered at and bound of a stretch is a knot, and each piece
+    between knots is rounded to a millimetre by itself, so that a joint at a spot moves nothing
+    else.
 
     Parameters
     ----------
@@ -66,9 +67,9 @@ def bare_ruler(
         Cable beyond the first and the last chain value: an entry or a tail. [mm]
     """
     bounds = [s.start_mm for s in way.stretches] + [way.length_mm]
-    chain = np.unique(
-        np.array(bounds + [s.chain_mm for s in steps] + [s.chain_mm for s in way.spots])
-    )
+    entered = [passed.chain_mm for passed in way.passed if passed.is_entered]
+    stored = [s.chain_mm for s in steps] + [s.chain_mm for s in way.spots]
+    chain = np.unique(np.array(bounds + entered + stored))
     middle = 0.5 * (chain[1:] + chain[:-1])
     at = np.searchsorted(bounds, middle, side="right") - 1
     ratio = np.array([_undulation(s.placement, slack) for s in way.stretches])[at]

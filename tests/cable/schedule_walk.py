@@ -8,7 +8,7 @@ from dataclasses import replace
 from itertools import groupby, pairwise
 
 from routeplan.cable.colours import fibre_colours
-from routeplan.cable.model import FibreUse, Splice
+from routeplan.cable.model import Cable, FibreUse, Joint, Section, Splice
 from routeplan.cable.schedule import EXISTING, PANEL
 from routeplan.run.practice import CircuitOrder
 from tests.cable.small_plants import SmallPlant
@@ -111,37 +111,53 @@ def check_joints(plant: SmallPlant, rows: Sequence[Splice], *, fibres_per_tray: 
     """Every fibre of every end stands in its joint once, trays fill in order, counts agree."""
     by_joint = {key: list(of) for key, of in groupby(rows, key=lambda row: row.joint)}
     assert list(by_joint) == [joint.id for joint in plant.joints if joint.kind == "splice"]
-    cable_of = {section.id: section.cable for section in plant.sections}
-    makes = {cable.id: cable.make for cable in plant.cables}
-    count_of = {name: make.fibre_count for name, make in makes.items()}
     for joint in plant.joints:
-        here = by_joint[joint.id]
-        check_trays([row for row in here if row.kind != "express"], fibres_per_tray)
-        uncut = [row for row in here if row.kind == "express"]
-        assert [(row.tray, row.position) for row in uncut] == [
-            (0, number) for number in range(1, len(uncut) + 1)
-        ]
-        for row in uncut:
-            assert row.b is not None
-            assert replace(row.a, side="start") == row.b
-            assert (row.a.side, row.a.section in joint.opened) == ("end", True)
-        kinds = [row.kind for row in here]
-        assert kinds == sorted(kinds, key=["splice", "stored", "express"].index)
-        assert all((row.b is None) == (row.kind == "stored") for row in here)
-        outside = (EXISTING, PANEL)
-        ends = [e for row in here for e in (row.a, row.b) if e and e.section not in outside]
-        pieces = [(end.section, end.side) for end in joint.ends]
-        pieces += [(name, side) for name in joint.opened for side in ("start", "end")]
-        assert Counter((e.section, e.side, e.fibre) for e in ends) == Counter(
-            (section, side, fibre)
-            for section, side in pieces
-            for fibre in range(1, count_of[cable_of[section]] + 1)
+        check_joint_rows(
+            joint,
+            by_joint[joint.id],
+            sections=plant.sections,
+            cables=plant.cables,
+            fibres_per_tray=fibres_per_tray,
         )
-        for end in ends:
-            make = makes[end.cable]
-            assert (end.tube_colour, end.fibre_colour) == fibre_colours(
-                end.fibre, code=make.colour_code, fibres_per_tube=make.fibres_per_tube
-            )
+
+
+def check_joint_rows(
+    joint: Joint,
+    here: Sequence[Splice],
+    *,
+    sections: Sequence[Section],
+    cables: Sequence[Cable],
+    fibres_per_tray: int,
+) -> None:
+    """Hold the rows of one joint against its cable ends and what it enters."""
+    cable_of = {section.id: section.cable for section in sections}
+    makes = {cable.id: cable.make for cable in cables}
+    check_trays([row for row in here if row.kind != "express"], fibres_per_tray)
+    uncut = [row for row in here if row.kind == "express"]
+    assert [(row.tray, row.position) for row in uncut] == [
+        (0, number) for number in range(1, len(uncut) + 1)
+    ]
+    for row in uncut:
+        assert row.b is not None
+        assert replace(row.a, side="start") == row.b
+        assert (row.a.side, row.a.section in joint.opened) == ("end", True)
+    kinds = [row.kind for row in here]
+    assert kinds == sorted(kinds, key=["splice", "stored", "express"].index)
+    assert all((row.b is None) == (row.kind == "stored") for row in here)
+    outside = (EXISTING, PANEL)
+    ends = [e for row in here for e in (row.a, row.b) if e and e.section not in outside]
+    pieces = [(end.section, end.side) for end in joint.ends]
+    pieces += [(name, side) for name in joint.opened for side in ("start", "end")]
+    assert Counter((e.section, e.side, e.fibre) for e in ends) == Counter(
+        (section, side, fibre)
+        for section, side in pieces
+        for fibre in range(1, makes[cable_of[section]].fibre_count + 1)
+    )
+    for end in ends:
+        make = makes[end.cable]
+        assert (end.tube_colour, end.fibre_colour) == fibre_colours(
+            end.fibre, code=make.colour_code, fibres_per_tube=make.fibres_per_tube
+        )
 
 
 def check_trays(rows: Sequence[Splice], fibres_per_tray: int) -> None:
