@@ -12,6 +12,7 @@ from routeplan.light.attenuation import MeasuredPoint
 from routeplan.light.contributions import loss_lines, step_loss, unlike_joints
 from routeplan.light.fibres import find_fibre
 from routeplan.light.model import ExistingSpan, Glass, PartLoss, Path, SpliceStep, Step
+from routeplan.light.power import printed_db
 from routeplan.light.splices import fibre_mismatch
 
 if TYPE_CHECKING:
@@ -57,11 +58,14 @@ def losses_along_db(
     ----------
     .. [1] The budget's own lines: `routeplan.light.contributions`.
     """
+    unlike = {where: (one, other) for where, one, other in unlike_joints(path)}
 
     def step_db(step: Step) -> float:
         alone = replace(path, steps=(step,))
         lines = loss_lines(alone, wavelength_nm, practice=practice, measured=measured)
-        return sum(line.count * line.each_db for line in lines)
+        met = _mismatch(step, unlike, wavelength_nm)
+        own_db = sum(line.count * line.each_db for line in lines)
+        return own_db + sum(printed_db(loss.mean_db) for loss in met)
 
     return tuple(accumulate(map(step_db, path.steps)))
 

@@ -59,3 +59,6 @@ def test_unlike_fibre_loses_at_its_joint() -> None:
     assert any(line.item.startswith("mode-field mismatch") for line in budget.lines)
     assert levels[-1].worst_db == pytest.approx(budget.worst_db, abs=0.002)
     assert levels[2].nominal_db - levels[1].nominal_db > practice().splice_mean_db
+    losses = losses_along_db(way, 1550.0, practice=practice(), measured={})
+    assert losses[-1] == pytest.approx(budget.nominal_db, abs=0.002)
+    assert losses[1] - losses[0] > practice().splice_mean_db
