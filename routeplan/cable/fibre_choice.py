@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Collection, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from itertools import pairwise
 from typing import TypeAlias
@@ -105,7 +105,9 @@ def _one_by_one(strands: Sequence[Strand], taken: _Taken) -> tuple[tuple[int, ..
         if strand.wanted is not None:
             found.append((strand.wanted,) * len(strand.pieces))
             continue
-        fibres = _best(_costs([_free(taken, piece) for piece in strand.pieces]))
+        free = [_free(taken, piece) for piece in strand.pieces]
+        common = set.intersection(*free)
+        fibres = (min(common),) * len(free) if common else _best(_costs(free))
         if fibres is None:
             break
         found.append(fibres)
@@ -116,7 +118,7 @@ def _one_by_one(strands: Sequence[Strand], taken: _Taken) -> tuple[tuple[int, ..
     return tuple(found) if len(found) == len(strands) else None
 
 
-def _costs(free: Sequence[Sequence[int]]) -> list[dict[int, int]]:
+def _costs(free: Sequence[Collection[int]]) -> list[dict[int, int]]:
     """Return, for each free fibre on each piece, the fewest changes from there to the end."""
     costs: list[dict[int, int]] = []
     for fibres in reversed(free):
@@ -188,14 +190,14 @@ def _within(
             yield from _within(costs, (*begun, fibre), allowed - change, work)
 
 
-def _free(taken: _Taken, piece: tuple[str, Span | None]) -> list[int]:
+def _free(taken: _Taken, piece: tuple[str, Span | None]) -> set[int]:
     cable, span = piece
-    used = taken.spans[cable]
-    return [
+    used = {
         fibre
-        for fibre in range(1, taken.counts[cable] + 1)
-        if not used.get(fibre) or not any(_overlap(span, other) for other in used[fibre])
-    ]
+        for fibre, spans in taken.spans[cable].items()
+        if any(_overlap(span, other) for other in spans)
+    }
+    return set(range(1, taken.counts[cable] + 1)) - used
 
 
 def _overlap(one: Span | None, other: Span | None) -> bool:
