@@ -68,7 +68,7 @@ def cached_network(
         return kept
     network = build()
     with contextlib.suppress(OSError):
-        _store(network, place, stamp)
+        _store(network, place, stamp, mode=sources[0].stat().st_mode)
     return network
 
 
@@ -99,7 +99,7 @@ def _is_whole(network: Network) -> bool:
     )
 
 
-def _store(network: Network, place: Path, stamp: str) -> None:
+def _store(network: Network, place: Path, stamp: str, *, mode: int) -> None:
     text = {key: getattr(network, key) for key in _TEXT}
     arrays = {
         field.name: getattr(network, field.name)
@@ -112,6 +112,7 @@ def _store(network: Network, place: Path, stamp: str) -> None:
     try:
         with io.open(handle, "wb") as file:  # noqa: UP020
             np.savez(file, **arrays)
+        os.chmod(name, 0o666 & mode)  # noqa: PTH101
         os.replace(name, place)
     except BaseException:
         with contextlib.suppress(OSError):

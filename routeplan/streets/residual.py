@@ -10,7 +10,7 @@ import numpy as np
 
 from routeplan.streets.graph import Graph
 from routeplan.streets.model import Floats, Whole
-from routeplan.streets.search import NO_NODE, arcs_to, distances_to, guessed_cost
+from routeplan.streets.search import NO_NODE, arcs_to, distances_to, guessed_cost, least_arc
 from routeplan.streets.ways import tails_of
 
 __all__ = ["PairArcs", "least_pair"]
@@ -97,10 +97,10 @@ def _twin(graph: Graph, arc: int, tail: int) -> int:
     """Return the arc that runs along the same piece the other way."""
     head, piece = int(graph.row_node[arc]), int(graph.row_piece[arc])
     first, last = int(graph.row_first[head]), int(graph.row_first[head + 1])
-    own = first + np.flatnonzero(
-        (graph.row_piece[first:last] == piece) & (graph.row_node[first:last] == tail)
+    pieces, heads = graph.row_piece[first:last].tolist(), graph.row_node[first:last].tolist()
+    return next(
+        first + at for at in range(last - first) if pieces[at] == piece and heads[at] == tail
     )
-    return int(own[0])
 
 
 def _second_use(
@@ -218,9 +218,7 @@ def _real_arcs(left: _Left, before: Whole, source: int, target: int) -> list[int
     base = int(left.first[-1])
     arcs = []
     for tail, head in pairwise(nodes):
-        own = np.arange(int(first[tail]), int(first[tail + 1]))
-        own = own[heads[own] == head]
-        arc = int(own[np.argmin(prices[own])])
+        arc = least_arc(first, heads, prices, tail=tail, head=head)
         real = origins[arc - base] if arc >= base else left.stands_for.get(arc, arc)
         if real >= 0:
             arcs.append(real)

@@ -103,8 +103,9 @@ def arcs_to(graph: Graph, before: Whole, target: int, *, cost: Floats | None = N
 def least_arc(row_first: Whole, row_node: Whole, cost: Floats, *, tail: int, head: int) -> int:
     """Return the cheapest of the arcs between two neighbours."""
     first, last = int(row_first[tail]), int(row_first[tail + 1])
-    own = first + np.flatnonzero(row_node[first:last] == head)
-    return int(own[np.argmin(cost[own])])
+    heads, prices = row_node[first:last].tolist(), cost[first:last].tolist()
+    # Rows are so short that a plain loop is faster than arrays.
+    return min((prices[at], first + at) for at in range(last - first) if heads[at] == head)[1]
 
 
 def guessed_cost(graph: Graph, source: int, target: int) -> float:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections import Counter
+from dataclasses import replace
 
 import networkx as nx
 import numpy as np
@@ -13,8 +14,8 @@ from routeplan.streets.assemble import assembled, lines_from
 from routeplan.streets.best import best_way
 from routeplan.streets.costs import prices_of, street_costs
 from routeplan.streets.model import Network
-from routeplan.streets.steiner import exact_tree, near_tree
-from routeplan.streets.tree import site_tree
+from routeplan.streets.steiner import exact_tree, exact_work, near_tree
+from routeplan.streets.tree import EXACT_WORK_MAX, site_tree
 from routeplan.streets.ways import tails_of
 from tests.streets.independent import least_tree_cost
 from tests.streets.small_networks import drawn_network, node_graph, priced, random_sites
@@ -130,3 +131,15 @@ def test_sites_that_cannot_be_joined_are_named() -> None:
     sites = [("A", 10.0, 50.0), ("B", 10.001, 50.0), ("C", 10.1, 50.0)]
     with pytest.raises(InfeasibleError, match='C: cannot be reached from "A"'):
         site_tree(network, sites, prices=prices)
+
+
+@pytest.mark.parametrize(("sites", "edges", "nodes"), [(10, 10_000, 7_000), (7, 100_000, 65_000)])
+def test_the_promised_sizes_are_exact(sites: int, edges: int, nodes: int, nauru: Network) -> None:
+    """Ten sites at 10,000 streets and seven at 100,000 are within what is sought exactly."""
+    graph = node_graph(nauru, prices_of(nauru, street_costs()), [0, 1])
+    large = replace(
+        graph,
+        row_node=np.zeros(2 * edges, dtype=np.int32),
+        row_first=np.zeros(nodes + 1, dtype=np.int32),
+    )
+    assert exact_work(large, sites) <= EXACT_WORK_MAX
