@@ -22,7 +22,7 @@ from routeplan.run.defaults import AssumedValue, assumed_values, default_value
 from routeplan.run.model import Run
 from routeplan.run.practice import CircuitOrder
 from routeplan.verify import plan_checks
-from routeplan.verify_cable import closure_checks
+from routeplan.verify_cable import closure_checks, make_checks
 from routeplan.verify_light import light_warnings
 
 __all__ = ["CircuitPlan", "Plan", "assumptions", "one_fewer", "plan", "ports", "splices"]
@@ -94,6 +94,7 @@ def plan(run: Run, *, memo: Memo | None = None) -> Plan:
         checks=(
             *plan_checks(run, layout, circuits),
             *closure_checks(run, layout, counts),
+            *make_checks(run, ground, laid),
         ),
         warnings=(
             *run.warnings,

@@ -11,6 +11,7 @@ from typing import Any
 __all__ = [
     "InterfaceClass",
     "attenuator_steps_db",
+    "cable_makes",
     "colour_codes",
     "connector_grades",
     "fibre_types",
@@ -59,6 +60,12 @@ def interface_classes() -> dict[str, InterfaceClass]:
         if row.get("mate"):
             found.setdefault(name.rpartition("-")[0], light)
     return found
+
+
+@cache
+def cable_makes() -> dict[str, float]:
+    """Return the makes of cable of the table, with how much longer the fibre is in each. [-]"""
+    return {row["name"]: row["glass_over_sheath_ratio"] for row in _rows("cable_makes")}
 
 
 @cache

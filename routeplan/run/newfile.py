@@ -19,7 +19,13 @@ _SHOWN_NAMES = 30
 _EXAMPLES = {  # keys without a default, as they would be written
     "crs": '"EPSG:27700"',
     "background": "[]",
+    "terrain": "[]",
+    "layers": "[]",
     "cable.measured": "[ { wavelength_nm = 1310, attenuation_db_per_km = 0.33 } ]",
+    "cable.make": '"loose tube"',
+    "cable.metal": "false",
+    "cable.located": "false",
+    "cable.indoor_max_m": "15.0",
     "cable.terminate": '"circuits"',
     "joints.max_count": "40",
     "joints.closure_splices_max": "96",

@@ -141,6 +141,21 @@ class CableMake(Section):
     measured: Annotated[tuple[MeasuredAttenuation, ...], Strict(False)] = Field(
         default=(), description="Measured attenuation; replaces that of the fibre type."
     )
+    make: Name | None = Field(
+        default=None,
+        description="Make, a name of the table `cable_makes`; left out: not known. Unless given, "
+        "glass_over_sheath_ratio is its own.",
+    )
+    metal: bool | None = Field(
+        default=None, description="Whether metal is in it; left out: as its make."
+    )
+    located: bool = Field(
+        default=False, description="Whether something to find it by is laid with it."
+    )
+    indoor_max_m: Metres | None = Field(
+        default=None,
+        description="How far its jacket may be carried indoors; left out: as its make. [m]",
+    )
     terminate: Literal["circuits", "all"] = Field(
         default="circuits",
         description="Fibres that get a pigtail at the panels: those of circuits, or all.",

@@ -11,9 +11,9 @@ from pydantic import BaseModel, ValidationError
 
 from routeplan.errors import Problem, RunFileError
 from routeplan.run.defaults import MERGED_BY_PLACEMENT, Purpose, default_value, practice_rows
-from routeplan.run.names import connector_grades
+from routeplan.run.names import cable_makes, connector_grades
 from routeplan.run.optics import CircuitOrder, Interface, JointFigures, Panel, SectionFigures
-from routeplan.run.practice import CableMake, Practice, RunFile, RunHead
+from routeplan.run.practice import CableMake, LayerColumns, Practice, RunFile, RunHead
 from routeplan.run.runfile_checks import check_declared, refuse_unbuilt, wavelengths_of
 from routeplan.run.runfile_messages import note_errors
 from routeplan.run.trouble import Trouble
@@ -73,7 +73,7 @@ def declared_from_table(raw: Table, *, file: str, trouble: Trouble) -> Declared:
     merged = _merged(raw)
     declared = _validated(merged, file=file, trouble=trouble, given=given)
     check_declared(declared, file=file, trouble=trouble)
-    return _graded(declared)
+    return _made(_graded(declared))
 
 
 def _graded(declared: Declared) -> Declared:
@@ -86,6 +86,27 @@ def _graded(declared: Declared) -> Declared:
     loss = practice.loss.model_copy(update=named)
     given = declared.given | {f"loss.{key}" for key in named}
     return replace(declared, practice=practice.model_copy(update={"loss": loss}), given=given)
+
+
+def _made(declared: Declared) -> Declared:
+    """Return what was declared with the stranding of a make where one is named without its own."""
+    given = set(declared.given)
+
+    def made(cable: CableMake, path: str, above: str) -> CableMake:
+        key = "glass_over_sheath_ratio"
+        ratio = cable_makes().get(cable.make or "")
+        # A ratio of [cable] holds for the others, unless they name a make of their own.
+        is_own = f"{path}.make" in given
+        if ratio is None or f"{path}.{key}" in given or (not is_own and f"{above}.{key}" in given):
+            return cable
+        given.add(f"{path}.{key}")
+        return cable.model_copy(update={key: ratio})
+
+    cables = {
+        name: made(cable, f"cables.{name}", "cable") for name, cable in declared.cables.items()
+    }
+    cable = declared.cable and made(declared.cable, "cable", "cable")
+    return replace(declared, cable=cable, cables=cables, given=frozenset(given))
 
 
 def parsed_toml(content: bytes, *, file: str, trouble: Trouble) -> Table | None:

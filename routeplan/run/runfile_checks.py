@@ -8,7 +8,7 @@ from collections.abc import Iterator, Mapping
 from typing import TYPE_CHECKING, Any, TypeGuard
 
 from routeplan.errors import Problem, RunFileError
-from routeplan.run.names import colour_codes, fibre_types, interface_classes
+from routeplan.run.names import cable_makes, colour_codes, fibre_types, interface_classes
 from routeplan.run.optics import ANY_INTERFACE
 from routeplan.run.optics_checks import measured_problems, optics_problems
 from routeplan.run.practice import CableMake, CircuitOrder, Interface, Loss, Slack
@@ -153,6 +153,8 @@ def _cable_problems(where: str, cable: CableMake) -> Iterator[Problem]:
         )
     elif cable.fibre_type not in fibre_types():
         yield _unknown_name(f"{where}.fibre_type", "fibre type", cable.fibre_type, fibre_types())
+    if cable.make is not None and cable.make not in cable_makes():
+        yield _unknown_name(f"{where}.make", "make of cable", cable.make, tuple(cable_makes()))
     if cable.colour_code not in colour_codes():
         known = colour_codes()
         yield _unknown_name(f"{where}.colour_code", "colour code", cable.colour_code, known)
