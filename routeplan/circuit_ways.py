@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from bisect import bisect_left
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
@@ -97,11 +98,12 @@ def _along(
     for use in uses:
         cable = use.cable
         sections = [section for section in layout.sections if section.cable == cable]
+        ends = [section.end_chain_mm for section in sections]
         for spot in (spot for spot in ways[cable].spots if use.covers(spot.chain_mm)):
-            for section in sections:
-                if section.start_chain_mm <= spot.chain_mm <= section.end_chain_mm:
-                    anchor: Anchor = ("section", section.id)
-                    yield spot.name, WayPlace(anchor=anchor, fibre_type=types[cable])
+            number = bisect_left(ends, spot.chain_mm)
+            if number < len(ends) and sections[number].start_chain_mm <= spot.chain_mm:
+                anchor: Anchor = ("section", sections[number].id)
+                yield spot.name, WayPlace(anchor=anchor, fibre_type=types[cable])
 
 
 def _ends_of(use: FibreUse, cables: Mapping[str, Cable]) -> tuple[str, str]:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from bisect import bisect_left, bisect_right
 from collections.abc import Iterator
 
 import numpy as np
@@ -10,6 +11,7 @@ import numpy as np
 from routeplan.cable.colours import fibre_colours
 from routeplan.cable.layout import LaidCable
 from routeplan.cable.model import FibreEnd, Joint
+from routeplan.cable.way import Spot
 from routeplan.circuit_answers import changes, radio_figures, stretch_m, times
 from routeplan.ground.model import Crossing, Leg
 from routeplan.light.circuits import Closing
@@ -249,9 +251,15 @@ def _reach_kind(planned: Plan, joint: Joint) -> str | None:
         place = planned.ground.node(joint.node).place
         return place.kind if place else None
     laid = next(c for c in planned.laid if c.way.cable.id == joint.mark.cable)
-    spots = [s for s in laid.way.spots if s.chain_mm == joint.mark.chain_mm]
-    named = [spot.kind for spot in spots if spot.name == joint.reach_name]
+    spots, at = laid.way.spots, joint.mark.chain_mm
+    first = bisect_left(spots, at, key=_chain_mm)
+    here = spots[first : bisect_right(spots, at, lo=first, key=_chain_mm)]
+    named = [spot.kind for spot in here if spot.name == joint.reach_name]
     return next((kind for kind in named if kind != "assumed"), None)
+
+
+def _chain_mm(spot: Spot) -> int:
+    return spot.chain_mm
 
 
 def _splices(planned: Plan) -> Iterator[Row]:

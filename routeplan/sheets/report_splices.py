@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from itertools import groupby
 
 from routeplan.sheets.lookup import Row, row_at, rows_at, text_at, value_at, whole_at
 from routeplan.sheets.report_parts import Column, swatch, table_row, words
 from routeplan.sheets.text import count_text, length_text, number_text, safe
 
-__all__ = ["closures_html", "joint_place", "position_text", "runs_of_splices"]
+__all__ = ["closures_html", "joint_leg_place", "joint_place", "position_text", "runs_of_splices"]
 
 _DASH = "\N{EN DASH}"
 _SIDE_WORDS = {"start": "begins here", "end": "ends here"}
@@ -18,25 +18,31 @@ _SIDE_WORDS = {"start": "begins here", "end": "ends here"}
 def closures_html(document: Row) -> str:
     """Return the splice schedule; in print each closure starts a new page."""
     splices: dict[str, list[Row]] = {}
+    sections = {text_at(row, "name"): row for row in rows_at(document, "sections")}
     for row in rows_at(document, "splices"):
         splices.setdefault(text_at(row, "joint"), []).append(row)
     return "".join(
-        _closure(document, joint, splices.get(text_at(joint, "name"), []))
+        _closure(document, joint, splices.get(text_at(joint, "name"), []), sections)
         for joint in rows_at(document, "joints")
     )
 
 
 def joint_place(document: Row, joint: Row) -> str:
     """Return how to find a joint: where it is, and the nearest end of its leg along the way."""
+    return safe(joint_leg_place(document, joint))
+
+
+def joint_leg_place(document: Row, joint: Row) -> str:
+    """Return the same as text that is not yet fit for a page."""
     units = text_at(document, "units")
     ground_m = value_at(joint, "ground_m") or 0.0
     legs = rows_at(document, "legs")
     leg = next((row for row in legs if text_at(row, "name") == text_at(joint, "leg")), None)
     if leg is None:
-        return safe(text_at(joint, "node"))
+        return text_at(joint, "node")
     rest_m = (value_at(leg, "ground_m") or 0.0) - ground_m
     near_m, end = min((ground_m, text_at(leg, "from")), (rest_m, text_at(leg, "to")))
-    return f"{safe(length_text(near_m, units=units))} along the way from {safe(end)}"
+    return f"{length_text(near_m, units=units)} along the way from {end}"
 
 
 def position_text(joint: Row) -> str:
@@ -86,13 +92,13 @@ def _treatment(row: Row) -> str:
     return "straight through" if alike else "crossed: see rows"
 
 
-def _closure(document: Row, joint: Row, splices: Sequence[Row]) -> str:
+def _closure(document: Row, joint: Row, splices: Sequence[Row], sections: Mapping[str, Row]) -> str:
     name = safe(text_at(joint, "name"))
     facts = [
         ("Place", _place_words(joint)),
         ("How to get there", joint_place(document, joint)),
         ("Latitude, longitude", safe(position_text(joint))),
-        ("Cable ends", _ends(document, joint)),
+        ("Cable ends", _ends(sections, joint)),
         ("Work", _work(joint, splices)),
     ]
     listed = "".join(f"<div><dt>{word}</dt><dd>{text}</dd></div>" for word, text in facts if text)
@@ -110,8 +116,7 @@ def _place_words(joint: Row) -> str:
     return name
 
 
-def _ends(document: Row, joint: Row) -> str:
-    sections = {text_at(row, "name"): row for row in rows_at(document, "sections")}
+def _ends(sections: Mapping[str, Row], joint: Row) -> str:
     parts = []
     for end in rows_at(joint, "ends"):
         row = sections.get(text_at(end, "section"), {})
@@ -120,7 +125,9 @@ def _ends(document: Row, joint: Row) -> str:
         reach = f" ({'from' if side == 'end' else 'to'} {safe(other)})" if other else ""
         reel = f", reel {safe(text_at(row, 'reel'))}" if text_at(row, "reel") else ""
         name = safe(text_at(end, "section"))
-        parts.append(f"section {name}{reach}{reel} {_SIDE_WORDS.get(side, '')}")
+        at_m = value_at(row, "sheath_m") if side == "end" else 0.0
+        jacket = f", jacket {safe(length_text(at_m))}" if row else ""
+        parts.append(f"section {name}{reach}{reel} {_SIDE_WORDS.get(side, '')}{jacket}")
     for entered in _texts(joint.get("opened")):
         row = sections.get(entered, {})
         ends = f" (from {safe(text_at(row, 'from'))} to {safe(text_at(row, 'to'))})" if row else ""
