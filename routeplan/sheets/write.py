@@ -10,6 +10,7 @@ from pathlib import Path
 import numpy as np
 
 from routeplan.planning import Plan
+from routeplan.sheets.cards import cards_text
 from routeplan.sheets.columns import Json
 from routeplan.sheets.csv_text import csv_text
 from routeplan.sheets.document import plan_document
@@ -24,6 +25,7 @@ _compact = json.JSONEncoder(
 
 SHEET_NAMES = (
     *(entry.csv for entry in csv_tables()),
+    "cards.txt",
     "map.html",
     "report.html",
     "plan.json",
@@ -74,6 +76,7 @@ def make_sheets(planned: Plan, *, on_sheet: Callable[[str], None] | None = None)
     document = plan_document(planned)
     makers: dict[str, Callable[[], str]] = {
         **{entry.csv: partial(csv_text, document, entry) for entry in csv_tables()},
+        "cards.txt": partial(cards_text, document),
         "map.html": partial(map_html, document | {"background": _background(planned)}),
         "report.html": partial(report_html, document),
         "plan.json": partial(json_text, document),

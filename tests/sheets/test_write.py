@@ -22,6 +22,7 @@ PROMISED = {
     "stations.csv",
     "reels.csv",
     "panels.csv",
+    "cards.txt",
     "loss_budget.csv",
     "bill.csv",
     "checks.csv",
