@@ -25,7 +25,8 @@ from routeplan.cable.reel_models import BoughtSection
 from routeplan.cable.reels import one_joint_fewer
 from routeplan.cable.schedule import joint_splice_count
 from routeplan.cable.spans import LaidSpan, closure_cents, joint_cents
-from routeplan.cable.way import Spot, leg_at, positions_on
+from routeplan.cable.spots import Spot, kind_factor
+from routeplan.cable.way import leg_at, positions_on
 from routeplan.ground.model import Ground, Node
 from routeplan.run.model import Run
 from routeplan.units import cents_from_amount
@@ -134,6 +135,9 @@ def _node_joint(cable: LaidCable, chain_mm: int, node: Node, tally: _Tally, *, r
     leg, ground_mm = leg_at(cable.way, chain_mm)
     place = node.place
     fitness, factor = (place.joint, place.joint_cost_factor) if place else ("yes", 1.0)
+    factor *= kind_factor(
+        run.practice.joints.cost_factor_by_kind, place.kind if place else "assumed"
+    )
     costs = run.practice.costs
     tally.node_joints[node.id] = joint_id
     tally.bare_cents[joint_id] = closure_cents(fitness, factor, costs)

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import zlib
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 from itertools import pairwise
@@ -10,10 +9,11 @@ from itertools import pairwise
 import numpy as np
 
 from routeplan.cable.model import Cable, Millimetres
+from routeplan.cable.spots import Spot, spot_at, tie_key, weighed
 from routeplan.geodesy import is_turned
 from routeplan.ground.legs import position_at
 from routeplan.ground.model import Leg, Node, Stretch
-from routeplan.run.model import Floats, JointFitness, Place
+from routeplan.run.model import Floats
 from routeplan.run.practice import Practice
 from routeplan.units import mm_from_m
 
@@ -23,6 +23,7 @@ __all__ = [
     "Spot",
     "Way",
     "cable_way",
+    "crossing_zones",
     "existing_name",
     "is_within",
     "leg_at",
@@ -31,21 +32,8 @@ __all__ = [
 
 _NO_ASSUMED = frozenset({"bridge", "water", "indoor", "existing"})
 _NO_JOINT = frozenset({"bridge", "water", "existing"})
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Spot:
-    """A place on a cable's chain where the cable can be got at, declared or assumed."""
-
-    chain_mm: int
-    kind: str
-    name: str
-    fitness: JointFitness
-    cost_factor: float
-    loop_m: float | None
-    assumed: bool
-    tie_key: int
-    place: Place | None = None
+_KEPT_OFF = frozenset({"bridge", "water"})
+_NEIGHBOUR_MM = 10_000  # house rule: no crew puts a loop or a joint between crossings so near
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -127,10 +115,13 @@ def cable_way(
     )
     way = replace(way, spots=_merged(way.spots, list(_node_spots(way))))
     way = _unentered_on_existing(way)
+    joints = practice.joints
+    off_mm = mm_from_m(joints.keep_off_m or 0.0)
     way = replace(way, spots=_merged(way.spots, _assumed_poles(way)))
-    way = replace(way, spots=tuple(_unfit_where_forbidden(way)))
-    spacing_mm = max(1, mm_from_m(practice.joints.assumed_spacing_m))
-    return replace(way, spots=_merged(way.spots, _assumed_spots(way, spacing_mm)))
+    way = replace(way, spots=tuple(_unfit_where_forbidden(way, off_mm)))
+    spacing_mm = max(1, mm_from_m(joints.assumed_spacing_m))
+    spots = _merged(way.spots, _assumed_spots(way, spacing_mm, off_mm))
+    return replace(way, spots=weighed(spots, joints.cost_factor_by_kind))
 
 
 def _is_turned(placed: Sequence[tuple[Leg, bool, int]]) -> bool:
@@ -161,16 +152,15 @@ def _joined_stretches(placed: Sequence[tuple[Leg, bool, int]]) -> tuple[Stretch,
 
 def _crossings(placed: Sequence[tuple[Leg, bool, int]]) -> Iterator[ChainCrossing]:
     for item in placed:
-        for point in item[0].points:
-            if point.place.kind == "crossing":
-                at = _chain(item, point.ground_mm)
-                half = round((point.place.width_m or 0.0) * 500)
-                yield ChainCrossing(
-                    crosses=point.place.crosses or "road",
-                    name=point.place.name,
-                    start_mm=at - half,
-                    end_mm=at + half,
-                )
+        for crossing in item[0].crossings:
+            at = _chain(item, crossing.ground_mm)
+            half = round((crossing.width_m or 0.0) * 500)
+            yield ChainCrossing(
+                crosses=crossing.crosses,
+                name=crossing.name,
+                start_mm=at - half,
+                end_mm=at + half,
+            )
 
 
 def _declared_spots(item: tuple[Leg, bool, int]) -> Iterator[Spot]:
@@ -178,7 +168,7 @@ def _declared_spots(item: tuple[Leg, bool, int]) -> Iterator[Spot]:
     for point in leg.points if forward else reversed(leg.points):
         place = point.place
         if place.kind != "crossing":
-            yield _spot(place, _chain(item, point.ground_mm))
+            yield spot_at(place, _chain(item, point.ground_mm))
 
 
 def _passed(
@@ -193,7 +183,7 @@ def _node_spots(way: Way) -> Iterator[Spot]:
     for passed in way.passed:
         place = passed.node.place
         if place is not None and not passed.node.is_site:
-            yield _spot(place, passed.chain_mm)
+            yield spot_at(place, passed.chain_mm)
 
 
 def _unentered_on_existing(way: Way) -> Way:
@@ -208,36 +198,30 @@ def _unentered_on_existing(way: Way) -> Way:
     return replace(way, passed=tuple(passed))
 
 
-def _spot(place: Place, chain_mm: int) -> Spot:
-    return Spot(
-        chain_mm=chain_mm,
-        kind=place.kind,
-        name=place.name,
-        fitness=place.joint,
-        cost_factor=place.joint_cost_factor,
-        loop_m=place.loop_m,
-        assumed=False,
-        tie_key=_tie_key(place.lon, place.lat, place.name),
-        place=place,
-    )
-
-
-def _tie_key(lon: float, lat: float, name: str) -> int:
-    """Return a number that is a spot's own, whichever way the run is drawn."""
-    return zlib.crc32(f"{lon:.9f} {lat:.9f} {name}".encode())
-
-
-def _unfit_where_forbidden(way: Way) -> Iterator[Spot]:
+def _unfit_where_forbidden(way: Way, off_mm: int) -> Iterator[Spot]:
     """
     Yield the spots; none on a bridge, in water, on an existing span or a crossing is fit.
 
     Nor is one where the cable is entered at mid-span: it passes that closure uncut.
     """
-    forbidden = is_within(way, [spot.chain_mm for spot in way.spots], _NO_JOINT, crossings=True)
+    at = [spot.chain_mm for spot in way.spots]
+    within = is_within(way, at, _NO_JOINT, crossings=True)
+    forbidden = [one or other for one, other in zip(within, _is_near(way, at, off_mm), strict=True)]
     entered = {passed.chain_mm for passed in way.passed if passed.is_entered}
     for spot, banned in zip(way.spots, forbidden, strict=True):
         is_unfit = banned or spot.chain_mm in entered
         yield replace(spot, fitness="no") if is_unfit and spot.fitness != "no" else spot
+
+
+def _is_near(way: Way, chain_mm: Sequence[int], off_mm: int) -> list[bool]:
+    """Tell which chain values lie nearer than a distance to a bridge, water or a crossing."""
+    at = np.asarray(chain_mm, dtype=np.int64)
+    near = np.zeros(len(at), dtype=bool)
+    spans = [(s.start_mm, s.end_mm) for s in way.stretches if s.placement in _KEPT_OFF]
+    for start, end in (*spans, *((c.start_mm, c.end_mm) for c in way.crossings)):
+        near |= (start - off_mm < at) & (at < end + off_mm)
+    flags: list[bool] = (near & (off_mm > 0)).tolist()
+    return flags
 
 
 def is_within(
@@ -264,10 +248,32 @@ def is_within(
         touches = (stretch.start_mm <= at) & (at <= stretch.end_mm)
         (within if stretch.placement in placements else outside)[touches] = True
     within &= ~outside
-    for crossing in way.crossings if crossings else ():
-        within |= (crossing.start_mm <= at) & (at <= crossing.end_mm)
+    for start, end, _ in crossing_zones(way.crossings) if crossings else ():
+        within |= (start <= at) & (at <= end)
     flags: list[bool] = within.tolist()
     return flags
+
+
+def crossing_zones(crossings: Sequence[ChainCrossing]) -> list[tuple[int, int, str]]:
+    """
+    Return where crossings begin and end, and their names; neighbours are one.
+
+    The two tracks of a railway, or a road beside it, leave no room for a loop or a joint between.
+
+    Parameters
+    ----------
+    crossings
+        Crossings by where they begin.
+    """
+    zones: list[tuple[int, int, str]] = []
+    for one in crossings:
+        if zones and one.start_mm - zones[-1][1] <= _NEIGHBOUR_MM:
+            start, end, names = zones[-1]
+            name = names if one.name in names.split("; ") else f"{names}; {one.name}"
+            zones[-1] = (start, max(end, one.end_mm), name)
+        else:
+            zones.append((one.start_mm, one.end_mm, one.name))
+    return zones
 
 
 def _merged(spots: Sequence[Spot], more: Sequence[Spot]) -> tuple[Spot, ...]:
@@ -300,7 +306,7 @@ def _vertices_mm(way: Way) -> Millimetres:
     return np.concatenate(chains)
 
 
-def _assumed_spots(way: Way, spacing_mm: int) -> list[Spot]:
+def _assumed_spots(way: Way, spacing_mm: int, off_mm: int) -> list[Spot]:
     """Return spots that divide every gap longer than the spacing into the fewest equal parts."""
     fit = [0, *(spot.chain_mm for spot in way.spots if spot.fitness != "no"), way.length_mm]
     chains: list[int] = []
@@ -308,7 +314,8 @@ def _assumed_spots(way: Way, spacing_mm: int) -> list[Spot]:
         parts = -(-(end - begin) // spacing_mm)
         chains.extend(_shared_out(begin, end, parts, is_turned=way.is_turned))
     banned = is_within(way, chains, _NO_ASSUMED, crossings=True)
-    allowed = [at for at, is_banned in zip(chains, banned, strict=True) if not is_banned]
+    near = _is_near(way, chains, off_mm)
+    allowed = [at for at, *is_out in zip(chains, banned, near, strict=True) if not any(is_out)]
     aerial = [s for s in way.stretches if s.placement == "aerial"]
     on_poles = [at for at in allowed if any(s.start_mm <= at <= s.end_mm for s in aerial)]
     return [
@@ -339,7 +346,7 @@ def _assumed(way: Way, chains: Sequence[int], kind: str) -> list[Spot]:
             cost_factor=1.0,
             loop_m=None,
             assumed=True,
-            tie_key=_tie_key(lon, lat, kind),
+            tie_key=tie_key(lon, lat, kind),
         )
         for at, (lon, lat) in zip(chains, np.round(lonlat, 7).tolist(), strict=True)
     ]

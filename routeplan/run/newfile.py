@@ -28,6 +28,8 @@ _EXAMPLES = {  # keys without a default, as they would be written
     "cable.indoor_max_m": "15.0",
     "cable.terminate": '"circuits"',
     "joints.max_count": "40",
+    "joints.keep_off_m": "20.0",
+    "joints.cost_factor_by_kind": "{ pole = 2.0 }",
     "joints.closure_splices_max": "96",
     "joints.closure_ports": "6",
     "joints.max_section_m": "{ duct = 6000 }",

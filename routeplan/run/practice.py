@@ -48,6 +48,7 @@ __all__ = [
     "Loss",
     "MeasuredAttenuation",
     "Practice",
+    "ReachKind",
     "Reels",
     "RunFile",
     "RunHead",
@@ -59,6 +60,10 @@ AnyPlacement = Literal[
 ]
 OwnPlacement = Literal["aerial", "duct", "buried", "surface", "indoor", "bridge", "water"]
 
+
+ReachKind = Literal[
+    "handhole", "maintenance_hole", "pole", "cabinet", "pedestal", "building", "assumed"
+]
 
 FeatureKind = Literal["road", "rail", "water", "power", "pipeline", "boundary", "avoid", "permit"]
 
@@ -222,6 +227,14 @@ class Joints(Section):
         description="Longest section by placement; left out: no limit. [m]",
     )
     fibres_per_tray: Literal[12, 24] = Field(description="Splices a closure's tray holds. [-]")
+    keep_off_m: Metres | None = Field(
+        default=None,
+        description="How near no joint is put to a bridge, water or a crossing; left out: 0. [m]",
+    )
+    cost_factor_by_kind: Mapping[ReachKind, Annotated[float, Field(gt=0, le=1e4)]] = Field(
+        default_factory=dict,
+        description="A joint costs so many times more by kind of place; left out: as any. [-]",
+    )
     closure_splices_max: int | None = Field(
         default=None,
         ge=1,
