@@ -31,8 +31,9 @@ _INTRODUCTIONS = {  # what a reader has to know before the keys of a section of 
     "cable": "The default cable. `measured` is a list of tables, for example "
     "`measured = [ { wavelength_nm = 1310, attenuation_db_per_km = 0.33 } ]`: attenuation of "
     "the delivered cable, taken as typical and as maximum; `sigma_db_per_km` is 0 if left out.",
-    "cables.NAME": "Another cable, named NAME, for the leg in `legs` or for lines whose `cable` is "
-    "NAME. Keys left out are those of `[cable]`. One leg for each cable in this version.",
+    "cables.NAME": "Another cable, named NAME, along the legs in `legs`, one after the other, or "
+    "along lines whose `cable` is NAME. Keys left out are those of `[cable]`. It passes nodes and "
+    "sites uncut; two cables may take one leg. How: [fibres](fibres.md).",
     "slack": "What each figure does: [slack and rulers](slack_and_rulers.md).",
     "reels": "How they are chosen: [reels and joints](reels_and_joints.md).",
     "costs": "The default prices are invented, so that a first plan can weigh reels and joints; "
@@ -46,6 +47,8 @@ _INTRODUCTIONS = {  # what a reader has to know before the keys of a section of 
     "assumed where that differs from `[loss]`. If no joint ends up there a warning says so.",
     "section": "Measured attenuation of one section of cable, which goes before that of its cable. "
     "Plan once to learn the names of sections.",
+    "mark": "What is printed on the jacket of a reel that is there, where its section begins: "
+    "stations, cable ends and cards then show printed marks. Plan once to learn reels' names.",
     "interface.NAME": "An optical interface of your own, for circuits to name. Give its light as "
     "`wavelength_nm`, or as `wavelength_min_nm` and `wavelength_max_nm`; what may be lost as "
     "`channel_loss_db`, or as `tx_min_dbm` and `rx_sensitivity_dbm`. `channel_loss_db` alone is "
@@ -150,6 +153,7 @@ What `routeplan plan` writes. Same input, same bytes, on any day and in any fold
 
 _SHEET_TEXTS = {
     "plan.json": "everything, for programs",
+    "cards.txt": "a card for the lid of each closure, one page each",
     "map.html": "the map: one file that opens without a network",
     "report.html": "the report, made to be printed",
     LIST_NAME: "names and SHA-256 sums of these files; `sha256sum -c sheets.sha256` checks them",

@@ -9,6 +9,7 @@ from typing import Literal
 from routeplan.cable.assembly import fewer_joints, put_together
 from routeplan.cable.fibres import FibrePlan
 from routeplan.cable.layout import LaidCable, lay_cables
+from routeplan.cable.marks import mark_warnings
 from routeplan.cable.model import Layout, Splice
 from routeplan.cable.panels import Port, panel_ports
 from routeplan.cable.schedule import joint_splice_count, splice_rows
@@ -104,6 +105,7 @@ def plan(run: Run, *, memo: Memo | None = None) -> Plan:
             *_fibre_warnings(fibres),
             *light_warnings(run, layout, circuits),
         ),
+            *mark_warnings(run.marks, layout),
     )
 
 

@@ -92,6 +92,7 @@ def make_run(lines: Sequence[Line], places: Sequence[Place] = (), *, toml: str =
         panels=found.panels,
         joints=found.joints,
         sections=found.sections,
+        marks=found.marks,
         practice=found.practice,
         given=found.given,
         digest="",

@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from routeplan.run.optics import CircuitOrder, Interface, JointFigures, Panel, SectionFigures
-from routeplan.run.practice import CableMake, Practice
+from routeplan.run.practice import CableMake, JacketMark, LayerColumns, Practice
 
 __all__ = [
     "AREA_KINDS",
@@ -180,3 +180,6 @@ class Run:
     sections: tuple[SectionFigures, ...] = ()
     background: tuple[Floats, ...] = ()
     warnings: tuple[tuple[str, str], ...] = ()
+    marks: tuple[JacketMark, ...] = ()
+    terrain: tuple[RasterSource, ...] = ()
+    layers: tuple[LayerSource, ...] = ()

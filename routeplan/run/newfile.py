@@ -35,7 +35,14 @@ _EXAMPLES = {  # keys without a default, as they would be written
     "joints.max_section_m": "{ duct = 6000 }",
 }
 _OTHERWISE = ("loss.connector_grade",)  # instead of the keys before it
-_LISTS = ("panel", "joint", "section", "circuit")  # headings that stand once for each entry
+_LISTS = ("layer", "panel", "joint", "section", "mark", "circuit")  # one heading for each entry
+_LAYER = """\
+# Lines and areas the way may cross, in a file whose columns have names of their own:
+#   [[layer]]
+#   file = "roads.gpkg"
+#   kind = "road"                  # or rail, water, power, pipeline, boundary, avoid, permit
+#   class_column = "type"          # name_column, owner_column; kind_column and kinds
+"""
 _SITES_AND_JOINTS = """\
 # What is mated at a site, what the splices of one joint lose, what a section was measured at:
 # [[panel]]
@@ -48,6 +55,9 @@ _SITES_AND_JOINTS = """\
 # [[section]]
 # name = "S1"
 # measured = [ { wavelength_nm = 1310, attenuation_db_per_km = 0.33 } ]
+# [[mark]]
+# reel = "R1"                      # once it is there: what is printed where its section begins
+# start_m = 12.0                   # falling = true, where the marks fall along it
 """
 _OWN_INTERFACE = """\
 # An optical interface of your own, to be named by a circuit:

@@ -43,6 +43,7 @@ def optics_problems(declared: Declared) -> Iterator[Problem]:
     if declared.practice:
         yield from _joint_problems(declared.joints, declared.practice.loss)
     yield from _section_problems(declared.sections)
+    yield from _repeated("mark", [mark.reel for mark in declared.marks])
     for name, interface in declared.interfaces.items():
         yield from _interface_problems(f"interface.{name}", interface)
     names = [circuit.name for circuit in declared.circuits]

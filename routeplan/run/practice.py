@@ -42,6 +42,7 @@ __all__ = [
     "FeatureKind",
     "GroundRules",
     "Interface",
+    "JacketMark",
     "Joining",
     "Joints",
     "LayerColumns",
@@ -170,6 +171,16 @@ class CableMake(Section):
         max_length=1000,
         description="Legs a named cable takes, in order along it; it passes nodes and sites uncut.",
     )
+
+
+class JacketMark(Section):
+    """What is printed on the jacket of one reel's cable where its section begins."""
+
+    reel: Name = Field(description="Reel as the plan names it, for example R1.")
+    start_m: float = Field(
+        ge=0, le=1_000_000, description="Mark printed where its section begins. [m]"
+    )
+    falling: bool = Field(default=False, description="Whether marks fall along the section.")
 
 
 class Slack(Section):
@@ -376,6 +387,9 @@ class RunFile(RunHead):
     )
     section: Annotated[tuple[SectionFigures, ...], Strict(False)] = Field(
         default=(), description="Sections of cable whose attenuation was measured."
+    )
+    mark: Annotated[tuple[JacketMark, ...], Strict(False)] = Field(
+        default=(), description="Jacket marks of reels that are there, for every sheet."
     )
     circuit: Annotated[tuple[CircuitOrder, ...], Strict(False)] = Field(
         default=(), description="Circuits; none: one between the ends of the longest leg."

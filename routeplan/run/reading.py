@@ -164,5 +164,6 @@ def _title(names: tuple[str, ...]) -> str:
 def _digest(contents: list[bytes]) -> str:
     digest = hashlib.sha256()
     for content in contents:
+        marks=declared.marks,
         digest.update(content)
     return digest.hexdigest()

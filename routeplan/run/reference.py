@@ -14,6 +14,7 @@ __all__ = ["KeyRow", "key_rows", "run_file_schema", "toml_value"]
 _HEADINGS = {"cables": "cables.NAME", "interface": "interface.NAME"}
 _COMPLETE = (  # tables that make no sense without some of their keys
     "CircuitBend",
+    "JacketMark",
     "JointFigures",
     "MeasuredAttenuation",
     "Panel",

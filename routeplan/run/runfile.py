@@ -13,7 +13,7 @@ from routeplan.errors import Problem, RunFileError
 from routeplan.run.defaults import MERGED_BY_PLACEMENT, Purpose, default_value, practice_rows
 from routeplan.run.names import cable_makes, connector_grades
 from routeplan.run.optics import CircuitOrder, Interface, JointFigures, Panel, SectionFigures
-from routeplan.run.practice import CableMake, LayerColumns, Practice, RunFile, RunHead
+from routeplan.run.practice import CableMake, JacketMark, LayerColumns, Practice, RunFile, RunHead
 from routeplan.run.runfile_checks import check_declared, refuse_unbuilt, wavelengths_of
 from routeplan.run.runfile_messages import note_errors
 from routeplan.run.trouble import Trouble
@@ -44,6 +44,8 @@ class Declared:
     panels: tuple[Panel, ...] = ()
     joints: tuple[JointFigures, ...] = ()
     sections: tuple[SectionFigures, ...] = ()
+    marks: tuple[JacketMark, ...] = ()
+    layers: tuple[LayerColumns, ...] = ()
     given: frozenset[str] = frozenset()
 
 
@@ -228,6 +230,8 @@ def _validated(merged: Table, *, file: str, trouble: Trouble, given: frozenset[s
         panels=whole.panel,
         joints=whole.joint,
         sections=whole.section,
+        marks=whole.mark,
+        layers=whole.layer,
         given=given,
     )
 
@@ -248,6 +252,8 @@ def _sound_parts(merged: Table, error: ValidationError, *, given: frozenset[str]
         panels=_sound_list(Panel, merged.get("panel")),
         joints=_sound_list(JointFigures, merged.get("joint")),
         sections=_sound_list(SectionFigures, merged.get("section")),
+        marks=_sound_list(JacketMark, merged.get("mark")),
+        layers=_sound_list(LayerColumns, merged.get("layer")),
         given=given,
     )
 

@@ -57,7 +57,14 @@ _NESTED: dict[str, type[BaseModel]] = {  # tables within the entries of a sectio
     "circuit.part": CircuitPart,
     "circuit.bend": CircuitBend,
 }
-_CALLED = {"circuit": "name", "panel": "site", "joint": "place", "section": "name"}
+_CALLED = {
+    "circuit": "name",
+    "panel": "site",
+    "joint": "place",
+    "section": "name",
+    "mark": "reel",
+    "layer": "file",
+}
 _ENTRIES = tuple(f"{name} " for name in _CALLED)
 
 

@@ -99,7 +99,9 @@ def _end_line(end: Row, sections: Mapping[str, Row], *, units: str) -> str:
     way = "from" if side == "end" else "to"
     reel = f", reel {plain(text_at(row, 'reel'))}" if text_at(row, "reel") else ""
     at = plain(length_text(at_m, units=units))
-    return f"{plain(name)} {way} {plain(other)}{reel}: its {side}, at {at} of its jacket"
+    mark_m = value_at(end, "jacket_mark_m")
+    mark = "" if mark_m is None else f", marked {plain(length_text(mark_m, units=units))}"
+    return f"{plain(name)} {way} {plain(other)}{reel}: its {side}, at {at} of its jacket{mark}"
 
 
 def _fibre_line(row: Row) -> str:

@@ -10,6 +10,7 @@ import numpy as np
 
 from routeplan.cable.colours import fibre_colours
 from routeplan.cable.layout import LaidCable
+from routeplan.cable.marks import printed_mark_mm, printed_marks
 from routeplan.cable.model import FibreEnd, Joint
 from routeplan.cable.way import Spot
 from routeplan.circuit_answers import changes, radio_figures, stretch_m, times
@@ -58,7 +59,7 @@ def plan_document(planned: Plan) -> dict[str, Json]:
         "sections": list(_sections(planned)),
         "reels": list(_reels(planned)),
         "layout": _layout(planned),
-        "joints": [_joint(planned, joint) for joint in planned.layout.joints],
+        "joints": list(_joints(planned)),
         "splices": list(_splices(planned)),
         "panels": list(_panels(planned)),
         "circuits": [_circuit(planned, circuit) for circuit in planned.circuits],
@@ -222,7 +223,21 @@ def _layout(planned: Plan) -> Row:
     )
 
 
-def _joint(planned: Plan, joint: Joint) -> Row:
+def _joints(planned: Plan) -> Iterator[Row]:
+    layout = planned.layout
+    marks = printed_marks(planned.run.marks, layout)
+    lengths_mm = {section.id: section.sheath_mm for section in layout.sections}
+    for joint in layout.joints:
+        ends: list[Json] = []
+        for end in joint.ends:
+            at_mm = lengths_mm[end.section] if end.side == "end" else 0
+            mark_mm = printed_mark_mm(marks, end.section, at_mm)
+            mark_m = None if mark_mm is None else m_from_mm(mark_mm)
+            ends.append(row_of("ends", end, jacket_mark_m=mark_m))
+        yield _joint(planned, joint, ends)
+
+
+def _joint(planned: Plan, joint: Joint, ends: list[Json]) -> Row:
     ground = planned.ground
     leg = next(leg for leg in ground.legs if leg.id == joint.leg)
     return shaped(
@@ -240,7 +255,7 @@ def _joint(planned: Plan, joint: Joint) -> Row:
             "assumed": joint.assumed,
             "splice_count": planned.splice_counts[joint.id],
             "cost": amount_from_cents(joint.cost_cents),
-            "ends": [{"section": end.section, "side": end.side} for end in joint.ends],
+            "ends": ends,
             "opened": list(joint.opened),
         },
     )

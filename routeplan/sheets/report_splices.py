@@ -127,6 +127,8 @@ def _ends(sections: Mapping[str, Row], joint: Row) -> str:
         name = safe(text_at(end, "section"))
         at_m = value_at(row, "sheath_m") if side == "end" else 0.0
         jacket = f", jacket {safe(length_text(at_m))}" if row else ""
+        mark_m = value_at(end, "jacket_mark_m")
+        jacket += "" if mark_m is None else f", marked {safe(length_text(mark_m))}"
         parts.append(f"section {name}{reach}{reel} {_SIDE_WORDS.get(side, '')}{jacket}")
     for entered in _texts(joint.get("opened")):
         row = sections.get(entered, {})

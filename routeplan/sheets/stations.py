@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
 from routeplan.cable.layout import LaidCable
+from routeplan.cable.marks import printed_mark_mm, printed_marks
 from routeplan.cable.model import Millimetres, Section
 from routeplan.cable.rulers import readings
 from routeplan.cable.way import positions_on
@@ -126,6 +127,7 @@ def _leg_rows(
         "section": at_section,
         "section_m": [None if mm is None else mm / 1000 for mm in section_mm],
         "lon": (np.round(lonlat[:, 0], 9) + 0.0).tolist(),
+        "jacket_mark_m": _printed(planned, at_section, section_mm),
         "lat": (np.round(lonlat[:, 1], 9) + 0.0).tolist(),
         "height_m": [
             None if unknown else height
@@ -140,6 +142,18 @@ def _leg_rows(
 
 
 def _named(marks: Mapping[int, list[_Mark]], chain: Millimetres) -> dict[str, list[Json]]:
+def _printed(planned: Plan, sections: Sequence[Json], along_mm: Sequence[int | None]) -> list[Json]:
+    """Return the mark printed on the jacket at each station, where its reel's are known."""
+    if not planned.run.marks:
+        return [None] * len(along_mm)
+    known = printed_marks(planned.run.marks, planned.layout)
+    found = (
+        printed_mark_mm(known, None if section is None else str(section), at)
+        for section, at in zip(sections, along_mm, strict=True)
+    )
+    return [None if mark is None else mark / 1000 for mark in found]
+
+
     kinds: list[Json] = []
     names: list[Json] = []
     reaches: list[Json] = []

@@ -171,6 +171,7 @@ _TABLES = (
             _LON,
             _LAT,
             metres_column("height_m", "Height.", may_be_null=True),
+            metres_column("jacket_mark_m", "Mark printed on the jacket there.", may_be_null=True),
         ),
     ),
     Table(
@@ -235,6 +236,7 @@ _TABLES = (
         columns=(
             text_column("section", "Section."),
             choice_column("side", "End of the section", "start", "end"),
+            metres_column("jacket_mark_m", "Mark printed on the jacket there.", may_be_null=True),
         ),
     ),
     Table(

@@ -44,7 +44,8 @@ CIRCUIT = '[[circuit]]\nname = "P"\nfrom = "A"\nto = "B"\n'
         (
             "[joints]\nzzz = 1",
             "run.toml, joints.zzz: is not a known key "
-            "(limit assumed_spacing_m, max_count, max_section_m, fibres_per_tray).",
+            "(limit assumed_spacing_m, max_count, max_section_m, fibres_per_tray, keep_off_m, "
+            "cost_factor_by_kind, closure_splices_max, closure_ports).",
         ),
         (
             '[slack]\nentry_m = "20"',

@@ -118,7 +118,7 @@ def test_heads_have_units_once() -> None:
     assert csv_heads(table("stations"), currency="EUR") == [
         *("leg", "cable", "kind", "name", "reach_kind", "placement"),
         *("ground_m", "sheath_from_m", "sheath_to_m", "glass_from_m", "glass_to_m"),
-        *("section", "section_m", "lon_deg", "lat_deg", "height_m"),
+        *("section", "section_m", "lon_deg", "lat_deg", "height_m", "jacket_mark_m"),
     ]
     assert csv_heads(table("reels"), currency="EUR")[-2:] == ["cost_EUR", "sections"]
     assert csv_heads(table("budget_lines"), currency="EUR") == [

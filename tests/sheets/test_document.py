@@ -308,7 +308,10 @@ def test_duct_run_by_hand(duct_plan: Plan) -> None:
         "stopped_by": "",
     }
     (joint,) = document["joints"]
-    ends = [{"section": "S1", "side": "end"}, {"section": "S2", "side": "start"}]
+    ends = [
+        {"section": "S1", "side": "end", "jacket_mark_m": None},
+        {"section": "S2", "side": "start", "jacket_mark_m": None},
+    ]
     assert joint.pop("lon") == pytest.approx(10 + math.degrees(1200 / 6378137.0), abs=2e-9)
     assert joint == {
         "name": "J1",
