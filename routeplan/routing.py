@@ -6,7 +6,7 @@ import contextlib
 import os
 import tempfile
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -263,7 +263,9 @@ def _add_plans(
                 for mark in marks
                 if any(abs(mark.lon - e[0]) + abs(mark.lat - e[1]) < 1e-5 for e in ends)
             ]
-            file.write_text(collection_text(collection_of([named], own)), "utf-8")
+            ends_m = (0.0, named.way.length_m)  # as one leg, from end to end
+            whole = replace(named, way=replace(named.way, via_m=ends_m))
+            file.write_text(collection_text(collection_of([whole], own)), "utf-8")
             row.update(_planned(file))
 
 

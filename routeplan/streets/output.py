@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 
@@ -16,6 +17,7 @@ __all__ = [
     "SiteMark",
     "collection_of",
     "collection_text",
+    "leg_names",
     "line_between",
     "rows_of",
     "tree_ways",
@@ -85,29 +87,62 @@ def collection_text(collection: Mapping[str, object]) -> str:
     return f'{{"type":"FeatureCollection","features":[\n{lines}\n]}}\n'
 
 
+def leg_names(named: NamedWay) -> list[str]:
+    """Return the names of a way's legs: one from each of its sites to the next."""
+    count = len(named.way.via_m) - 1
+    if count < 2:
+        return [named.name]
+    return [f"{named.name} ({number})" for number in range(1, count + 1)]
+
+
 def _lines(named: NamedWay, others: Sequence[Floats]) -> list[dict[str, object]]:
+    """Return the lines of a way; one through several sites is a leg a site, and one cable."""
     way = named.way
+    names = leg_names(named)
+    marks = [0.0, *way.via_m[1:-1], way.length_m] if len(names) > 1 else [0.0, way.length_m]
     found = []
-    groups = stretches(way)
-    bounds = [0.0, *(_clear_of(way, end, others) for _, _, end in groups[:-1]), way.length_m]
-    for number, (placement, _, _) in enumerate(groups):
+    for leg, within in zip(names, pairwise(marks), strict=True):
+        known: dict[str, object] = {"leg": leg}
+        if len(names) > 1:
+            known["cable"] = named.name
+        found.extend(_leg_lines(way, known, within, others))
+    return found
+
+
+def _leg_lines(
+    way: Way, known: dict[str, object], within: tuple[float, float], others: Sequence[Floats]
+) -> list[dict[str, object]]:
+    """Return the lines of one leg of a way, a stretch of one placement each."""
+    begin_m, end_m = within
+    groups = [
+        (placement, max(from_m, begin_m), min(to_m, end_m))
+        for placement, from_m, to_m in stretches(way)
+        if min(to_m, end_m) > max(from_m, begin_m)
+    ]
+    inner = (_clear_of(way, to_m, others, within=within) for _, _, to_m in groups[:-1])
+    bounds = [begin_m, *inner, end_m]
+    leg = known["leg"]
+    found = []
+    for number, (placement, from_m, to_m) in enumerate(groups):
         line = line_between(way.lonlat, bounds[number], bounds[number + 1])
-        names = _street_names(way, groups[number][1], groups[number][2])
-        known: dict[str, object] = {
-            "name": named.name if len(groups) == 1 else f"{named.name} {number + 1}",
+        names = _street_names(way, from_m, to_m)
+        own: dict[str, object] = {
+            "name": leg if len(groups) == 1 else f"{leg} {number + 1}",
             "placement": placement,
-            "leg": named.name,
+            **known,
         }
         if names:
-            known["streets"] = names
-        found.append(_feature(known, "LineString", _rounded(line)))
+            own["streets"] = names
+        found.append(_feature(own, "LineString", _rounded(line)))
     return found
 
 
 _SHIFTS_M = (0.0, *(sign * _CLEAR_M * step for step in range(1, 9) for sign in (1, -1)))
 
 
-def _clear_of(way: Way, along_m: float, others: Sequence[Floats]) -> float:
+def _clear_of(
+    way: Way, along_m: float, others: Sequence[Floats], *, within: tuple[float, float]
+) -> float:
     """
     Return where one placement ends and the next begins, off the line of every other way.
 
@@ -118,7 +153,7 @@ def _clear_of(way: Way, along_m: float, others: Sequence[Floats]) -> float:
 
     for shift_m in _SHIFTS_M:
         trial = along_m + shift_m
-        if not 0.0 < trial < way.length_m:
+        if not within[0] < trial < within[1]:
             continue
         point = line_between(way.lonlat, trial, trial)[:1]
         if all(

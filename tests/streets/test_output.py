@@ -22,6 +22,7 @@ from routeplan.streets.output import (
     SiteMark,
     collection_of,
     collection_text,
+    leg_names,
     rows_of,
     tree_ways,
 )
@@ -196,3 +197,23 @@ def test_the_drawing_fetches_nothing_and_runs_nothing(helsinki: Network) -> None
     assert not re.search(r"(src|href)=|https?://|url\(", page)
     assert page.count("&lt;script&gt;") >= 4
     assert f"{way.length_m:,.0f}" in page
+
+
+def test_a_way_through_a_site_is_planned_as_two_legs_and_one_cable(tmp_path: Path) -> None:
+    """The site between is a node, no leg runs past it, and one cable goes through uncut."""
+    network = long_street()
+    sites = [("A", 10.0, 50.0), ("C", 10.01, 50.001), ("B", 10.02, 50.0)]
+    way = best_way(network, sites, prices=prices_of(network, street_costs()))
+    marks = [SiteMark(name=name, lon=lon, lat=lat) for name, lon, lat in sites]
+    named = NamedWay(name="Way", way=way, reach=reach_points(network, way))
+    file = tmp_path / "route.geojson"
+    file.write_text(collection_text(collection_of([named], marks)), "utf-8")
+    planned = plan(read_run(file))
+    assert leg_names(named) == ["Way (1)", "Way (2)"]
+    assert [leg.name for leg in planned.ground.legs] == leg_names(named)
+    assert [cable.name for cable in planned.layout.cables] == ["Way"]
+    ends = [(planned.ground.node(leg.start).name, planned.ground.node(leg.end).name)
+            for leg in planned.ground.legs]  # fmt: skip
+    assert ends == [("A", "C"), ("C", "B")]
+    measured_m = sum(leg.ellipsoid_m for leg in planned.ground.legs)
+    assert measured_m == pytest.approx(way.length_m, abs=0.001)
