@@ -16,6 +16,7 @@ from routeplan.cable.schedule import joint_splice_count, splice_rows
 from routeplan.check import Check
 from routeplan.circuits import CircuitPlan, circuit_fibres, joint_figures, light_circuits
 from routeplan.errors import InputError, Problem
+from routeplan.ground.heights import assumed_heights
 from routeplan.ground.legs import lay_ground
 from routeplan.ground.model import Ground
 from routeplan.memo import Memo, remembered, swept
@@ -74,7 +75,8 @@ def plan(run: Run, *, memo: Memo | None = None) -> Plan:
     """
     swept(memo)
     ground = remembered(
-        memo, ("ground", run.lines, run.places, run.placement, run.crs, run.practice.joining),
+        memo, ("ground", run.lines, run.places, run.areas, run.placement, run.crs, run.terrain,
+               run.layers, run.practice.joining, run.practice.ground),
         lambda: lay_ground(run),
     )  # fmt: skip
     orders, order_warnings = _orders(run, ground)
@@ -103,9 +105,9 @@ def plan(run: Run, *, memo: Memo | None = None) -> Plan:
             *order_warnings,
             *(warning for cable in laid for warning in cable.warnings),
             *_fibre_warnings(fibres),
+            *mark_warnings(run.marks, layout),
             *light_warnings(run, layout, circuits),
         ),
-            *mark_warnings(run.marks, layout),
     )
 
 
@@ -228,12 +230,4 @@ def _assumed_ground(planned: Plan) -> Iterator[AssumedValue]:
                 source="joints.assumed_spacing_m; vertices of an aerial stretch without poles",
                 reason="no place fit for a joint is declared there; find real ones on the ground",
             )
-    for leg in ground.legs:
-        if leg.heights_m is None:
-            yield AssumedValue(
-                name=f"heights of leg {leg.name}",
-                value="none",
-                unit="m",
-                source="geometry",
-                reason="the geometry has no heights: measured on the ellipsoid, without slope",
-            )
+    yield from assumed_heights(planned.run, ground)

@@ -6,6 +6,7 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from itertools import pairwise
 
+from routeplan.cable.crossed import crossing_zones
 from routeplan.cable.way import Spot, Way, is_within
 from routeplan.ground.model import Stretch
 from routeplan.run.practice import Slack
@@ -191,19 +192,18 @@ def _crossing_loops(way: Way, slack: Slack) -> Iterator[Step]:
     Yield a loop on each side of everything that takes one: a bridge, rail, water.
 
     A bridge, or water that the cable lies in, is a stretch; a declared crossing that it meets is
-    the same crossing and counts once.
+    the same crossing and counts once. So are crossings a few metres apart, as of two tracks.
     """
     spans = [s for s in way.stretches if s.placement in _LOOP_STRETCHES]
     for span in spans:
         for at in (span.start_mm, span.end_mm):
             yield from _step(at, slack.crossing_loop_m, "loop", span.placement)
-    for crossing in way.crossings:
-        start, end = crossing.start_mm, crossing.end_mm
-        counted = any(s.start_mm <= end and start <= s.end_mm for s in spans)
-        if crossing.crosses in _LOOP_CROSSES and not counted:
+    looped = [one for one in way.crossings if one.crosses in _LOOP_CROSSES]
+    for start, end, names in crossing_zones(looped):
+        if not any(s.start_mm <= end and start <= s.end_mm for s in spans):
             for at in (start, end):
                 inside = min(max(at, 0), way.length_mm)
-                yield from _step(inside, slack.crossing_loop_m, "loop", crossing.name)
+                yield from _step(inside, slack.crossing_loop_m, "loop", names)
 
 
 def _entered_loops(way: Way, slack: Slack) -> Iterator[Step]:

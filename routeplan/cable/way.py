@@ -8,6 +8,7 @@ from itertools import pairwise
 
 import numpy as np
 
+from routeplan.cable.crossed import ChainCrossing, crossing_zones
 from routeplan.cable.model import Cable, Millimetres
 from routeplan.cable.spots import Spot, spot_at, tie_key, weighed
 from routeplan.geodesy import is_turned
@@ -18,12 +19,10 @@ from routeplan.run.practice import Practice
 from routeplan.units import mm_from_m
 
 __all__ = [
-    "ChainCrossing",
     "Passed",
     "Spot",
     "Way",
     "cable_way",
-    "crossing_zones",
     "existing_name",
     "is_within",
     "leg_at",
@@ -33,17 +32,6 @@ __all__ = [
 _NO_ASSUMED = frozenset({"bridge", "water", "indoor", "existing"})
 _NO_JOINT = frozenset({"bridge", "water", "existing"})
 _KEPT_OFF = frozenset({"bridge", "water"})
-_NEIGHBOUR_MM = 10_000  # house rule: no crew puts a loop or a joint between crossings so near
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class ChainCrossing:
-    """Something the cable crosses, from edge to edge."""
-
-    crosses: str
-    name: str
-    start_mm: int
-    end_mm: int
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -252,28 +240,6 @@ def is_within(
         within |= (start <= at) & (at <= end)
     flags: list[bool] = within.tolist()
     return flags
-
-
-def crossing_zones(crossings: Sequence[ChainCrossing]) -> list[tuple[int, int, str]]:
-    """
-    Return where crossings begin and end, and their names; neighbours are one.
-
-    The two tracks of a railway, or a road beside it, leave no room for a loop or a joint between.
-
-    Parameters
-    ----------
-    crossings
-        Crossings by where they begin.
-    """
-    zones: list[tuple[int, int, str]] = []
-    for one in crossings:
-        if zones and one.start_mm - zones[-1][1] <= _NEIGHBOUR_MM:
-            start, end, names = zones[-1]
-            name = names if one.name in names.split("; ") else f"{names}; {one.name}"
-            zones[-1] = (start, max(end, one.end_mm), name)
-        else:
-            zones.append((one.start_mm, one.end_mm, one.name))
-    return zones
 
 
 def _merged(spots: Sequence[Spot], more: Sequence[Spot]) -> tuple[Spot, ...]:

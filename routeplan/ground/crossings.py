@@ -3,8 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
-from typing import Literal
+from dataclasses import replace
 
 import numpy as np
 import shapely
@@ -30,8 +29,8 @@ from routeplan.ground.crossing_segments import (
     near_features,
     near_segments,
 )
-from routeplan.ground.features import FeatureKind, FeatureLayer, feature_layer
-from routeplan.ground.model import Crossing, Leg
+from routeplan.ground.features import FeatureLayer, feature_layer
+from routeplan.ground.model import Crossing, FoundCrossing, How, Leg
 from routeplan.run.model import Area, Floats
 
 __all__ = [
@@ -39,10 +38,11 @@ __all__ = [
     "ALONG_DISTANCE_M",
     "ALONG_LENGTH_M",
     "FoundCrossing",
-    "How",
     "areas_layer",
     "crossings_of",
     "find_crossings",
+    "known_crossings",
+    "not_got_past",
 ]
 
 # House rules: a cable within a verge's width of a line, for longer than it takes to cross it.
@@ -51,49 +51,11 @@ ALONG_LENGTH_M = 50.0
 ALONG_ANGLE_DEG = 20.0
 
 _PHYSICAL = ("road", "rail", "water", "power", "pipeline")  # what a cable has to get past
-
-How = Literal["crosses", "touches", "along", "inside"]
+_PATHS = ("footway", "path", "steps", "cycleway", "bridleway", "pedestrian")
 
 _NONE = np.zeros(0, dtype=np.int64)
 
 Intervals = tuple[Whole, Whole, Floats, Floats]
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class FoundCrossing:
-    """
-    A place where a leg meets a feature, or a length that it shares with one.
-
-    `how` is `crosses` (from one side of a line to the other), `touches` (it meets it and stays on
-    one side, or either ends there), `along` (near and nearly parallel) or `inside` (an area).
-    `start_mm` and `end_mm` are ground stations of the leg, equal for a point; `angle_deg` is
-    between leg and line, 0 to 90, None where it means nothing. `feature` is the number of the
-    feature in its layer. `lon` and `lat` are of the middle.
-    """
-
-    leg: str
-    kind: FeatureKind
-    how: How
-    feature_class: str
-    name: str
-    owner: str
-    start_mm: int
-    end_mm: int
-    angle_deg: float | None
-    lon: float
-    lat: float
-    file: str
-    feature: int
-
-    @property
-    def length_mm(self) -> int:
-        """Ground length shared with the feature. [mm]"""
-        return self.end_mm - self.start_mm
-
-    @property
-    def ask(self) -> str:
-        """Who has to be asked: the owner, else the name, else what it is."""
-        return self.owner or self.name or self.feature_class or self.kind
 
 
 def find_crossings(
@@ -266,13 +228,17 @@ def areas_layer(areas: Sequence[Area]) -> FeatureLayer:
 
 
 def crossings_of(
-    found: Sequence[FoundCrossing], declared: Sequence[Crossing] = (), *, apart_m: float = 15.0
+    found: Sequence[FoundCrossing],
+    declared: Sequence[Crossing] = (),
+    *,
+    apart_m: float = 15.0,
+    line_width_m: float | None = None,
 ) -> tuple[Crossing, ...]:
     """
     Return what was found as crossings of a leg, less what the planner declared already.
 
     Those are the lines crossed and the water gone through. Water that is an area has the length
-    inside as its width, and takes the place of a river's line in it; a line has no width.
+    inside as its width, and takes the place of a river's line in it.
 
     Parameters
     ----------
@@ -283,25 +249,81 @@ def crossings_of(
         own half width and `apart_m`.
     apart_m
         How far a declared crossing may lie off; house rule: the width of a road. [m]
+    line_width_m
+        How wide a line is, square to it; None: not known. At a slant the leg is longer in it.
+        Footpaths have no width. [m]
     """
-    crossed = [
-        one
-        for one in found
-        if one.kind in _PHYSICAL and one.how in ("crosses", "inside") and not _is_in(one, found)
-    ]
     return tuple(
         Crossing(
             leg=one.leg,
-            name=one.name,
+            name=one.name or _called(one),
             crosses=one.kind,
             ground_mm=(one.start_mm + one.end_mm) // 2,
-            width_m=one.length_mm / 1000.0 if one.how == "inside" else None,
+            width_m=one.length_mm / 1000.0 if one.how == "inside" else _width_m(one, line_width_m),
             lon=one.lon,
             lat=one.lat,
+            is_declared=False,
+            met=one,
         )
-        for one in crossed
+        for one in _got_past(found)
         if not any(_stands_for(known, one, apart_m) for known in declared)
     )
+
+
+def known_crossings(
+    found: Sequence[FoundCrossing], declared: Sequence[Crossing], *, apart_m: float = 15.0
+) -> tuple[Crossing, ...]:
+    """
+    Return declared crossings, each with the nearest found one that it stands for.
+
+    Parameters
+    ----------
+    found
+        What was found.
+    declared
+        Declared crossings.
+    apart_m
+        How far a declared crossing may lie off. [m]
+    """
+    passed = _got_past(found)
+    known = []
+    for each in declared:
+        own = [one for one in passed if _stands_for(each, one, apart_m)]
+        nearest = min(own, key=lambda one: _off_mm(each, one), default=None)
+        known.append(replace(each, met=nearest))
+    return tuple(known)
+
+
+def not_got_past(found: Sequence[FoundCrossing]) -> tuple[FoundCrossing, ...]:
+    """
+    Return what legs touch, run along or go through without having to get past it.
+
+    Parameters
+    ----------
+    found
+        What was found.
+    """
+    return tuple(one for one in found if not _is_physical(one))
+
+
+def _got_past(found: Sequence[FoundCrossing]) -> list[FoundCrossing]:
+    return [one for one in found if _is_physical(one) and not _is_in(one, found)]
+
+
+def _is_physical(one: FoundCrossing) -> bool:
+    return one.kind in _PHYSICAL and one.how in ("crosses", "inside")
+
+
+def _called(one: FoundCrossing) -> str:
+    """Return what a feature without a name is called."""
+    return one.kind if one.feature_class in ("", one.kind) else f"{one.feature_class} {one.kind}"
+
+
+def _width_m(one: FoundCrossing, line_width_m: float | None) -> float | None:
+    if line_width_m is None or one.feature_class in _PATHS:
+        return None
+    slant = np.sin(np.radians(max(one.angle_deg or 90.0, ALONG_ANGLE_DEG)))
+    return float(line_width_m / slant)
 
 
 def _is_in(one: FoundCrossing, found: Sequence[FoundCrossing]) -> bool:
@@ -322,5 +344,8 @@ def _is_in(one: FoundCrossing, found: Sequence[FoundCrossing]) -> bool:
 def _stands_for(known: Crossing, one: FoundCrossing, apart_m: float) -> bool:
     if known.leg != one.leg or known.crosses != one.kind:
         return False
-    reach_mm = 1000.0 * (apart_m + (known.width_m or 0.0) / 2.0)
-    return one.start_mm - reach_mm <= known.ground_mm <= one.end_mm + reach_mm
+    return _off_mm(known, one) <= 1000.0 * (apart_m + (known.width_m or 0.0) / 2.0)
+
+
+def _off_mm(known: Crossing, one: FoundCrossing) -> int:
+    return max(one.start_mm - known.ground_mm, known.ground_mm - one.end_mm, 0)

@@ -10,6 +10,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from routeplan import geodesy
+from routeplan.ground.terrain import KNOWN, VOID, Terrain
+from routeplan.ground.terrain_profile import SMOOTH_WAVE_M, step_ways, terrain_profile
 from routeplan.run.model import Floats, Line
 
 __all__ = [
@@ -34,7 +36,9 @@ class Drawn:
 
     `lonlat` (n, 2), `heights_m` (n,) or None; `is_drawn` (n,) or None is False at vertices that
     nobody drew; `ellipsoid_steps_m` and `ground_steps_m` (n - 1,); `drawn_m` is the ellipsoid
-    length before thinning, `share` the part of its line that it is.
+    length before thinning, `share` the part of its line that it is. `state` (n,) tells which
+    heights a terrain knew, None where heights are the geometry's; `smoothed_off_m` is what
+    smoothing them took off the length.
     """
 
     line: Line
@@ -45,14 +49,24 @@ class Drawn:
     ground_steps_m: Floats
     drawn_m: float
     share: float = 1.0
+    state: NDArray[np.uint8] | None = None
+    smoothed_off_m: float = 0.0
 
 
-def draw_line(line: Line, *, track_tolerance_m: float) -> Drawn:
+def draw_line(
+    line: Line,
+    *,
+    track_tolerance_m: float,
+    track_heights: bool = False,
+    terrain: Terrain | None = None,
+    placement: str = "duct",
+    smooth_wave_m: float = SMOOTH_WAVE_M,
+) -> Drawn:
     """
     Measure a line; a track with times is thinned first.
 
-    The heights of a track give its profile but not its length, because their noise would
-    lengthen it falsely.
+    A line's own heights go before a terrain's. The heights of a track give its profile but not
+    its length, because their noise would lengthen it falsely, unless they are said to count.
 
     Parameters
     ----------
@@ -60,10 +74,19 @@ def draw_line(line: Line, *, track_tolerance_m: float) -> Drawn:
         The line as read.
     track_tolerance_m
         Farthest a left-out vertex of a track may lie from the thinned line. [m]
+    track_heights
+        Whether the heights of a track count for its length.
+    terrain
+        Heights for a line that has none that count.
+    placement
+        Placement of a line that does not say.
+    smooth_wave_m
+        Length of the wave that smoothing of a terrain halves. [m]
 
     References
     ----------
-    .. [1] Ellipsoid and ground steps: `routeplan.geodesy`. Thinning: D. H. Douglas and
+    .. [1] Ellipsoid and ground steps: `routeplan.geodesy`; heights of a terrain:
+       `routeplan.ground.terrain_profile`. Thinning: D. H. Douglas and
        T. K. Peucker, Cartographica 10 (1973) 112-122.
     """
     ellipsoid = _ellipsoid_steps_m(line, line.datum_lonlat)
@@ -77,15 +100,53 @@ def draw_line(line: Line, *, track_tolerance_m: float) -> Drawn:
             heights = None if heights is None else heights[keep]
             is_drawn = None if is_drawn is None else is_drawn[keep]
     radius = geodesy.mean_radius_m(line.semi_major_m, line.inverse_flattening)
-    ground = geodesy.ground_steps_m(ellipsoid, None if line.is_track else heights, radius_m=radius)
-    return Drawn(
+    counted = heights if track_heights or not line.is_track else None
+    plain = Drawn(
         line=line,
         lonlat=lonlat,
         heights_m=heights,
         is_drawn=is_drawn,
         ellipsoid_steps_m=ellipsoid,
-        ground_steps_m=ground,
+        ground_steps_m=geodesy.ground_steps_m(ellipsoid, counted, radius_m=radius),
         drawn_m=drawn_m,
+    )
+    if terrain is None or counted is not None:
+        return plain
+    return _on_terrain(
+        plain,
+        terrain,
+        placement=line.placement or placement,
+        smooth_wave_m=smooth_wave_m,
+        radius_m=radius,
+    )
+
+
+def _on_terrain(
+    plain: Drawn, terrain: Terrain, *, placement: str, smooth_wave_m: float, radius_m: float
+) -> Drawn:
+    """Return a line with heights and stations of a terrain; as it is where that knows nothing."""
+    profile = terrain_profile(
+        terrain,
+        plain.lonlat,
+        ellipsoid_steps_m=plain.ellipsoid_steps_m,
+        ways=step_ways(placement, len(plain.lonlat) - 1),
+        smooth_wave_m=smooth_wave_m,
+        radius_m=radius_m,
+    )
+    if np.isnan(profile.heights_m).all():
+        return replace(plain, state=profile.state[profile.is_vertex])
+    is_drawn = profile.is_vertex.copy()
+    if plain.is_drawn is not None:
+        is_drawn[is_drawn] = plain.is_drawn
+    return replace(
+        plain,
+        lonlat=profile.lonlat,
+        heights_m=profile.heights_m,
+        is_drawn=is_drawn,
+        ellipsoid_steps_m=profile.ellipsoid_steps_m,
+        ground_steps_m=profile.ground_steps_m,
+        state=profile.state,
+        smoothed_off_m=profile.smoothed_off_m,
     )
 
 
@@ -132,6 +193,7 @@ def reversed_drawn(drawn: Drawn) -> Drawn:
         lonlat=drawn.lonlat[::-1],
         heights_m=None if drawn.heights_m is None else drawn.heights_m[::-1],
         is_drawn=None if drawn.is_drawn is None else drawn.is_drawn[::-1],
+        state=None if drawn.state is None else drawn.state[::-1],
         ellipsoid_steps_m=drawn.ellipsoid_steps_m[::-1],
         ground_steps_m=drawn.ground_steps_m[::-1],
     )
@@ -155,7 +217,14 @@ def cut_drawn(drawn: Drawn, at: Sequence[float]) -> list[Drawn]:
     for end in [*at, float(len(drawn.lonlat) - 1)]:
         part = _part(drawn, shape, begin, end)
         share = float(part.ellipsoid_steps_m.sum()) / total if total else 0.0
-        parts.append(replace(part, drawn_m=drawn.drawn_m * share, share=drawn.share * share))
+        parts.append(
+            replace(
+                part,
+                drawn_m=drawn.drawn_m * share,
+                share=drawn.share * share,
+                smoothed_off_m=drawn.smoothed_off_m * share,
+            )
+        )
         begin = end
     return parts
 
@@ -175,9 +244,16 @@ def _part(drawn: Drawn, shape: tuple[Floats, Floats], begin: float, end: float) 
         heights_m=None if heights is None else np.interp(index, whole, heights),
         # A cut is a place of its own: a site or another line's end.
         is_drawn=None if is_drawn is None else np.isin(index, np.flatnonzero(is_drawn)),
+        state=None if drawn.state is None else _worse(drawn.state, index),
         ellipsoid_steps_m=_shared_steps(drawn.ellipsoid_steps_m, index),
         ground_steps_m=_shared_steps(drawn.ground_steps_m, index),
     )
+
+
+def _worse(state: NDArray[np.uint8], index: Floats) -> NDArray[np.uint8]:
+    """Return what is known at fractional indices: no more than at either neighbour."""
+    before, after = np.floor(index).astype(np.int64), np.ceil(index).astype(np.int64)
+    return np.asarray(np.maximum(state[before], state[after]))
 
 
 def _shared_steps(steps_m: Floats, index: Floats) -> Floats:
@@ -209,6 +285,8 @@ def joined_drawn(parts: Sequence[Drawn]) -> Drawn:
         lonlat=np.concatenate(lonlats),
         heights_m=_joined_heights(parts),
         is_drawn=_joined_flags(parts),
+        state=_joined_states(parts),
+        smoothed_off_m=sum(part.smoothed_off_m for part in parts),
         ellipsoid_steps_m=np.concatenate([part.ellipsoid_steps_m for part in parts]),
         ground_steps_m=np.concatenate([part.ground_steps_m for part in parts]),
         drawn_m=sum(part.drawn_m for part in parts),
@@ -224,6 +302,24 @@ def _joined_flags(parts: Sequence[Drawn]) -> Flags | None:
         for part in parts
     ]
     return np.concatenate([flags[0], *(flag[1:] for flag in flags[1:])])
+
+
+def _joined_states(parts: Sequence[Drawn]) -> NDArray[np.uint8] | None:
+    """Return what is known of heights; a common vertex is known if one of its lines knows it."""
+    if all(part.state is None for part in parts):
+        return None
+    states: list[NDArray[np.uint8]] = []
+    for part in parts:
+        own = part.state
+        if own is None:
+            unknown = np.isnan(part.heights_m) if part.heights_m is not None else True
+            own = np.where(unknown, VOID, np.full(len(part.lonlat), KNOWN)).astype(np.uint8)
+        if states:
+            best = np.minimum(states[-1][-1:], own[:1])
+            states[-1] = np.concatenate([states[-1][:-1], best])
+            own = own[1:]
+        states.append(own)
+    return np.concatenate(states)
 
 
 def _joined_heights(parts: Sequence[Drawn]) -> Floats | None:

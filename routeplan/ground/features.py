@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Literal, get_args
+from typing import get_args
 
 import numpy as np
 import shapely
@@ -12,10 +12,10 @@ from numpy.typing import NDArray
 
 from routeplan import geodesy
 from routeplan.run.model import Floats
+from routeplan.run.practice import FeatureKind
 
 __all__ = ["FEATURE_KINDS", "FeatureKind", "FeatureLayer", "feature_layer", "lines_from_arrays"]
 
-FeatureKind = Literal["road", "rail", "water", "power", "pipeline", "boundary", "avoid", "permit"]
 FEATURE_KINDS: tuple[FeatureKind, ...] = get_args(FeatureKind)
 
 Geometries = NDArray[np.object_]

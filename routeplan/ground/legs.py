@@ -12,21 +12,26 @@ import numpy as np
 
 from routeplan import geodesy
 from routeplan.errors import CrsError, GeometryError, Problem
-from routeplan.ground.drawn import draw_line, joined_drawn, shape_of
+from routeplan.ground.drawn import Drawn, draw_line, joined_drawn, shape_of
+from routeplan.ground.heights import height_warnings, heights_from, leg_profile, run_terrain
 from routeplan.ground.joining import Network, Piece, chains, join_lines
 from routeplan.ground.locate import index_lines, near_lines, nearest_m
+from routeplan.ground.meeting import met_by
 from routeplan.ground.model import Crossing, Ground, Leg, Millimetres, Node, PlacedPoint, Stretch
+from routeplan.ground.terrain_report import steep_stretches
 from routeplan.run.model import Floats, Place, Placement, Run
 
 __all__ = ["lay_ground", "position_at"]
 
 _SCALE_RATIO = 0.01  # house rule: national grids and UTM zones keep within a third of it
-_STEEP_RATIO = 0.01  # house rule: more than this from slope alone looks like noise in the heights
 
 
 def lay_ground(run: Run) -> Ground:
     """
     Return the nodes and legs of a run, every declared point on them with its ground station.
+
+    Lines without heights that count take those of the run's terrain; crossings are found in its
+    layers and areas.
 
     Parameters
     ----------
@@ -36,26 +41,29 @@ def lay_ground(run: Run) -> Ground:
     Raises
     ------
     GeometryError
-        If a site or reach point is far from every line, or names of legs clash.
+        If a site or reach point is far from every line, names of legs clash, or a terrain or
+        layer cannot be read.
     CrsError
         If the run's grid does not reach a leg.
 
     References
     ----------
-    .. [1] Lengths: `routeplan.geodesy`; joining: `routeplan.ground.joining`.
+    .. [1] Lengths: `routeplan.geodesy`; joining: `routeplan.ground.joining`; heights:
+       `routeplan.ground.terrain_profile`; crossings: `routeplan.ground.crossings`.
     """
     joining = run.practice.joining
-    drawn = [draw_line(line, track_tolerance_m=joining.track_tolerance_m) for line in run.lines]
+    drawn = _drawn_lines(run)
     sites = [place for place in run.places if place.kind == "site"]
     network = join_lines(drawn, sites, joining=joining)
     groups = chains(network)
     nodes, numbers = _nodes(network, groups)
     ends = [(nodes[numbers[group[0].start]], nodes[numbers[group[-1].end]]) for group in groups]
     names = _leg_names(groups, ends)
-    legs = [
+    laid = [
         _leg(run, f"L{at}", name, pieces=group, ends=(start.id, end.id))
         for at, (name, group, (start, end)) in enumerate(zip(names, groups, ends, strict=True), 1)
     ]
+    legs = [leg for leg, _ in laid]
     points = [place for place in run.places if place.kind != "site"]
     legs, nodes, crossings, problems = _place_points(run, legs, nodes, points)
     problems = [
@@ -66,10 +74,35 @@ def lay_ground(run: Run) -> Ground:
     ]
     if problems:
         raise GeometryError(problems)
-    warnings = (*network.warnings, *_leg_warnings(groups, names), *_grid_warnings(legs))
-    return Ground(
-        nodes=tuple(nodes), legs=tuple(legs), crossings=tuple(crossings), warnings=warnings
+    warnings = (
+        *network.warnings,
+        *(warning for _, own in laid for warning in own),
+        *_track_warnings(groups, names),
+        *_grid_warnings(legs),
     )
+    crossed, all_crossings, beside = met_by(run, legs, crossings)
+    return Ground(
+        nodes=tuple(nodes),
+        legs=crossed,
+        crossings=all_crossings,
+        beside=beside,
+        warnings=warnings,
+    )
+
+
+def _drawn_lines(run: Run) -> list[Drawn]:
+    terrain = run_terrain(run)
+    return [
+        draw_line(
+            line,
+            track_tolerance_m=run.practice.joining.track_tolerance_m,
+            track_heights=run.practice.ground.track_heights,
+            terrain=terrain,
+            placement=run.placement,
+            smooth_wave_m=run.practice.ground.smooth_wave_m,
+        )
+        for line in run.lines
+    ]
 
 
 def _nodes(
@@ -164,14 +197,21 @@ def _short_problems(groups: Sequence[Sequence[Piece]], legs: Sequence[Leg]) -> I
 
 def _leg(
     run: Run, leg_id: str, name: str, *, pieces: Sequence[Piece], ends: tuple[str, str]
-) -> Leg:
-    whole = joined_drawn([piece.drawn for piece in pieces])
+) -> tuple[Leg, list[tuple[str, str]]]:
+    """Return a leg, and what there is to say of its heights."""
+    parts = [piece.drawn for piece in pieces]
+    whole = joined_drawn(parts)
+    profile = leg_profile(
+        whole,
+        [(part.line.placement or run.placement, len(part.lonlat) - 1) for part in parts],
+    )
+    rules = run.practice.ground
     is_turned = geodesy.is_turned(whole.lonlat)
     ground_mm = _whole_millimetres(whole.ground_steps_m, is_turned=is_turned)
     shape, shape_index = shape_of(whole)
     shape_mm = np.interp(shape_index, np.arange(len(ground_mm)), ground_mm)
     grid_m, grid_crs = _grid(run, name, whole.lonlat, middle=_middle(shape, shape_mm))
-    return Leg(
+    leg = Leg(
         id=leg_id,
         name=name,
         start=ends[0],
@@ -190,7 +230,13 @@ def _leg(
         stretches=_stretches(run, pieces, ground_mm),
         points=(),
         cable=pieces[0].drawn.line.cable,
+        steep=steep_stretches(profile, rules.steep_ratio, length_min_m=rules.steep_length_m)
+        if profile
+        else (),
+        heights_from=heights_from(parts),
+        smoothed_off_m=whole.smoothed_off_m,
     )
+    return leg, list(height_warnings(leg, profile, has_terrain=whole.state is not None))
 
 
 def _whole_millimetres(ground_steps_m: Floats, *, is_turned: bool) -> Millimetres:
@@ -374,18 +420,11 @@ def _far_point(place: Place, far_m: float, limit_m: float) -> Problem:
     )
 
 
-def _leg_warnings(
+def _track_warnings(
     groups: Sequence[Sequence[Piece]], names: Sequence[str]
 ) -> Iterator[tuple[str, str]]:
     for group, name in zip(groups, names, strict=True):
         flat = sum(float(piece.drawn.ellipsoid_steps_m.sum()) for piece in group)
-        ground = sum(float(piece.drawn.ground_steps_m.sum()) for piece in group)
-        if flat and ground / flat - 1.0 > _STEEP_RATIO:
-            yield (
-                f'leg "{name}"',
-                f"slope adds {100 * (ground / flat - 1):.2f} % to its length; noisy heights "
-                "lengthen a line falsely, so check them",
-            )
         drawn = sum(piece.drawn.drawn_m for piece in group)
         if drawn - flat > 1e-6 * drawn:
             yield (

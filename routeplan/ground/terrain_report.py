@@ -8,6 +8,7 @@ from typing import Literal
 
 import numpy as np
 
+from routeplan.ground.model import Steep
 from routeplan.ground.terrain import KNOWN, OUTSIDE
 from routeplan.ground.terrain_profile import ON_GROUND, SPANNED, TerrainProfile
 
@@ -25,16 +26,6 @@ class Unknown:
     end_m: float
     why: Literal["outside", "void"]
     is_bridged: bool
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Steep:
-    """A stretch of a line that is steeper than a limit; rising where `rise_m` is positive."""
-
-    start_m: float
-    end_m: float
-    rise_m: float
-    slope_max_ratio: float
 
 
 def unknown_stretches(profile: TerrainProfile) -> tuple[Unknown, ...]:

@@ -26,7 +26,7 @@ __all__ = [
 
 Purpose: TypeAlias = Literal["link", "venue"]
 PracticeValue: TypeAlias = (
-    int | float | str | tuple[int | float | str, ...] | dict[str, float | int]
+    bool | int | float | str | tuple[int | float | str, ...] | dict[str, float | int]
 )
 
 MERGED_BY_PLACEMENT = ("slack.loop_m", "slack.undulation_ratio")
@@ -38,8 +38,8 @@ class PracticeRow:
     """One default of a run: its dotted key, value, unit, and where it comes from."""
 
     name: str
-    value: int | float | str | tuple[int | float | str, ...] | dict[str, float | int]
-    venue: int | float | str | tuple[int | float | str, ...] | dict[str, float | int] | None = None
+    value: PracticeValue
+    venue: PracticeValue | None = None
     unit: str
     source: str
     reason: str
@@ -169,4 +169,4 @@ def _flat(value: PracticeValue) -> int | float | str:
     if isinstance(value, dict | tuple):
         parts = (f"{part:.10g}" if isinstance(part, float) else str(part) for part in value)
         return ", ".join(parts) or "none"
-    return value
+    return str(value).lower() if isinstance(value, bool) else value

@@ -26,6 +26,7 @@ __all__ = [
     "VECTOR_SUFFIXES",
     "Geometry",
     "background_from_files",
+    "file_and_layer",
     "file_bytes",
     "geometry_from_files",
 ]
@@ -147,7 +148,7 @@ def _refuse(trouble: Trouble, file: str, what: str, *, value: str = "", remedy: 
 
 
 def _layers(name: str, folder: Path, geometry: Geometry, trouble: Trouble) -> list[Layer]:
-    file, only = _file_and_layer(name, folder)
+    file, only = file_and_layer(name, folder)
     path = folder / file
     content = _folder_bytes(path) if _is_database(path) else None
     if content is None:
@@ -164,7 +165,7 @@ def _layers(name: str, folder: Path, geometry: Geometry, trouble: Trouble) -> li
     return layers_from_gdal(path, content, file=file, only=only, trouble=trouble)
 
 
-def _file_and_layer(name: str, folder: Path) -> tuple[str, str | None]:
+def file_and_layer(name: str, folder: Path) -> tuple[str, str | None]:
     """Split `file.gpkg|layer`, unless that is the name of a file."""
     file, bar, layer = name.rpartition("|")
     try:

@@ -21,10 +21,12 @@ __all__ = [
     "Area",
     "Floats",
     "JointFitness",
+    "LayerSource",
     "Line",
     "Place",
     "PlaceKind",
     "Placement",
+    "RasterSource",
     "Run",
     "Source",
 ]
@@ -65,7 +67,7 @@ PLACE_KINDS: tuple[PlaceKind, ...] = (
     "crossing",
 )
 ROLES = ("studio", "transmitter", "venue", "compound", "position", "repeater")
-CROSSES = ("road", "rail", "water", "power")
+CROSSES = ("road", "rail", "water", "power", "pipeline")
 AREA_KINDS = ("avoid", "permit")
 
 
@@ -149,6 +151,26 @@ class Area:
     source: Source
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class RasterSource:
+    """A raster of heights, or a folder of them: its name in the run file, and its digest."""
+
+    file: str
+    path: str
+    digest: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class LayerSource:
+    """A file of what may be crossed, what its columns are, and its digest."""
+
+    file: str
+    path: str
+    layer: str | None
+    columns: LayerColumns
+    digest: str
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Run:
     """
@@ -156,8 +178,9 @@ class Run:
 
     `given` holds the dotted keys the user set (`slack.entry_m`); every other value of `practice`
     and `cable` is a default and is listed as an assumption. `digest` is the SHA-256 of all input
-    bytes. `background` holds polylines that the map is drawn on and nothing else looks at.
-    `warnings` are (where, message) pairs from reading.
+    bytes. `terrain` and `layers` are files that are opened when the ground is laid. `background`
+    holds polylines that the map is drawn on and nothing else looks at. `warnings` are (where,
+    message) pairs from reading.
     """
 
     title: str
@@ -178,8 +201,8 @@ class Run:
     panels: tuple[Panel, ...] = ()
     joints: tuple[JointFigures, ...] = ()
     sections: tuple[SectionFigures, ...] = ()
-    background: tuple[Floats, ...] = ()
-    warnings: tuple[tuple[str, str], ...] = ()
     marks: tuple[JacketMark, ...] = ()
     terrain: tuple[RasterSource, ...] = ()
     layers: tuple[LayerSource, ...] = ()
+    background: tuple[Floats, ...] = ()
+    warnings: tuple[tuple[str, str], ...] = ()

@@ -99,7 +99,7 @@ def new_run_text(geometry_path: str | Path, *, named: str = "") -> str:
         )
         raise RunFileError(problem)
     run = read_run(path)
-    own = (_SITES_AND_JOINTS, _OWN_INTERFACE, _circuit(run))
+    own = (_LAYER, _SITES_AND_JOINTS, _OWN_INTERFACE, _circuit(run))
     return "\n".join([_head(run, named or path.name), *_sections(), *own])
 
 

@@ -17,10 +17,14 @@ from routeplan.run.geometry import (
     geometry_from_files,
 )
 from routeplan.run.model import Run
+from routeplan.run.practice import LayerColumns
 from routeplan.run.runfile import Declared, declared_from_text
+from routeplan.run.sources import layer_sources, raster_sources
 from routeplan.run.trouble import Trouble, listed, shown
 
 if TYPE_CHECKING:
+    from hashlib import _Hash
+
     from pyproj import CRS
 
 __all__ = ["RUN_FILE", "read_run"]
@@ -82,9 +86,19 @@ def _read(path: Path, trouble: Trouble) -> Run | None:
         geometry=geometry,
         trouble=trouble,
     )
+    digest = _digest(geometry.contents)
+    named = head.terrain if head else ()
+    terrain = raster_sources(named, path.parent, digest=digest, trouble=trouble)
+    layers = layer_sources(_layers(declared), path.parent, digest=digest, trouble=trouble)
     if trouble.problems:
         return None
-    return replace(_run(declared, geometry, names, trouble), background=background)
+    return replace(
+        _run(declared, geometry, names, trouble),
+        background=background,
+        terrain=terrain,
+        layers=layers,
+        digest=digest.hexdigest(),
+    )
 
 
 def _refuse(trouble: Trouble, where: str, what: str, *, value: str = "", remedy: str = "") -> None:
@@ -150,9 +164,10 @@ def _run(declared: Declared, geometry: Geometry, names: tuple[str, ...], trouble
         panels=declared.panels,
         joints=declared.joints,
         sections=declared.sections,
+        marks=declared.marks,
         practice=declared.practice,
         given=declared.given,
-        digest=_digest(geometry.contents),
+        digest="",
         warnings=trouble.closed_warnings(),
     )
 
@@ -161,9 +176,14 @@ def _title(names: tuple[str, ...]) -> str:
     return Path(names[0].partition("|")[0]).name.partition(".")[0]
 
 
-def _digest(contents: list[bytes]) -> str:
+def _layers(declared: Declared) -> tuple[LayerColumns, ...]:
+    """Return the layers a run names, those without columns of their own first."""
+    plain = declared.head.layers if declared.head else ()
+    return (*(LayerColumns(file=file) for file in plain), *declared.layers)
+
+
+def _digest(contents: list[bytes]) -> _Hash:
     digest = hashlib.sha256()
     for content in contents:
-        marks=declared.marks,
         digest.update(content)
-    return digest.hexdigest()
+    return digest

@@ -16,6 +16,7 @@ _COMPLETE = (  # tables that make no sense without some of their keys
     "CircuitBend",
     "JacketMark",
     "JointFigures",
+    "LayerColumns",
     "MeasuredAttenuation",
     "Panel",
     "SectionFigures",
@@ -116,7 +117,7 @@ def toml_value(value: PracticeValue) -> str:
     if isinstance(value, dict):
         inner = ", ".join(f"{key} = {toml_value(each)}" for key, each in value.items())
         return f"{{ {inner} }}" if inner else "{}"
-    return repr(value)
+    return str(value).lower() if isinstance(value, bool) else repr(value)
 
 
 def _table(entry: Mapping[str, Any], defs: Mapping[str, Any]) -> Mapping[str, Any] | None:

@@ -81,9 +81,6 @@ def _is_number(value: object) -> TypeGuard[float]:
 
 
 def _unbuilt(raw: dict[str, Any]) -> Iterator[tuple[str, str, str]]:
-    if "terrain" in raw:
-        value = shown(raw.pop("terrain"))
-        yield "terrain", value, "Take the key out; heights come from the geometry."
     reels = raw.get("reels")
     if isinstance(reels, dict):
         yield from _unbuilt_stock(reels)

@@ -62,10 +62,9 @@ def _marks(planned: Plan, laid: LaidCable) -> dict[int, list[_Mark]]:
         if joint.node is None:
             put(joint.mark.chain_mm, "joint", joint.id)
     for leg, forward, offset in way.legs:
-        for point in leg.points:
-            at = offset + (point.ground_mm if forward else leg.length_mm - point.ground_mm)
-            if point.place.kind == "crossing":
-                put(at, "crossing", point.place.name)
+        for one in leg.crossings:
+            at = offset + (one.ground_mm if forward else leg.length_mm - one.ground_mm)
+            put(at, "crossing", one.name)
     for step in laid.steps:
         if step.kind == "loop":
             put(step.chain_mm, "loop", step.name)
@@ -104,7 +103,9 @@ def _leg_rows(
     offset: int,
     marks: Mapping[int, list[_Mark]],
 ) -> Iterator[Row]:
-    vertices = offset + (leg.ground_mm if forward else leg.length_mm - leg.ground_mm)
+    # Stations that only a terrain or a grid needed are no places to go to.
+    drawn = leg.ground_mm if leg.is_drawn is None else leg.ground_mm[leg.is_drawn]
+    vertices = offset + (drawn if forward else leg.length_mm - drawn)
     own = [at for at in marks if offset <= at <= offset + leg.length_mm]
     # Along the leg, whichever way the cable takes it.
     chain = np.unique(np.concatenate([vertices, np.array(own, dtype=np.int64)]))
@@ -126,8 +127,8 @@ def _leg_rows(
         "glass_to_m": (glass_to / 1000).tolist(),
         "section": at_section,
         "section_m": [None if mm is None else mm / 1000 for mm in section_mm],
-        "lon": (np.round(lonlat[:, 0], 9) + 0.0).tolist(),
         "jacket_mark_m": _printed(planned, at_section, section_mm),
+        "lon": (np.round(lonlat[:, 0], 9) + 0.0).tolist(),
         "lat": (np.round(lonlat[:, 1], 9) + 0.0).tolist(),
         "height_m": [
             None if unknown else height
@@ -141,7 +142,6 @@ def _leg_rows(
         yield dict(zip(keys, values, strict=True))
 
 
-def _named(marks: Mapping[int, list[_Mark]], chain: Millimetres) -> dict[str, list[Json]]:
 def _printed(planned: Plan, sections: Sequence[Json], along_mm: Sequence[int | None]) -> list[Json]:
     """Return the mark printed on the jacket at each station, where its reel's are known."""
     if not planned.run.marks:
@@ -154,6 +154,7 @@ def _printed(planned: Plan, sections: Sequence[Json], along_mm: Sequence[int | N
     return [None if mark is None else mark / 1000 for mark in found]
 
 
+def _named(marks: Mapping[int, list[_Mark]], chain: Millimetres) -> dict[str, list[Json]]:
     kinds: list[Json] = []
     names: list[Json] = []
     reaches: list[Json] = []

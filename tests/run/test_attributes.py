@@ -172,7 +172,8 @@ def test_areas_are_read_and_unkinded_polygons_left_out(
         ({"kind": "crossing"}, "is a crossing that does not say what it crosses (limit road, rail"),
         (
             {"kind": "crossing", "crosses": "lava"},
-            'crosses: is nothing known to be crossed ("lava", limit road, rail, water, power).',
+            'crosses: is nothing known to be crossed ("lava", limit road, rail, water, power, '
+            "pipeline).",
         ),
         ({"kind": "pole", "crosses": "road"}, "crosses: is for crossings only (at a pole)."),
         ({"kind": "pole", "width_m": 3}, "width_m: is for crossings only (at a pole)."),

@@ -138,11 +138,6 @@ def test_a_wrong_key_or_value_is_named_with_its_remedy(
     ("toml", "message"),
     [
         (
-            'terrain = "hills.tif"',
-            'run.toml, terrain: is not yet available in this version ("hills.tif"). '
-            "Take the key out; heights come from the geometry.",
-        ),
-        (
             '[reels]\nbuy = ["put-ups", "stock"]',
             'run.toml, reels.buy: is not yet available in this version ("stock"). '
             "Buy to length or in put-ups.",
@@ -266,7 +261,7 @@ def test_all_problems_are_shown_together(
     """Wrong keys, values, names and geometry come in one message, not one an attempt."""
     messages = said(
         run_with(
-            'purpse = "link"\nterrain = "t.tif"\ncrs = "EPSG:0"\n'
+            'purpse = "link"\nterrain = 5\ncrs = "EPSG:0"\n'
             '[slack]\nentry_m = "x"\n[cable]\nfibre_type = "OM3"\nfibre_cont = 12\n'
             f"{CIRCUIT}{CIRCUIT}"
         )
