@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
+from typing import TypeAlias
 
 from routeplan.cable.way import existing_name, leg_at
 from routeplan.circuits import CircuitPlan, measured_glass
@@ -15,10 +16,15 @@ from routeplan.units import m_from_mm
 
 __all__ = ["power_rows"]
 
+_Station: TypeAlias = tuple[str, int]
+"""Leg and ground station there. [mm]"""
+
 
 def power_rows(planned: Plan, circuit: CircuitPlan) -> Iterator[Row]:
     """
     Yield the nominal loss of a circuit at both ends of every piece of glass, by wavelength.
+
+    A last row at the place of the last has the whole loss, with what stands behind the last glass.
 
     Parameters
     ----------
@@ -34,23 +40,32 @@ def power_rows(planned: Plan, circuit: CircuitPlan) -> Iterator[Row]:
         losses_db = losses_along_db(
             path, wavelength_nm, practice=planned.run.practice.loss, measured=measured
         )
-        for step, ends in places:
-            before_db = losses_db[step - 1] if step else 0.0
-            for (leg, ground_mm), loss_db in zip(ends, (before_db, losses_db[step]), strict=True):
-                yield shaped(
-                    "power",
-                    {
-                        "leg": leg,
-                        "wavelength_nm": wavelength_nm,
-                        "ground_m": m_from_mm(ground_mm),
-                        "loss_db": loss_db,
-                    },
-                )
+        for (leg, ground_mm), loss_db in _losses_at(places, losses_db):
+            yield shaped(
+                "power",
+                {
+                    "leg": leg,
+                    "wavelength_nm": wavelength_nm,
+                    "ground_m": m_from_mm(ground_mm),
+                    "loss_db": loss_db,
+                },
+            )
+
+
+def _losses_at(
+    places: Sequence[tuple[int, tuple[_Station, _Station]]], losses_db: Sequence[float]
+) -> Iterator[tuple[_Station, float]]:
+    """Yield both ends of every piece of glass with the loss there, then the whole loss."""
+    for step, (first, last) in places:
+        yield first, losses_db[step - 1] if step else 0.0
+        yield last, losses_db[step]
+    if places:
+        yield places[-1][1][1], losses_db[-1]
 
 
 def _glass_places(
     planned: Plan, circuit: CircuitPlan, path: Path
-) -> Iterator[tuple[int, tuple[tuple[str, int], tuple[str, int]]]]:
+) -> Iterator[tuple[int, tuple[_Station, _Station]]]:
     """Yield for every piece of glass its step's number and the leg and station of both its ends."""
     ways = {cable.way.cable.id: cable.way for cable in planned.laid}
     own = {use.cable: use for use in circuit.uses}

@@ -344,3 +344,22 @@ def test_mixed_run_by_hand(mixed_plan: Plan) -> None:
     assert (reel["length_m"], reel["source"], reel["cost"]) == (2130.0, "to-length", 2676.0)
     assert document["totals"]["glass_m"] == 2113.056
     assert document["joints"] == document["splices"] == []
+
+
+def test_loss_along_the_ground_ends_at_the_whole_loss(many_documents: list[Row]) -> None:
+    """The curve of each wavelength ends, at its far end, at the nominal loss of its budget."""
+    count = 0
+    for document in many_documents:
+        for circuit in document["circuits"]:
+            for budget in circuit["budgets"]:
+                *_, before, last = (
+                    row
+                    for row in circuit["power"]
+                    if row["wavelength_nm"] == budget["wavelength_nm"]
+                )
+                assert (last["leg"], last["ground_m"]) == (before["leg"], before["ground_m"])
+                if budget["direction"] == "from-to":
+                    rounding_db = 0.001 * len(circuit["power"])
+                    assert last["loss_db"] == pytest.approx(budget["nominal_db"], abs=rounding_db)
+                    count += 1
+    assert count
