@@ -78,9 +78,11 @@ def neutral(text: str) -> str:
     """
     Return text that no spreadsheet takes for a formula.
 
+    A lone dash, the unit of a ratio, is none.
+
     Examples
     --------
-    >>> neutral("=1+1"), neutral("Hill")
-    ("'=1+1", 'Hill')
+    >>> neutral("=1+1"), neutral("Hill"), neutral("-"), neutral("-1")
+    ("'=1+1", 'Hill', '-', "'-1")
     """
-    return f"'{text}" if text.startswith(_RISKY_STARTS) else text
+    return f"'{text}" if text.startswith(_RISKY_STARTS) and text != "-" else text

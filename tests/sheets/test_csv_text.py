@@ -57,11 +57,11 @@ def test_cells_read_back_equal(name: str, many_documents: list[Row]) -> None:
 
 @pytest.mark.parametrize("name", NAMES)
 def test_nothing_starts_like_a_formula(name: str, many_documents: list[Row]) -> None:
-    """No cell starts with = + - @ tab or return, but for negative numbers."""
+    """No cell starts with = + - @ tab or return, but for negative numbers and a lone dash."""
     for document in many_documents:
         for cells in read_back(csv_text(document, table(name))):
             for cell in cells:
-                if cell.startswith(("=", "+", "-", "@", "\t", "\r")):
+                if cell.startswith(("=", "+", "-", "@", "\t", "\r")) and cell != "-":
                     assert cell.startswith("-")
                     assert float(cell) < 0
 
@@ -85,6 +85,12 @@ def test_each_start_is_neutralised(start: str) -> None:
     assert neutral(f"{start}1") == f"'{start}1"
     assert neutral(f"a{start}1") == f"a{start}1"
     assert neutral("") == ""
+
+
+def test_the_unit_of_a_ratio_stays_a_dash() -> None:
+    """A lone dash is no formula and gets no apostrophe; a dash before anything does."""
+    assert neutral("-") == "-"
+    assert neutral("- ") == "'- "
 
 
 def test_numbers_are_never_neutralised() -> None:
