@@ -22,7 +22,15 @@ from routeplan.run.model import (
     Place,
     PlaceKind,
 )
-from routeplan.run.trouble import Trouble, cleaned_text, is_plain_text, listed, nearest_hint, shown
+from routeplan.run.trouble import (
+    Trouble,
+    cleaned_text,
+    is_plain_text,
+    listed,
+    nearest_hint,
+    number_hint,
+    shown,
+)
 
 __all__ = ["AREA_KEYS", "LINE_KEYS", "PLACE_KEYS", "area_from", "line_from", "place_from"]
 
@@ -332,7 +340,7 @@ def _number(known: Known, key: str, reading: _Reading) -> float | None:
     if isinstance(value, str) and reading.loose:
         value = _number_from(value)
     if isinstance(value, bool) or not isinstance(value, int | float):
-        remedy = "Write the number without quotes." if isinstance(value, str) else ""
+        remedy = number_hint(value)
         reading.fault(key, "is not a number", value=shown(known[key]), remedy=remedy)
         return None
     low, may_be_low, high = _BOUNDS[key]

@@ -12,7 +12,7 @@ from pydantic_core import ErrorDetails
 from routeplan.errors import Problem, RunFileError
 from routeplan.run.optics import CircuitBend, CircuitPart, MeasuredAttenuation
 from routeplan.run.practice import RunFile, RunHead
-from routeplan.run.trouble import Trouble, listed, nearest_hint, shown
+from routeplan.run.trouble import Trouble, listed, nearest_hint, number_hint, shown
 
 __all__ = ["key_path", "note_errors", "sections"]
 
@@ -64,6 +64,7 @@ _CALLED = {
     "section": "name",
     "mark": "reel",
     "layer": "file",
+    "leg": "name",
 }
 _ENTRIES = tuple(f"{name} " for name in _CALLED)
 
@@ -153,7 +154,7 @@ def _problem(detail: ErrorDetails, data: Mapping[str, Any], *, file: str) -> Pro
 
 def _remedy(kind: str, value: object) -> str:
     if kind in ("int_type", "float_type") and isinstance(value, str):
-        return "Write the number without quotes."
+        return number_hint(value)
     if kind == "int_type" and isinstance(value, float) and value.is_integer():
         return f"Write {value:.0f}."
     if kind == "tuple_type":

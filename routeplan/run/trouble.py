@@ -11,7 +11,15 @@ from dataclasses import dataclass, field
 
 from routeplan.errors import InputError, Problem
 
-__all__ = ["Trouble", "cleaned_text", "is_plain_text", "listed", "nearest_hint", "shown"]
+__all__ = [
+    "Trouble",
+    "cleaned_text",
+    "is_plain_text",
+    "listed",
+    "nearest_hint",
+    "number_hint",
+    "shown",
+]
 
 _SHOWN_OF_A_KIND = 20
 _SHOWN_CHARACTERS = 80
@@ -108,6 +116,24 @@ def nearest_hint(
     by_folded = {name.casefold(): name for name in known}
     near = difflib.get_close_matches(value[:100].casefold(), by_folded, n=1, cutoff=0.6)
     return template.format(by_folded[near[0]]) if near else ""
+
+
+def number_hint(value: object) -> str:
+    """
+    Return how to write what should be a number and is text; nothing for anything else.
+
+    Examples
+    --------
+    >>> number_hint("20"), number_hint("20 m"), number_hint(True)
+    ('Write the number without quotes.', 'Write the number alone, without unit or quotes.', '')
+    """
+    if not isinstance(value, str):
+        return ""
+    try:
+        float(value)
+    except ValueError:
+        return "Write the number alone, without unit or quotes."
+    return "Write the number without quotes."
 
 
 def is_plain_text(text: str) -> bool:

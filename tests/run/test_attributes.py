@@ -160,6 +160,10 @@ def test_areas_are_read_and_unkinded_polygons_left_out(
             "joint: is not a known joint (true, limit yes, avoid, no).",
         ),
         ({"kind": "pole", "loop_m": "12"}, 'loop_m: is not a number ("12"). Write the number'),
+        (
+            {"kind": "pole", "loop_m": "15 ft"},
+            'loop_m: is not a number ("15 ft"). Write the number alone, without unit or quotes.',
+        ),
         ({"kind": "pole", "loop_m": True}, "loop_m: is not a number (true)."),
         (
             {"kind": "pole", "loop_m": -1},

@@ -52,6 +52,11 @@ CIRCUIT = '[[circuit]]\nname = "P"\nfrom = "A"\nto = "B"\n'
             'run.toml, slack.entry_m: is not a number ("20"). Write the number without quotes.',
         ),
         (
+            '[slack]\nentry_m = "20 m"',
+            'run.toml, slack.entry_m: is not a number ("20 m"). '
+            "Write the number alone, without unit or quotes.",
+        ),
+        (
             "[slack]\nentry_m = true",
             "run.toml, slack.entry_m: is not a number (true).",
         ),
