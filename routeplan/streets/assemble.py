@@ -23,7 +23,7 @@ __all__ = [
     "unique_lines",
 ]
 
-_UNIT = 1e7  # OpenStreetMap's own resolution: a hundred-millionth of a turn is about a centimetre
+_UNIT = 1e7  # OpenStreetMap's own resolution: a ten-millionth of a degree, about a centimetre
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
