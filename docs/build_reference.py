@@ -100,8 +100,7 @@ where it differs. Editors that read JSON Schema can use
 _NOT_YET = """\
 ## Not in this version
 
-`terrain`, `reels.stock`, `"stock"` in `reels.buy` and more than one leg in
-`cables.NAME.legs` are refused, not ignored.
+`reels.stock` and `"stock"` in `reels.buy` are refused, not ignored.
 """
 
 _COMMANDS_HEAD = """\

@@ -66,9 +66,10 @@ def circuit_way(
         if node in site_names:
             name = site_names[node]
             places.setdefault(name, WayPlace(anchor=("site", name), fibre_type=fibre_type))
-    for name, place in _along(uses, laid, layout, nodes):
+    inner = [node for node in nodes[1:-1] if node not in site_names]
+    for name, place in _along(uses, laid, layout, inner):
         places.setdefault(name, place)
-    spliced = {joint.node for joint in layout.joints if joint.ends}
+    spliced = {joint.node for joint in layout.joints} - site_names.keys()
     return CircuitWay(
         start=site_names[nodes[0]],
         end=site_names[nodes[-1]],
@@ -78,7 +79,7 @@ def circuit_way(
 
 
 def _along(
-    uses: Sequence[FibreUse], laid: Sequence[LaidCable], layout: Layout, nodes: Sequence[str]
+    uses: Sequence[FibreUse], laid: Sequence[LaidCable], layout: Layout, branches: Sequence[str]
 ) -> Iterator[tuple[str, WayPlace]]:
     """Yield joints by id and by place, then every other place of the cables."""
     ways = {cable.way.cable.id: cable.way for cable in laid}
@@ -90,7 +91,7 @@ def _along(
         if joint.node is None:
             is_met = on is not None and on.covers(joint.mark.chain_mm)
         else:
-            is_met = joint.node in nodes[1:-1] and bool(joint.ends)
+            is_met = joint.node in branches
         if is_met:
             cable = joint.mark.cable if on else first
             place = WayPlace(anchor=("joint", joint.id), fibre_type=types[cable])

@@ -182,7 +182,11 @@ def _plant(
     return _Plant(
         run=run,
         tracks={track.cable: track for track in _tracks(laid, layout)},
-        joint_at={joint.node: joint.id for joint in layout.joints if joint.node and joint.ends},
+        joint_at={
+            joint.node: joint.id
+            for joint in layout.joints
+            if joint.node and joint.node not in site_nodes.values()
+        },
         site_names={node_id: name for name, node_id in site_nodes.items()},
         panels={panel.site: panel_mating(loss, panel) for panel in run.panels},
         splices=joint_figures(run, layout),

@@ -42,9 +42,9 @@ def cable_courses(
     Return the cables of a run in the order of their first legs.
 
     A named cable takes its `legs` one after the other; two may take the same leg. Legs left over
-    whose lines name one cable are one cable as far as exactly two of them meet, and every other
-    leg is a cable of its own. A cable passes nodes and sites uncut. It can be entered at mid-span
-    where another cable ends, and at a site where a circuit does.
+    whose lines name one cable are one cable as far as exactly two of them meet in new cable, and
+    every other leg is a cable of its own. A cable passes nodes and sites uncut. It can be entered
+    at mid-span where another cable ends, and at a site where a circuit does.
 
     Parameters
     ----------
@@ -208,6 +208,10 @@ def _unbranched(legs: Sequence[Leg]) -> Iterator[Taken]:
         yield (*turned, (leg, True), *onward)
 
 
+def _placement_at(leg: Leg, node: str) -> str:
+    return leg.stretches[0 if leg.start == node else -1].placement
+
+
 def _walk(
     taken: tuple[Leg, bool], meeting: Mapping[str, Sequence[Leg]], used: set[str]
 ) -> list[tuple[Leg, bool]]:
@@ -218,6 +222,8 @@ def _walk(
         others = [leg for leg in meeting[node] if leg.id not in used]
         if len(meeting[node]) != 2 or len(others) != 1:
             return found
+        if "existing" in (_placement_at(taken[0], node), _placement_at(others[0], node)):
+            return found  # somebody else's cable ends ours
         taken = (others[0], others[0].start == node)
         used.add(others[0].id)
         found.append(taken)

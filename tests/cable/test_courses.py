@@ -76,6 +76,25 @@ def test_lines_of_one_cable_are_one_cable_through_nodes_and_sites() -> None:
     ]
 
 
+@pytest.mark.parametrize("theirs", [("b",), ("a", "b"), ("a", "b", "spur")])
+def test_somebody_elses_cable_ends_ours(theirs: tuple[str, ...]) -> None:
+    """Where one of two legs is existing fibre at their node, ours ends; light goes on there."""
+    toml = '[[circuit]]\nname = "P"\nfrom = "Side"\nto = "East"\n'
+    run = run_of(toml, a="Main", b="Main", c="Main")
+    changed = [
+        replace(line, placement="existing" if line.leg in theirs else "duct") for line in run.lines
+    ]
+    existing = replace(run, lines=tuple(changed))
+    assert [name for name, _, _ in courses(existing)] == [
+        "Main, a",
+        "Main, b",
+        "Main, c",
+        "spur",
+    ]
+    (circuit,) = plan(existing).circuits
+    assert [use.cable for use in circuit.uses if use.strand == 1] == ["C4", "C2", "C3"]
+
+
 def test_a_site_is_entered_where_a_circuit_ends() -> None:
     """At a site that is passed a cable can be entered only if a circuit begins or ends there."""
     toml = '[[circuit]]\nname = "P"\nfrom = "West"\nto = "Mid"\n'
