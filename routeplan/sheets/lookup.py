@@ -5,7 +5,17 @@ from __future__ import annotations
 from collections.abc import Iterable, Mapping
 from typing import TypeAlias
 
-__all__ = ["Row", "column_at", "numbers", "row_at", "rows_at", "text_at", "value_at", "whole_at"]
+__all__ = [
+    "Row",
+    "column_at",
+    "numbers",
+    "row_at",
+    "rows_at",
+    "sites_in",
+    "text_at",
+    "value_at",
+    "whole_at",
+]
 
 Row: TypeAlias = Mapping[str, object]
 
@@ -52,3 +62,19 @@ def whole_at(row: Row, key: str) -> int:
 def numbers(value: object) -> list[float]:
     """Return the numbers of a list, such as the longitude and latitude of a vertex."""
     return [float(each) for each in value] if isinstance(value, list | tuple) else []
+
+
+def sites_in(document: Row) -> list[Row]:
+    """
+    Return the nodes that are sites: those a joint stands at and no station calls one are branches.
+
+    Examples
+    --------
+    >>> nodes = [{"name": "Studio"}, {"name": "Node 1"}]
+    >>> sites_in({"nodes": nodes, "joints": [{"name": "J1", "node": "Node 1"}]})
+    [{'name': 'Studio'}]
+    """
+    stations = rows_at(document, "stations")
+    known = {text_at(row, "name") for row in stations if row.get("kind") == "site"}
+    branches = {text_at(row, "node") for row in rows_at(document, "joints")} - known
+    return [row for row in rows_at(document, "nodes") if text_at(row, "name") not in branches]

@@ -4,7 +4,15 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
 
-from routeplan.sheets.lookup import Row, column_at, numbers, rows_at, text_at, value_at
+from routeplan.sheets.lookup import (
+    Row,
+    column_at,
+    numbers,
+    rows_at,
+    sites_in,
+    text_at,
+    value_at,
+)
 from routeplan.sheets.map_style import LINE_STYLES, POINT_WORDS, line_style
 from routeplan.sheets.text import plain
 
@@ -38,7 +46,7 @@ def map_data(document: Row) -> dict[str, object]:
             _leg_columns(leg, by_leg.get(name, []), sections, origin)
             for leg, name in zip(legs, names, strict=True)
         ],
-        "sites": [_site(row, origin) for row in rows_at(document, "nodes")],
+        "sites": [_site(row, origin) for row in sites_in(document)],
         "joints": [_joint(row, names, origin) for row in rows_at(document, "joints")],
         "areas": [_area(row, origin) for row in rows_at(document, "areas")],
         "background": [

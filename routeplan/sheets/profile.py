@@ -7,6 +7,7 @@ from collections.abc import Callable, Mapping, Sequence
 
 from routeplan.sheets.lookup import Row, numbers, rows_at, text_at, value_at
 from routeplan.sheets.map_style import LineStyle, line_style
+from routeplan.sheets.picture_parts import step_digits
 from routeplan.sheets.svg_parts import (
     HAIR,
     INK,
@@ -131,7 +132,7 @@ def _loss_parts(rows: Sequence[Row], along: Scale, rows_count: int, title: str) 
             for row in rows
         ]
     )
-    digits = 0 if step_db >= 1 and step_db == round(step_db) else 1
+    digits = step_digits(step_db)
     ticks = [
         svg_text(_RIGHT + 6, scale.at(tick) + 3.5, number_text(tick, digits=digits))
         for tick in scale.ticks()

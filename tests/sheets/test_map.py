@@ -105,6 +105,18 @@ def test_placements_are_totalled_for_the_legend(document: Row) -> None:
     assert len(placements) == 8
 
 
+def test_a_branch_is_no_site() -> None:
+    """A node with a joint is drawn as that joint; one that a station calls a site stays one."""
+    document = {
+        "nodes": [{"name": name, "lon": 1.0, "lat": 2.0} for name in ("Studio", "Node 1", "Hill")],
+        "stations": [{"kind": "site", "name": "Hill"}],
+        "joints": [{"name": "J1", "node": "Node 1"}, {"name": "J2", "node": "Hill"}],
+    }
+    sites = map_data(document)["sites"]
+    assert isinstance(sites, list)
+    assert [site[0] for site in sites] == ["Studio", "Hill"]
+
+
 def test_loss_against_the_leg_is_read_along_it() -> None:
     """A circuit that runs from the leg's end is charted from its start, steps in order."""
     power = [

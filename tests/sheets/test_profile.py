@@ -65,6 +65,17 @@ def test_loss_is_drawn_only_where_it_is_given(document: Row) -> None:
     assert not any(text.startswith("Loss") for text in _texts(document))
 
 
+def test_loss_is_labelled_to_the_digits_of_its_steps(document: Row) -> None:
+    """Four steps of a quarter of a decibel say 0.25 and 0.75, not 0.2 and 0.8."""
+    for vertex in document["legs"][0]["line"]:
+        vertex[2] = None
+    for circuit in document["circuits"]:
+        most_db = max(row["loss_db"] for row in circuit["power"])
+        for row in circuit["power"]:
+            row["loss_db"] *= 0.97 / most_db
+    assert {"0.00", "0.25", "0.50", "0.75", "1.00"} <= set(_texts(document))
+
+
 def test_a_run_without_heights_says_so(document: Row) -> None:
     """No profile is drawn for a line that has no heights."""
     for vertex in document["legs"][0]["line"]:
