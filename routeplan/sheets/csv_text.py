@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import csv
 import io
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 
 from routeplan.sheets.columns import Column, Json, Table
 from routeplan.sheets.rows import flat_rows
@@ -28,12 +28,15 @@ def csv_text(document: Mapping[str, Json], entry: Table) -> str:
     entry
         The table.
     """
-    digits = {key: column.digits for key, column in _flat_columns(entry)}
+    digits = dict.fromkeys((key for key, _ in entry.carried), None)
+    digits |= {key: column.digits for key, column in _flat_columns(entry)}
     out = io.StringIO(newline="")
     writer = csv.writer(out, lineterminator="\n")
     writer.writerow(csv_heads(entry, currency=str(document["currency"])))
-    for row in flat_rows(document, entry.name):
-        writer.writerow([_cell(value, digits.get(key)) for key, value in row.items()])
+    # Column by column: what kind of number it holds is asked once, not in every cell.
+    columns = zip(*(row.values() for row in flat_rows(document, entry.name)), strict=True)
+    cells = [_cells(values, own) for values, own in zip(columns, digits.values(), strict=False)]
+    writer.writerows(zip(*cells, strict=True))
     return out.getvalue()
 
 
@@ -62,13 +65,16 @@ def _head(key: str, column: Column, currency: str) -> str:
     return key if has_unit else f"{key}_{unit}"
 
 
-def _cell(value: Json, digits: int | None) -> str:
+def _cells(values: Sequence[Json], digits: int | None) -> list[str]:
+    number = repr if digits is None else f"{{:.{digits}f}}".format
+    return [number(value) if type(value) is float else _cell(value) for value in values]
+
+
+def _cell(value: Json) -> str:
     if value is None:
         return ""
     if isinstance(value, bool):
         return "yes" if value else "no"
-    if isinstance(value, float):
-        return repr(value) if digits is None else f"{value:.{digits}f}"
     if isinstance(value, list):
         return neutral(", ".join(str(entry) for entry in value))
     return neutral(value) if isinstance(value, str) else str(value)
