@@ -153,7 +153,7 @@ def _node_joint(cable: LaidCable, chain_mm: int, node: Node, tally: _Tally, *, r
         kind="splice",
         assumed=place is None and not node.is_site,
         ends=(),
-        cost_cents=joint_cents(fitness, factor, cable.way.cable, costs),
+        cost_cents=tally.bare_cents[joint_id],
     )
     return joint_id
 
@@ -279,13 +279,13 @@ def _counted(
     *,
     run: Run,
 ) -> tuple[Joint, ...]:
-    """Return the joints with the cost of those that open a cable: only what is cut is spliced."""
-    entered = [joint for joint in joints if joint.opened]
-    counts = joint_splice_count(entered, tally.sections, cables, uses) if entered else {}
+    """Return the joints with the cost of those at nodes: of cables that meet not all is spliced."""
+    at_nodes = [joint for joint in joints if joint.node is not None]
+    counts = joint_splice_count(at_nodes, tally.sections, cables, uses) if at_nodes else {}
     each = cents_from_amount(run.practice.costs.splice_each)
     return tuple(
         replace(joint, cost_cents=tally.bare_cents[joint.id] + counts[joint.id] * each)
-        if joint.opened
+        if joint.id in counts
         else joint
         for joint in joints
     )
