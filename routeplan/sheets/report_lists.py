@@ -54,7 +54,7 @@ def legs_html(document: Row) -> str:
         length("Ground", "ground_m", units=units),
         length("Ellipsoid", "ellipsoid_m", units=units),
         length("Grid", "grid_m", units=units),
-        words("Grid of", "grid_crs"),
+        words("Grid of", "grid_crs", is_long=False),
         number("Grid scale", "grid_scale_factor", digits=6),
     ]
     stretches = [
@@ -99,7 +99,10 @@ def reels_html(document: Row) -> str:
     ]
     columns = [
         Column(head="Reel", cell=lambda row: f"<b>{safe(text_at(row, 'name'))}</b>"),
-        Column(head="From", cell=lambda row: safe(text_at(row, "source"))),
+        Column(
+            head="From",
+            cell=lambda row: f'<span class="whole">{safe(text_at(row, "source"))}</span>',
+        ),
         length("Reel length", "length_m", units=units, digits=1),
         words("Section", "section"),
         Column(head="Lies", cell=_section_cell),

@@ -196,3 +196,12 @@ def test_what_a_run_lacks_is_left_out(document: Row, leave_out: str) -> None:
 def test_the_same_document_gives_the_same_bytes(document: Row) -> None:
     """Nothing but the document decides."""
     assert report_html(document) == report_html(document)
+
+
+def test_codes_and_ways_of_buying_do_not_break(document: Row) -> None:
+    """A CRS code breaks nowhere, and the hyphen of put-up is no place to break."""
+    document["legs"][0]["grid_crs"] = "EPSG:32632"
+    document["reels"][0]["source"] = "put-up"
+    html = report_html(document)
+    assert "<td>EPSG:32632</td>" in html
+    assert '<span class="whole">put-up</span>' in html
