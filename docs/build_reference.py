@@ -28,6 +28,19 @@ _MADE = "<!-- Made from the code by docs/build_reference.py: change the code, th
 
 _INTRODUCTIONS = {  # what a reader has to know before the keys of a section of a run file
     "joining": "How lines become legs and points find them: [lengths](lengths.md).",
+    "streets": "Where the ways of `[[leg]]` are found, and what they cost: "
+    "[streets](streets.md). `costs` may be written as tables, `[streets.costs.road]` with "
+    "`primary = 2.5`, or in one, `costs = { \"road.primary\" = 2.5 }`. Areas of the geometry that "
+    "are to be avoided are avoided.",
+    "leg": "A leg whose way is found along streets when the run is planned, between sites that "
+    "stand in the geometry as points; the heading stands once for each. Two legs of which one is "
+    "`separate_from` the other are found together, at least total cost; `from` and `to` may be "
+    "left out there.",
+    "ground": "Heights of a terrain, and what is near enough to be met: "
+    "[terrain and crossings](terrain_and_crossings.md).",
+    "layer": "A file of lines and areas whose columns have names of their own; the heading stands "
+    "once for each. A file with columns `kind`, `class`, `name`, `owner`, or an OpenStreetMap "
+    "extract, can stand in `layers` instead.",
     "cable": "The default cable. `measured` is a list of tables, for example "
     "`measured = [ { wavelength_nm = 1310, attenuation_db_per_km = 0.33 } ]`: attenuation of "
     "the delivered cable, taken as typical and as maximum; `sigma_db_per_km` is 0 if left out.",

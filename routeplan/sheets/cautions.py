@@ -73,6 +73,8 @@ def _what_holds(document: Row) -> set[str]:
         "maintenance_hole": "maintenance_hole" in reach_kinds,
         "crossing": bool(crossings) or "road" in crossed,
         "rail": "rail" in crossed,
+        "power": "power" in crossed,
+        "pipeline": "pipeline" in crossed,
         "water": bool(placements & _OVER_WATER) or "water" in crossed,
         "venue": text_at(document, "purpose") == "venue",
         "transmitter": "transmitter" in roles,

@@ -14,12 +14,13 @@ from routeplan.cable.marks import printed_mark_mm, printed_marks
 from routeplan.cable.model import FibreEnd, Joint
 from routeplan.cable.way import Spot
 from routeplan.circuit_answers import changes, radio_figures, stretch_m, times
-from routeplan.ground.model import Crossing, Leg
+from routeplan.ground.model import Leg
 from routeplan.light.circuits import Closing
 from routeplan.planning import CircuitPlan, Plan, assumptions, one_fewer, ports, splices
 from routeplan.sheets.bill import bill_rows, pigtail_splice_count
 from routeplan.sheets.budget_rows import budget_row
 from routeplan.sheets.cautions import cautions_for
+from routeplan.sheets.crossing_rows import crossing_rows, steep_rows
 from routeplan.sheets.levels import level_rows, mark_rows
 from routeplan.sheets.power import power_rows
 from routeplan.sheets.rows import row_of, shaped
@@ -53,7 +54,7 @@ def plan_document(planned: Plan) -> dict[str, Json]:
         "totals": _totals(planned),
         "nodes": [row_of("nodes", node) for node in planned.ground.nodes],
         "legs": [_leg(planned, leg) for leg in planned.ground.legs],
-        "crossings": [_crossing(planned, crossing) for crossing in planned.ground.crossings],
+        "crossings": list(crossing_rows(planned)),
         "cables": [_cable(laid) for laid in planned.laid],
         "stations": list(station_rows(planned)),
         "sections": list(_sections(planned)),
@@ -122,6 +123,9 @@ def _leg(planned: Plan, leg: Leg) -> Row:
             "grid_scale_factor": _known(scale),
             "ellipsoid_m": leg.ellipsoid_m,
             "ground_m": m_from_mm(leg.length_mm),
+            "heights_from": list(leg.heights_from),
+            "smoothed_off_m": leg.smoothed_off_m,
+            "steep": list(steep_rows(leg)),
             "stretches": [
                 shaped(
                     "stretches",
@@ -137,12 +141,6 @@ def _leg(planned: Plan, leg: Leg) -> Row:
             "line_ground_m": (leg.ground_mm / 1000).tolist(),
         },
     )
-
-
-def _crossing(planned: Plan, crossing: Crossing) -> Row:
-    leg = next(leg for leg in planned.ground.legs if leg.id == crossing.leg)
-    ground_m = m_from_mm(crossing.ground_mm)
-    return row_of("crossings", crossing, leg=leg.name, ground_m=ground_m)
 
 
 def _known(value: float) -> float | None:

@@ -8,6 +8,7 @@ from collections.abc import Callable, Mapping, Sequence
 from routeplan.sheets.lookup import Row, numbers, rows_at, text_at, value_at
 from routeplan.sheets.map_style import LineStyle, line_style
 from routeplan.sheets.picture_parts import step_digits
+from routeplan.sheets.profile_points import points_svg
 from routeplan.sheets.svg_parts import (
     HAIR,
     INK,
@@ -22,9 +23,10 @@ from routeplan.sheets.text import number_text, plain, safe
 
 __all__ = ["line_svg", "nice_step", "profile_svg"]
 
-_WIDTH, _HEIGHT = 760, 220
-_LEFT, _RIGHT, _TOP, _BOTTOM = 44, _WIDTH - 44, 36, _HEIGHT - 44
+_WIDTH, _HEIGHT = 760, 280
+_LEFT, _RIGHT, _TOP, _BOTTOM = 44, _WIDTH - 44, 36, 176
 _BAND_Y = _BOTTOM + 12
+_AXIS_Y = _BAND_Y + 26
 
 
 def profile_svg(document: Mapping[str, object], leg_number: int = 0) -> str:
@@ -41,7 +43,8 @@ def profile_svg(document: Mapping[str, object], leg_number: int = 0) -> str:
     Returns
     -------
     profile_svg
-        An `svg` element; heights and loss are drawn where the document has them.
+        An `svg` element; heights and loss are drawn where the document has them, and below them
+        the leg's placements, joints, crossings, loops and reach points.
     """
     leg = rows_at(document, "legs")[leg_number]
     length_m = value_at(leg, "ground_m") or 0.0
@@ -59,6 +62,7 @@ def profile_svg(document: Mapping[str, object], leg_number: int = 0) -> str:
         *_loss(document, leg_number, along, rows_count),
         *_axis(along, length_m),
         *_ways(leg, along),
+        *points_svg(document, text_at(leg, "name"), along, _AXIS_Y + 16),
         *_joints(joints, along),
         svg_text(_LEFT - 40, 11, f"{text_at(leg, 'from')}", bold=True),
         svg_text(_RIGHT + 40, 11, f"{text_at(leg, 'to')}", anchor="end", bold=True),
@@ -149,14 +153,12 @@ def _axis(along: Scale, length_m: float) -> list[str]:
     digits = next(d for d in range(4) if d == 3 or (along.step / 1000 * 10**d) % 1 < 1e-9)
     ticks = [tick for tick in along.ticks() if tick < length_m - along.step * 0.45]
     labels = [
-        svg_text(
-            along.at(tick), _HEIGHT - 6, number_text(tick / 1000, digits=digits), anchor="middle"
-        )
+        svg_text(along.at(tick), _AXIS_Y, number_text(tick / 1000, digits=digits), anchor="middle")
         for tick in ticks
     ]
     marks = "".join(f"M{along.at(tick):.1f} {_BAND_Y + 9}v5" for tick in (*ticks, length_m))
     end = svg_text(
-        _RIGHT + 40, _HEIGHT - 6, f"{number_text(length_m / 1000, digits=3)} km", anchor="end"
+        _RIGHT + 40, _AXIS_Y, f"{number_text(length_m / 1000, digits=3)} km", anchor="end"
     )
     return [f'<path d="{marks}" stroke="#8b8778" stroke-width=".8"/>', *labels, end]
 

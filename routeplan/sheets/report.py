@@ -5,8 +5,9 @@ from __future__ import annotations
 from collections.abc import Mapping
 from importlib.resources import files
 
-from routeplan.sheets.lookup import Row, row_at, rows_at, text_at, value_at
+from routeplan.sheets.lookup import Row, row_at, rows_at, sites_in, text_at, value_at
 from routeplan.sheets.profile import profile_svg
+from routeplan.sheets.report_ground import crossings_html, steep_html
 from routeplan.sheets.report_light import circuits_html, reasons_of
 from routeplan.sheets.report_lists import (
     INVENTED,
@@ -101,7 +102,8 @@ def _sections(document: Row) -> list[tuple[str, str, str]]:
     """Return name, heading and body of every section, in reading order."""
     return [
         ("way", "Along the way", _profiles(document)),
-        ("legs", "Legs and stretches", legs_html(document)),
+        ("legs", "Legs and stretches", legs_html(document) + steep_html(document)),
+        ("crossings", "Crossings", crossings_html(document)),
         ("reels", "Reels and cuts", reels_html(document)),
         ("joints", "Joints", joints_html(document)),
         ("light", "Light", circuits_html(document)),
@@ -119,9 +121,7 @@ def _title_block(document: Row, title: str) -> str:
     purpose = {"link": "Permanent link", "venue": "Temporary run"}.get(
         text_at(document, "purpose"), ""
     )
-    sites = " \N{MIDDLE DOT} ".join(
-        text_at(node, "name") for node in rows_at(document, "nodes")[:8]
-    )
+    sites = " \N{MIDDLE DOT} ".join(text_at(node, "name") for node in sites_in(document)[:8])
     warning = f'<p class="warn">{INVENTED}</p>' if has_invented_prices(document) else ""
     return (
         f'<header><p class="kind">{purpose}</p><h1>{safe(title)}</h1>\n<p>{safe(sites)}</p>\n'

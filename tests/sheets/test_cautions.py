@@ -11,7 +11,7 @@ from tests.sheets.made_up_run import Row
 ALWAYS = ["Local rules come first", "Laser light", "Lifting and reels"]
 WORDS = {
     "always", "underground", "aerial", "maintenance_hole", "crossing", "rail", "water", "venue",
-    "transmitter", "bright",
+    "transmitter", "bright", "power", "pipeline",
 }  # fmt: skip
 
 
@@ -40,6 +40,9 @@ def test_every_run_warns_of_laser_light_and_defers_to_local_rules() -> None:
         ({"stations": [{"kind": "crossing"}]}, "Traffic and the public"),
         ({"purpose": "venue"}, "Traffic and the public"),
         ({"stations": [{"kind": "crossing", "crosses": "rail"}]}, "Railways"),
+        ({"crossings": [{"crosses": "power"}]}, "Power cables and lines crossed"),
+        ({"crossings": [{"crosses": "power"}]}, "Climbing and power lines"),
+        ({"crossings": [{"crosses": "pipeline"}]}, "Pipelines"),
         ({"nodes": [{"role": "transmitter"}]}, "Radio-frequency exposure"),
         ({"nodes": [{"role": "transmitter"}]}, "Lightning and metal in the cable"),
         (

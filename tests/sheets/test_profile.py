@@ -95,8 +95,34 @@ def test_missing_heights_do_not_break_the_profile(document: Row) -> None:
 def test_hostile_names_stay_text(hostile_document: Row) -> None:
     """The picture is well-formed and holds the names as text."""
     root = _parsed(hostile_document)
-    assert {element.tag for element in root.iter()} == {f"{SVG}svg", f"{SVG}path", f"{SVG}text"}
+    tags = {f"{SVG}{tag}" for tag in ("svg", "path", "text", "circle")}
+    assert {element.tag for element in root.iter()} <= tags
     assert hostile_document["nodes"][0]["name"] in _texts(hostile_document)
+
+
+def test_crossings_loops_and_reach_points_stand_below_their_places() -> None:
+    """Each leg shows its own crossings by letter, its loops as rings and its reach points."""
+    station = {"leg": "A", "sheath_from_m": 0.0, "sheath_to_m": 0.0}
+    document = {
+        "legs": [{"name": name, "ground_m": 1000.0} for name in ("A", "B")],
+        "stations": [
+            {**station, "kind": "loop", "ground_m": 250.0},
+            {**station, "kind": "reach", "reach_kind": "handhole", "ground_m": 750.0},
+        ],
+        "crossings": [
+            {"leg": "A", "crosses": "rail", "how": "crosses", "ground_m": 500.0},
+            {"leg": "A", "crosses": "road", "how": "along", "ground_m": 100.0},
+        ],
+    }
+    drawn = profile_svg(document, 0)
+    rings = re.findall(r'<circle cx="([\d.]+)" cy="[\d.]+" r="3.4"', drawn)
+    letters = re.findall(r'<circle cx="([\d.]+)" cy="[\d.]+" r="5"', drawn)
+    assert [float(x) for x in rings] == pytest.approx([44 + 672 * 0.25], abs=0.06)
+    assert [float(x) for x in letters] == pytest.approx([380], abs=0.06)
+    assert f"M{44 + 672 * 0.75:.1f} " in drawn
+    assert "T rail" in drawn
+    assert "R road" not in drawn
+    assert "circle" not in profile_svg(document, 1)
 
 
 def test_placements_differ_without_colour() -> None:
