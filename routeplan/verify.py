@@ -101,8 +101,8 @@ def _count_checks(run: Run, layout: Layout) -> Iterator[Check]:
         yield Check(
             kind="joints",
             where=f"cable {cable.name}",
-            value=float(count),
-            limit=float(most),
+            value=count,
+            limit=most,
             unit="",
             verdict=verdict_on(count <= most),
             source="joints.max_count",

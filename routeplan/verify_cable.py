@@ -49,8 +49,8 @@ def closure_checks(run: Run, layout: Layout, splice_counts: Mapping[str, int]) -
                 yield Check(
                     kind=kind,
                     where=where,
-                    value=float(value),
-                    limit=float(limit),
+                    value=value,
+                    limit=limit,
                     unit="",
                     verdict=verdict_on(value <= limit),
                     source=f"joints.{key}",

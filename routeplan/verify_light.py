@@ -109,8 +109,8 @@ def _interface_checks(circuit: CircuitPlan) -> Iterator[Check]:
     yield Check(
         kind="interfaces that close",
         where=circuit.order.name,
-        value=float(count),
-        limit=1.0,
+        value=count,
+        limit=1,
         unit="",
         verdict=verdict_on(count >= 1),
         source="at least one of table interfaces and of the run file's own",
@@ -128,7 +128,7 @@ def _polarity_checks(circuit: CircuitPlan) -> Iterator[Check]:
     yield Check(
         kind="polarity",
         where=circuit.order.name,
-        value=float(crossing_count(elements)),
+        value=crossing_count(elements),
         limit=None,
         unit="swaps",
         verdict=verdict_on(not problems),

@@ -97,3 +97,11 @@ def test_a_branch_closure_counts_for_no_one_cable() -> None:
     counts = [check.value for check in each.checks if check.kind == "joints"]
     assert counts == [0.0, 0.0, 0.0]
     assert each.verdict != "fails"
+
+
+def test_what_is_counted_is_whole() -> None:
+    """Joints and swaps are counted: 3 of them, not 3.000."""
+    checks = planned(5000.0, more="[joints]\nmax_count = 3\n").checks
+    counted = [check for check in checks if check.kind in ("joints", "polarity")]
+    assert {check.kind for check in counted} == {"joints", "polarity"}
+    assert all(type(check.value) is int for check in counted)
