@@ -94,9 +94,15 @@ def _raw(name: str) -> dict[str, Any]:
         raise TableError(_problem(name, "file", "is not TOML", str(error))) from None
 
 
+@cache
+def _shape(row_type: type) -> tuple[dict[str, Any], dict[str, dataclasses.Field[Any]]]:
+    """Return types and fields of a row by name: asked once, not for every row."""
+    fields = {field.name: field for field in dataclasses.fields(row_type)}
+    return typing.get_type_hints(row_type), fields
+
+
 def _typed(name: str, where: str, row_type: type[Row], raw: dict[str, Any]) -> Row:
-    hints = typing.get_type_hints(row_type)
-    fields = {f.name: f for f in dataclasses.fields(row_type)}  # type: ignore[arg-type]
+    hints, fields = _shape(row_type)
     for key in raw.keys() - fields.keys():
         raise TableError(_problem(name, where, "has an unknown field", key))
     for key, field in fields.items():
