@@ -6,6 +6,7 @@ import argparse
 import contextlib
 import gc
 import os
+import re
 import sys
 from collections.abc import Callable, Iterator, Sequence
 from pathlib import Path
@@ -116,7 +117,7 @@ def main(argv: Sequence[str] | None = None) -> int:
     """
     given = sys.argv[1:] if argv is None else list(argv)
     try:
-        arguments = make_parser().parse_args(given)
+        arguments = make_parser().parse_args([_told_from_options(each) for each in given])
         act: Callable[[argparse.Namespace], int] = arguments.act
         return act(arguments)
     except SystemExit:  # help or version has been printed
@@ -125,6 +126,11 @@ def main(argv: Sequence[str] | None = None) -> int:
         return _complain(error, as_json="--json" in given)
     except KeyboardInterrupt:
         return 130
+
+
+def _told_from_options(argument: str) -> str:
+    """Return an argument with a blank before it where it is a place west of Greenwich."""
+    return f" {argument}" if re.match(r"-[\d.]+,", argument) else argument
 
 
 def _complain(error: RouteplanError, *, as_json: bool) -> int:

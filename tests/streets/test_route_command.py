@@ -172,3 +172,16 @@ def test_unnamed_places_are_lettered() -> None:
     assert order.is_drawn
     keys = [option.key for option in ROUTE_OPTIONS]
     assert len(keys) == len(set(keys))
+
+
+@pytest.mark.parametrize("ends", [("-0.1,51.5", "-.08,51.5"), ("A=-0.1,51.5", "-0.08,51.5")])
+def test_places_west_of_greenwich_are_no_options(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, ends: tuple[str, str]
+) -> None:
+    """A longitude may begin with a minus sign, as the place of an end or behind an option."""
+    monkeypatch.chdir(tmp_path)
+    street = {"type": "LineString", "coordinates": [[-0.1, 51.5], [-0.09, 51.5], [-0.08, 51.5]]}
+    Path("streets.geojson").write_text(json.dumps(street))
+    more = ("--through", "-0.09,51.5", "--no-plan", "--no-map")
+    assert main(["route", *ends, "--streets", "streets.geojson", *more]) == 0
+    assert len(read_run("route.geojson").lines) >= 1
