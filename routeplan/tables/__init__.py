@@ -102,7 +102,7 @@ def _shape(row_type: type) -> tuple[dict[str, Any], dict[str, dataclasses.Field[
 
 
 def _typed(name: str, where: str, row_type: type[Row], raw: dict[str, Any]) -> Row:
-    hints, fields = _shape(row_type)
+    hints, fields = _shape(row_type)  # type: ignore[arg-type]
     for key in raw.keys() - fields.keys():
         raise TableError(_problem(name, where, "has an unknown field", key))
     for key, field in fields.items():
