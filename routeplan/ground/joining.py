@@ -19,6 +19,7 @@ from routeplan.run.practice import Joining
 
 __all__ = ["Network", "Piece", "chains", "join_lines"]
 
+_STRAIGHT_BACK = 1e-3  # house rule: tangent of the angle to its own way that no bend has
 _GAP_LOOK_M = 25.0  # house rule: nearer than this, two ends that do not meet look like a slip
 
 
@@ -88,7 +89,9 @@ def join_lines(drawn: Sequence[Drawn], sites: Sequence[Place], *, joining: Joini
     pieces, short = _without_stubs(pieces, tolerance_m=joining.join_tolerance_m)
     warnings.extend(short)
     warnings.extend(_gaps(lines, pieces, junctions, named=named, joining=joining))
-    warnings.extend(_doubled_back(drawn))
+    doubled = _doubled_back(drawn)
+    warnings.extend(doubled)
+    warnings.extend(_turned_back(drawn, {where for where, _ in doubled}))
     return Network(
         pieces=pieces,
         junctions=junctions,
@@ -311,6 +314,27 @@ def _doubled_back(drawn: Sequence[Drawn]) -> list[tuple[str, str]]:
             f"{' and '.join(named)}; that way is measured and planned twice"
         )
         warnings.append((str(drawn[number].line.source), text))
+    return warnings
+
+
+def _turned_back(drawn: Sequence[Drawn], told: set[str]) -> list[tuple[str, str]]:
+    """Return a warning for every line, not told of yet, that turns straight back somewhere."""
+    warnings = []
+    for line in drawn:
+        steps = np.diff(line.lonlat, axis=0)
+        middle = (line.lonlat[1:, 1] + line.lonlat[:-1, 1]) / 2
+        east, north = wrapped(steps[:, 0]) * np.cos(np.radians(middle)), steps[:, 1]
+        along = east[1:] * east[:-1] + north[1:] * north[:-1]
+        across = east[1:] * north[:-1] - north[1:] * east[:-1]
+        at = np.flatnonzero(np.abs(across) < -_STRAIGHT_BACK * along)
+        where = str(line.line.source)
+        if len(at) and where not in told:
+            lon, lat = line.lonlat[at[0] + 1]
+            text = (
+                f"it turns straight back on itself {len(at)} times, first at {lat:.6f}, {lon:.6f}; "
+                "that way is measured and planned twice"
+            )
+            warnings.append((where, text.replace("1 times, first at", "at")))
     return warnings
 
 

@@ -304,6 +304,16 @@ def test_a_line_over_itself_is_warned_of() -> None:
     assert lengths_m(laid) == [900.0]
 
 
+def test_a_line_that_turns_straight_back_is_warned_of() -> None:
+    """A spike that shares no step with its line is told of too, a sharp bend is not."""
+    laid = ground(line((0, 0), (0, 500), (0, 300), (200, 300)))
+    assert "it turns straight back on itself at " in texts(laid)
+    assert lengths_m(laid) == [900.0]
+    laid = ground(line((0, 0), (0, 500), (0, 300), (0, 800), (90, 800)))
+    assert "itself 2 times, first at " in texts(laid)
+    assert "straight back" not in texts(ground(line((0, 0), (0, 500), (2, 300))))
+
+
 def test_a_line_over_another_is_warned_of() -> None:
     """A line that shares two steps with another, either way drawn, names it."""
     laid = ground(
