@@ -20,6 +20,8 @@ from routeplan.ground.heights import assumed_heights
 from routeplan.ground.legs import lay_ground
 from routeplan.ground.model import Ground
 from routeplan.memo import Memo, remembered, swept
+from routeplan.protection import guarded_orders
+from routeplan.routed import RoutedPair, routed_run
 from routeplan.run.defaults import AssumedValue, assumed_values, default_value
 from routeplan.run.model import Run
 from routeplan.run.practice import CircuitOrder
@@ -33,7 +35,7 @@ __all__ = ["CircuitPlan", "Plan", "assumptions", "one_fewer", "plan", "ports", "
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Plan:
     """
-    A run planned.
+    A run planned; `run` has its legs along streets among its lines, `pairs` those kept separate.
 
     Whatever takes long and is not always wanted is worked out when asked for: `splices(plan)`,
     `one_fewer(plan)`, `assumptions(plan)`.
@@ -47,6 +49,8 @@ class Plan:
     splice_counts: Mapping[str, int]
     checks: tuple[Check, ...]
     warnings: tuple[tuple[str, str], ...]
+    pairs: tuple[RoutedPair, ...] = ()
+    assumed: tuple[AssumedValue, ...] = ()
 
     @property
     def verdict(self) -> Literal["fits", "fails", "unknown"]:
@@ -57,7 +61,7 @@ class Plan:
 
 def plan(run: Run, *, memo: Memo | None = None) -> Plan:
     """
-    Plan a run: ground, cables, joints and reels, fibres, light.
+    Plan a run: ways along streets, ground, cables, joints and reels, fibres, light.
 
     Parameters
     ----------
@@ -69,11 +73,13 @@ def plan(run: Run, *, memo: Memo | None = None) -> Plan:
     Raises
     ------
     InputError
-        If points, names, wavelengths or fibre counts do not fit the geometry.
+        If points, names, wavelengths or fibre counts do not fit the geometry, or a leg has no way.
     InfeasibleError
         If no layout keeps every limit.
     """
     swept(memo)
+    routed = routed_run(run, memo=memo)
+    run = routed.run
     ground = remembered(
         memo, ("ground", run.lines, run.places, run.areas, run.placement, run.crs, run.terrain,
                run.layers, run.practice.joining, run.practice.ground),
@@ -82,6 +88,7 @@ def plan(run: Run, *, memo: Memo | None = None) -> Plan:
     orders, order_warnings = _orders(run, ground)
     called = frozenset(str(end) for order in orders for end in (order.from_, order.to))
     laid = lay_cables(run, ground, memo=memo, called=called)
+    orders = guarded_orders(orders, laid, routed.pairs)
     fibres, problems = _fibres(ground, laid, orders)
     uses = fibres.uses
     layout = put_together(run, ground, laid, uses)
@@ -108,6 +115,8 @@ def plan(run: Run, *, memo: Memo | None = None) -> Plan:
             *mark_warnings(run.marks, layout),
             *light_warnings(run, layout, circuits),
         ),
+        pairs=routed.pairs,
+        assumed=routed.assumed,
     )
 
 
@@ -206,7 +215,7 @@ def one_fewer(planned: Plan) -> tuple[int, int] | None:
 
 def assumptions(planned: Plan) -> tuple[AssumedValue, ...]:
     """Return everything the plan rests on that the run did not say."""
-    return (*_assumed_ground(planned), *assumed_values(planned.run))
+    return (*planned.assumed, *_assumed_ground(planned), *assumed_values(planned.run))
 
 
 def _assumed_ground(planned: Plan) -> Iterator[AssumedValue]:

@@ -28,7 +28,7 @@ class Spot:
 
 
 def spot_at(place: Place, chain_mm: int) -> Spot:
-    """Return the spot of a declared reach point at a chain value. [mm]"""
+    """Return the spot of a reach point at a chain value; its file may call it assumed. [mm]"""
     return Spot(
         chain_mm=chain_mm,
         kind=place.kind,
@@ -36,7 +36,7 @@ def spot_at(place: Place, chain_mm: int) -> Spot:
         fitness=place.joint,
         cost_factor=place.joint_cost_factor,
         loop_m=place.loop_m,
-        assumed=False,
+        assumed=place.properties.get("assumed") is True,
         tie_key=tie_key(place.lon, place.lat, place.name),
         place=place,
     )

@@ -2,16 +2,18 @@
 
 from __future__ import annotations
 
-from typing import Annotated, TypeAlias
+from typing import Annotated, Literal, TypeAlias
 
 from pydantic import BaseModel, ConfigDict, Field
 
 __all__ = [
+    "AnyPlacement",
     "Count",
     "Decibels",
     "Metres",
     "Money",
     "Name",
+    "OwnPlacement",
     "PositiveMetres",
     "PowerDbm",
     "Ratio",
@@ -20,6 +22,11 @@ __all__ = [
     "rising",
     "without_repeats",
 ]
+
+AnyPlacement = Literal[
+    "aerial", "duct", "buried", "surface", "indoor", "bridge", "water", "existing"
+]
+OwnPlacement = Literal["aerial", "duct", "buried", "surface", "indoor", "bridge", "water"]
 
 Metres: TypeAlias = Annotated[float, Field(ge=0, le=100_000)]
 PositiveMetres: TypeAlias = Annotated[float, Field(gt=0, le=1_000_000)]

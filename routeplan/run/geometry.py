@@ -48,7 +48,13 @@ class Geometry:
 
 
 def geometry_from_files(
-    names: tuple[str, ...], folder: Path, *, run_crs: CRS | None, placement: str, trouble: Trouble
+    names: tuple[str, ...],
+    folder: Path,
+    *,
+    run_crs: CRS | None,
+    placement: str,
+    trouble: Trouble,
+    may_lack_lines: bool = False,
 ) -> Geometry:
     """
     Read vector files; everything wrong with them is noted in `trouble`.
@@ -65,6 +71,8 @@ def geometry_from_files(
         The run's placement.
     trouble
         Where problems are noted.
+    may_lack_lines
+        Whether points alone will do, because ways are still to be found.
     """
     geometry = Geometry()
     before = len(trouble.problems)
@@ -72,7 +80,7 @@ def geometry_from_files(
         for layer in _layers(name, folder, geometry, trouble):
             _add_layer(geometry, layer, run_crs=run_crs, placement=placement, trouble=trouble)
     check_together(geometry.lines, geometry.places, trouble=trouble)
-    if names and not geometry.lines and len(trouble.problems) == before:
+    if names and not (geometry.lines or may_lack_lines) and len(trouble.problems) == before:
         problem = Problem(
             where=", ".join(names),
             what="holds no line",

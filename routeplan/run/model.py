@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 
 from routeplan.run.optics import CircuitOrder, Interface, JointFigures, Panel, SectionFigures
 from routeplan.run.practice import CableMake, JacketMark, LayerColumns, Practice
+from routeplan.run.street_rules import LegOrder, StreetRules
 
 __all__ = [
     "AREA_KINDS",
@@ -29,6 +30,8 @@ __all__ = [
     "RasterSource",
     "Run",
     "Source",
+    "StreetFile",
+    "StreetFiles",
 ]
 
 Floats: TypeAlias = NDArray[np.float64]
@@ -171,6 +174,26 @@ class LayerSource:
     digest: str
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class StreetFile:
+    """A file that finding ways takes: its name in the run file, and its digest."""
+
+    file: str
+    path: str
+    digest: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class StreetFiles:
+    """Where ways of legs are found: what the run file says, and the files it names."""
+
+    rules: StreetRules
+    streets: tuple[StreetFile, ...]
+    existing: tuple[StreetFile, ...] = ()
+    avoid: tuple[StreetFile, ...] = ()
+    keep_to: tuple[StreetFile, ...] = ()
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Run:
     """
@@ -178,9 +201,10 @@ class Run:
 
     `given` holds the dotted keys the user set (`slack.entry_m`); every other value of `practice`
     and `cable` is a default and is listed as an assumption. `digest` is the SHA-256 of all input
-    bytes. `terrain` and `layers` are files that are opened when the ground is laid. `background`
-    holds polylines that the map is drawn on and nothing else looks at. `warnings` are (where,
-    message) pairs from reading.
+    bytes. `legs` are those whose ways are to be found in `streets`; they become lines when the run
+    is planned. `terrain` and `layers` are files that are opened when the ground is laid.
+    `background` holds polylines that the map is drawn on and nothing else looks at. `warnings`
+    are (where, message) pairs from reading.
     """
 
     title: str
@@ -202,6 +226,8 @@ class Run:
     joints: tuple[JointFigures, ...] = ()
     sections: tuple[SectionFigures, ...] = ()
     marks: tuple[JacketMark, ...] = ()
+    legs: tuple[LegOrder, ...] = ()
+    streets: StreetFiles | None = None
     terrain: tuple[RasterSource, ...] = ()
     layers: tuple[LayerSource, ...] = ()
     background: tuple[Floats, ...] = ()

@@ -35,13 +35,27 @@ _EXAMPLES = {  # keys without a default, as they would be written
     "joints.max_section_m": "{ duct = 6000 }",
 }
 _OTHERWISE = ("loss.connector_grade",)  # instead of the keys before it
-_LISTS = ("layer", "panel", "joint", "section", "mark", "circuit")  # one heading for each entry
+_OWN_TEXT = (  # headings that stand once for each entry, or need keys
+    *("streets", "leg", "layer", "panel", "joint", "section", "mark", "circuit"),
+)
 _LAYER = """\
 # Lines and areas the way may cross, in a file whose columns have names of their own:
 #   [[layer]]
 #   file = "roads.gpkg"
 #   kind = "road"                  # or rail, water, power, pipeline, boundary, avoid, permit
 #   class_column = "type"          # name_column, owner_column; kind_column and kinds
+"""
+_STREETS = """\
+# Legs whose way is found along streets instead of drawn, between sites of the geometry:
+#   [streets]
+#   files = ["streets.geojson"]    # or .osm, .osm.pbf, .osm.bz2, .graphml
+#   [[leg]]
+#   name = "Main"
+#   from = "A"
+#   to = "B"
+#   [[leg]]
+#   name = "Standby"
+#   separate_from = "Main"         # two ways that share no street
 """
 _SITES_AND_JOINTS = """\
 # What is mated at a site, what the splices of one joint lose, what a section was measured at:
@@ -99,7 +113,7 @@ def new_run_text(geometry_path: str | Path, *, named: str = "") -> str:
         )
         raise RunFileError(problem)
     run = read_run(path)
-    own = (_LAYER, _SITES_AND_JOINTS, _OWN_INTERFACE, _circuit(run))
+    own = (_LAYER, _STREETS, _SITES_AND_JOINTS, _OWN_INTERFACE, _circuit(run))
     return "\n".join([_head(run, named or path.name), *_sections(), *own])
 
 
@@ -121,7 +135,7 @@ def _head(run: Run, file: str) -> str:
 def _sections() -> Iterator[str]:
     for section, rows in itertools.groupby(key_rows(), key=lambda row: row.section):
         is_named = section in ("cables.NAME", "interface.NAME")
-        if section and not is_named and section.partition(".")[0] not in _LISTS:
+        if section and not is_named and section.partition(".")[0] not in _OWN_TEXT:
             yield "\n".join([f"[{section}]", *(_commented(row) for row in rows), ""])
 
 

@@ -14,11 +14,13 @@ from typing import Annotated, Literal, TypeAlias
 from pydantic import AfterValidator, BeforeValidator, Field, Strict
 
 from routeplan.run.fields import (
+    AnyPlacement,
     Count,
     Decibels,
     Metres,
     Money,
     Name,
+    OwnPlacement,
     PositiveMetres,
     Ratio,
     Section,
@@ -34,6 +36,7 @@ from routeplan.run.optics import (
     Panel,
     SectionFigures,
 )
+from routeplan.run.street_rules import LegOrder, StreetRules
 
 __all__ = [
     "CableMake",
@@ -55,12 +58,6 @@ __all__ = [
     "RunHead",
     "Slack",
 ]
-
-AnyPlacement = Literal[
-    "aerial", "duct", "buried", "surface", "indoor", "bridge", "water", "existing"
-]
-OwnPlacement = Literal["aerial", "duct", "buried", "surface", "indoor", "bridge", "water"]
-
 
 ReachKind = Literal[
     "handhole", "maintenance_hole", "pole", "cabinet", "pedestal", "building", "assumed"
@@ -366,6 +363,12 @@ class RunFile(RunHead):
     ground: GroundRules
     layer: Annotated[tuple[LayerColumns, ...], Strict(False)] = Field(
         default=(), description="Layers of what may be crossed, with their columns."
+    )
+    streets: StreetRules | None = Field(
+        default=None, description="Where ways of legs are found, and what they cost."
+    )
+    leg: Annotated[tuple[LegOrder, ...], Strict(False)] = Field(
+        default=(), description="Legs whose way is to be found along streets."
     )
     cable: CableMake = Field(description="The default cable.")
     cables: Mapping[Name, CableMake] = Field(

@@ -19,7 +19,8 @@ from routeplan.run.geometry import (
 from routeplan.run.model import Run
 from routeplan.run.practice import LayerColumns
 from routeplan.run.runfile import Declared, declared_from_text
-from routeplan.run.sources import layer_sources, raster_sources
+from routeplan.run.sources import layer_sources, raster_sources, street_files
+from routeplan.run.street_rules import stop_problems
 from routeplan.run.trouble import Trouble, listed, shown
 
 if TYPE_CHECKING:
@@ -77,7 +78,9 @@ def _read(path: Path, trouble: Trouble) -> Run | None:
         run_crs=run_crs,
         placement=head.placement if head else "duct",
         trouble=trouble,
+        may_lack_lines="leg" in declared.given,
     )
+    _check_stops(declared, geometry, file=path.name, trouble=trouble)
     geometry.contents.insert(0, content)
     background = background_from_files(
         head.background if head else (),
@@ -90,6 +93,9 @@ def _read(path: Path, trouble: Trouble) -> Run | None:
     named = head.terrain if head else ()
     terrain = raster_sources(named, path.parent, digest=digest, trouble=trouble)
     layers = layer_sources(_layers(declared), path.parent, digest=digest, trouble=trouble)
+    streets = None
+    if declared.streets is not None:
+        streets = street_files(declared.streets, path.parent, digest=digest, trouble=trouble)
     if trouble.problems:
         return None
     return replace(
@@ -97,6 +103,7 @@ def _read(path: Path, trouble: Trouble) -> Run | None:
         background=background,
         terrain=terrain,
         layers=layers,
+        streets=streets,
         digest=digest.hexdigest(),
     )
 
@@ -113,7 +120,12 @@ def _geometry_names(declared: Declared, path: Path, trouble: Trouble) -> tuple[s
         return declared.head.geometry
     if "geometry" in declared.given:
         return ()
-    beside = sorted(p.name for p in path.parent.iterdir() if p.suffix.lower() in VECTOR_SUFFIXES)
+    streets = declared.streets.files if declared.streets else ()
+    beside = sorted(
+        p.name
+        for p in path.parent.iterdir()
+        if p.suffix.lower() in VECTOR_SUFFIXES and p.name not in streets
+    )
     if len(beside) != 1:
         _refuse(
             trouble,
@@ -124,6 +136,17 @@ def _geometry_names(declared: Declared, path: Path, trouble: Trouble) -> tuple[s
         )
         return ()
     return (beside[0],)
+
+
+def _check_stops(declared: Declared, geometry: Geometry, *, file: str, trouble: Trouble) -> None:
+    """Note the sites of legs to be found that the geometry does not have."""
+    if declared.streets and not declared.legs:
+        trouble.warn(f"{file}, streets", "plays no part: no leg is to be found along streets")
+    if not geometry.places:
+        return
+    sites = [place.name for place in geometry.places if place.kind == "site"]
+    for problem in stop_problems(declared.legs, sites):
+        trouble.add(RunFileError, replace(problem, where=f"{file}, {problem.where}"))
 
 
 def _run_crs(name: str | None, *, file: str, trouble: Trouble) -> CRS | None:
@@ -165,6 +188,7 @@ def _run(declared: Declared, geometry: Geometry, names: tuple[str, ...], trouble
         joints=declared.joints,
         sections=declared.sections,
         marks=declared.marks,
+        legs=declared.legs,
         practice=declared.practice,
         given=declared.given,
         digest="",

@@ -17,9 +17,11 @@ _COMPLETE = (  # tables that make no sense without some of their keys
     "JacketMark",
     "JointFigures",
     "LayerColumns",
+    "LegOrder",
     "MeasuredAttenuation",
     "Panel",
     "SectionFigures",
+    "StreetRules",
 )
 _TYPES = {
     "boolean": "true or false",
@@ -122,7 +124,7 @@ def toml_value(value: PracticeValue) -> str:
 
 def _table(entry: Mapping[str, Any], defs: Mapping[str, Any]) -> Mapping[str, Any] | None:
     """Return the schema of the section behind an entry, None for a plain key."""
-    inner = entry
+    inner = _without_null(entry)
     for wrapper in ("additionalProperties", "items"):
         if isinstance(entry.get(wrapper), Mapping):
             inner = entry[wrapper]

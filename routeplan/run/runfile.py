@@ -16,6 +16,7 @@ from routeplan.run.optics import CircuitOrder, Interface, JointFigures, Panel, S
 from routeplan.run.practice import CableMake, JacketMark, LayerColumns, Practice, RunFile, RunHead
 from routeplan.run.runfile_checks import check_declared, refuse_unbuilt, wavelengths_of
 from routeplan.run.runfile_messages import note_errors
+from routeplan.run.street_rules import LegOrder, StreetRules
 from routeplan.run.trouble import Trouble
 
 __all__ = ["Declared", "declared_from_table", "declared_from_text", "parsed_toml"]
@@ -46,6 +47,8 @@ class Declared:
     sections: tuple[SectionFigures, ...] = ()
     marks: tuple[JacketMark, ...] = ()
     layers: tuple[LayerColumns, ...] = ()
+    streets: StreetRules | None = None
+    legs: tuple[LegOrder, ...] = ()
     given: frozenset[str] = frozenset()
 
 
@@ -232,6 +235,8 @@ def _validated(merged: Table, *, file: str, trouble: Trouble, given: frozenset[s
         sections=whole.section,
         marks=whole.mark,
         layers=whole.layer,
+        streets=whole.streets,
+        legs=whole.leg,
         given=given,
     )
 
@@ -254,6 +259,8 @@ def _sound_parts(merged: Table, error: ValidationError, *, given: frozenset[str]
         sections=_sound_list(SectionFigures, merged.get("section")),
         marks=_sound_list(JacketMark, merged.get("mark")),
         layers=_sound_list(LayerColumns, merged.get("layer")),
+        streets=_model_or_none(StreetRules, merged.get("streets")),
+        legs=_sound_list(LegOrder, merged.get("leg")),
         given=given,
     )
 

@@ -12,6 +12,7 @@ from routeplan.run.names import cable_makes, colour_codes, fibre_types, interfac
 from routeplan.run.optics import ANY_INTERFACE
 from routeplan.run.optics_checks import measured_problems, optics_problems
 from routeplan.run.practice import CableMake, CircuitOrder, Interface, Loss, Slack
+from routeplan.run.street_rules import leg_problems
 from routeplan.run.trouble import Trouble, is_plain_text, listed, nearest_hint, shown
 
 if TYPE_CHECKING:
@@ -111,6 +112,7 @@ def _contradictions(declared: Declared) -> Iterator[Problem]:
         own = _cable_problems(f"cables.{name}", cable)
         yield from (each for each in own if each.where in declared.given)
     yield from _cable_leg_problems(declared.cables)
+    yield from leg_problems(declared.legs, is_street_given="streets" in declared.given)
     for name, interface in declared.interfaces.items():
         yield from _interface_problems(f"interface.{name}", interface)
     yield from _circuit_problems(declared)

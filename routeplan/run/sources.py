@@ -1,4 +1,4 @@
-"""Rasters of heights and layers of what may be crossed: found, and their bytes counted in."""
+"""Rasters, layers of what may be crossed and streets: found, and their bytes counted in."""
 
 from __future__ import annotations
 
@@ -9,14 +9,15 @@ from typing import TYPE_CHECKING
 
 from routeplan.errors import GeometryError, Problem
 from routeplan.run.geometry import file_and_layer
-from routeplan.run.model import LayerSource, RasterSource
+from routeplan.run.model import LayerSource, RasterSource, StreetFile, StreetFiles
 from routeplan.run.practice import LayerColumns
+from routeplan.run.street_rules import StreetRules
 from routeplan.run.trouble import Trouble
 
 if TYPE_CHECKING:
     from hashlib import _Hash
 
-__all__ = ["layer_sources", "raster_sources"]
+__all__ = ["layer_sources", "raster_sources", "street_files"]
 
 _BLOCK_BYTES = 1 << 20  # rasters and extracts are counted in without being held in memory
 _BESIDE = {  # what else belongs to a file: its CRS, its place, its table
@@ -81,6 +82,42 @@ def layer_sources(
             )
             found.append(source)
     return tuple(found)
+
+
+def street_files(
+    rules: StreetRules, folder: Path, *, digest: _Hash, trouble: Trouble
+) -> StreetFiles:
+    """
+    Return the files in which ways of legs are found; they are not read yet.
+
+    Parameters
+    ----------
+    rules
+        What the run file says of streets.
+    folder
+        What relative names are relative to.
+    digest
+        Of all input bytes; theirs are added.
+    trouble
+        Where problems are noted.
+    """
+
+    def found(names: Sequence[str]) -> tuple[StreetFile, ...]:
+        files = []
+        for name in names:
+            file, _ = file_and_layer(name, folder)
+            own = _digest(folder / file, file, digest=digest, trouble=trouble)
+            if own is not None:
+                files.append(StreetFile(file=name, path=str(folder / name), digest=own))
+        return tuple(files)
+
+    return StreetFiles(
+        rules=rules,
+        streets=found(rules.files),
+        existing=found(rules.existing),
+        avoid=found(rules.avoid),
+        keep_to=found(rules.keep_to),
+    )
 
 
 def _digest(path: Path, name: str, *, digest: _Hash, trouble: Trouble) -> str | None:

@@ -21,6 +21,7 @@ __all__ = [
     "line_between",
     "rows_of",
     "tree_ways",
+    "way_features",
 ]
 
 _CROSSES = {"rail": "rail", "water": "water", "motorway": "road"}
@@ -75,6 +76,28 @@ def collection_of(ways: Sequence[NamedWay], sites: Sequence[SiteMark]) -> dict[s
         features.extend(_reach(named, len(ways) > 1))
         features.extend(_crossings(named, len(ways) > 1))
     return {"type": "FeatureCollection", "features": features}
+
+
+def way_features(
+    named: NamedWay, others: Sequence[Floats], *, is_one_of_many: bool = True
+) -> list[dict[str, object]]:
+    """
+    Return one way as GeoJSON features: its lines, reach points and crossings.
+
+    Parameters
+    ----------
+    named
+        The way.
+    others
+        The lines of all other ways, which its own lines do not end on.
+    is_one_of_many
+        Whether names of its points begin with its own.
+    """
+    return [
+        *_lines(named, others),
+        *_reach(named, is_one_of_many),
+        *_crossings(named, is_one_of_many),
+    ]
 
 
 def collection_text(collection: Mapping[str, object]) -> str:
