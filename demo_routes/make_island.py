@@ -5,13 +5,17 @@ from __future__ import annotations
 import argparse
 from pathlib import Path
 
-from island.geojson import coast_text, link_text, streets_text
+from island.geojson import coast_text, lines_text, link_text, streets_text
+from island.raster import crs_text, raster_text
 
 __all__ = ["main", "write_island"]
 
 _FILES = {
     "island/coast.geojson": coast_text,
+    "island/lines.geojson": lines_text,
     "island/streets.geojson": streets_text,
+    "island/terrain.asc": raster_text,
+    "island/terrain.prj": crs_text,
     "quenmoor_link/route.geojson": link_text,
 }
 

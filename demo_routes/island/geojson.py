@@ -8,11 +8,11 @@ from typing import Any
 import numpy as np
 
 from island.frame import BOUNDS, Floats, lonlat_from_xy
-from island.layers import streets
+from island.layers import power_line, railway, streets
 from island.link import link_areas, link_points, link_stretches
-from island.terrain import coast_xy, height_of_lonlat_m
+from island.terrain import beck_xy, coast_xy, river_xy
 
-__all__ = ["coast_text", "link_text", "streets_text"]
+__all__ = ["coast_text", "lines_text", "link_text", "streets_text"]
 
 _DECIMALS = 7  # about a centimetre
 
@@ -33,16 +33,31 @@ def streets_text() -> str:
     return _text(features)
 
 
+def lines_text() -> str:
+    """Return what else the island has that can be crossed: railway, waters, power line."""
+    lines = (
+        (railway(), "rail", "mineral", "Skelvane railway", "Skelvane Stone Railway"),
+        (river_xy(), "water", "river", "Lunnoth", "Lunnoth Rivers Office"),
+        (beck_xy(), "water", "stream", "Sarrel Beck", "Lunnoth Rivers Office"),
+        (power_line(), "power", "line", "Lunnothfoot power line", "Ostrellan Power"),
+    )
+    keys = ("kind", "class", "name", "owner")
+    return _text(
+        [
+            _feature("LineString", _flat(xy), dict(zip(keys, named, strict=True)))
+            for xy, *named in lines
+        ]
+    )
+
+
 def link_text() -> str:
-    """Return the demo link: stretches, then points, then areas, with heights."""
+    """Return the demo link: stretches, then points, then areas; the terrain has the heights."""
     features = []
     for stretch in link_stretches():
         properties = {"name": stretch.name, "placement": stretch.placement}
-        line = _with_heights(stretch.line, deck=stretch.placement == "bridge")
-        features.append(_feature("LineString", line, properties))
+        features.append(_feature("LineString", _flat(stretch.line), properties))
     features.extend(
-        _feature("Point", _with_heights(point.xy[None])[0], point.properties)
-        for point in link_points()
+        _feature("Point", _flat(point.xy[None])[0], point.properties) for point in link_points()
     )
     for ring, named in link_areas():
         features.append(_feature("Polygon", [_flat(ring)], named))
@@ -60,15 +75,6 @@ def _rounded(xy: Floats) -> Floats:
 
 def _flat(xy: Floats) -> list[list[float]]:
     return [[float(v) for v in row] for row in _rounded(xy)]
-
-
-def _with_heights(xy: Floats, *, deck: bool = False) -> list[list[float]]:
-    """Return coordinates with the height of the ground, or of a deck straight between its ends."""
-    lonlat = _rounded(xy)
-    height: Floats = np.round(height_of_lonlat_m(lonlat), 1)
-    if deck:
-        height = np.round(np.linspace(height[0], height[-1], len(height)), 1).astype(float)
-    return [[*map(float, row), float(h)] for row, h in zip(lonlat, height, strict=True)]
 
 
 def _feature(kind: str, coordinates: Any, properties: dict[str, Any]) -> dict[str, Any]:

@@ -17,7 +17,14 @@ from pyproj import Geod, Transformer
 from shapely import LineString, Point, Polygon
 
 DEMO = Path(__file__).parents[2] / "demo_routes"
-MADE = ("island/coast.geojson", "island/streets.geojson", "quenmoor_link/route.geojson")
+VECTORS = (
+    "island/coast.geojson",
+    "island/streets.geojson",
+    "quenmoor_link/route.geojson",
+    "island/lines.geojson",
+)
+RASTER = "island/terrain.asc"
+MADE = (*VECTORS, RASTER, "island/terrain.prj")
 WGS84 = Geod(ellps="WGS84")
 TO_UTM = Transformer.from_crs("EPSG:4326", "EPSG:32727", always_xy=True)  # zone 27 south
 LINE_KEYS = {"name", "placement"}
@@ -111,7 +118,7 @@ def test_files_are_small() -> None:
 def test_everything_lies_in_the_declared_box(island: Island) -> None:
     """No coordinate of any file lies outside the declared bounds, nor has too many digits."""
     west, south, east, north = island.frame.BOUNDS
-    for name in MADE:
+    for name in VECTORS:
         rows = np.vstack([coordinates(feature)[:, :2] for feature in features(name)])
         assert np.all((rows > [west, south]) & (rows < [east, north])), name
         assert np.array_equal(rows, np.round(rows, 7)), name
@@ -265,14 +272,41 @@ def test_places_fit_for_a_joint_are_near_enough() -> None:
     assert np.diff(sorted(at_m)).max() < 600.0
 
 
-def test_heights_are_those_of_the_ground(island: Island) -> None:
-    """Heights equal the terrain to its 0.1 m; the bridge runs straight between its ends."""
-    for feature in [*link("LineString"), *link("Point")]:
-        rows = coordinates(feature)
-        ground_m = np.round(island.terrain.height_of_lonlat_m(rows[:, :2]), 1)
-        if feature["properties"].get("placement") == "bridge":
-            ground_m = np.round(np.linspace(ground_m[0], ground_m[-1], len(rows)), 1)
-        assert np.array_equal(rows[:, 2], ground_m), feature["properties"]["name"]
+def test_heights_are_in_the_raster_alone(island: Island) -> None:
+    """The link has no heights; those the raster gives are the ground's within a metre or two."""
+    from routeplan.ground.terrain import heights_at, open_terrain
+
+    rows = np.vstack([coordinates(f) for f in [*link("LineString"), *link("Point")]])
+    assert rows.shape[1] == 2
+    found = heights_at(open_terrain([DEMO / RASTER]), rows).heights_m
+    off_m = found - island.terrain.height_of_lonlat_m(rows)
+    assert np.abs(off_m).max() < 2.5  # whole metres, straight between cells 44 by 56 m apart
+    assert np.sqrt(np.mean(off_m**2)) < 0.6
+
+
+def test_the_link_is_planned_on_the_islands_ground() -> None:
+    """Heights come from the raster, crossings of the geometry and of the layers stand once."""
+    from routeplan import plan, read_run
+    from routeplan.sheets.crossing_rows import crossing_rows
+
+    planned = plan(read_run(DEMO / "quenmoor_link"))
+    (leg,) = planned.ground.legs
+    assert leg.heights_from == ("terrain",)
+    assert len(planned.layout.reels) == 4
+    assert len(planned.layout.joints) == 3
+    rows = crossing_rows(planned)
+    met = {key: [row for row in rows if row["crosses"] == key] for key in ("rail", "power")}
+    assert [(row["ask"], row["source"]) for row in met["rail"]] == [
+        ("Skelvane Stone Railway", "declared")
+    ]
+    assert [(row["ask"], row["source"]) for row in met["power"]] == [
+        ("Ostrellan Power", "declared")
+    ]
+    waters = [row for row in rows if row["crosses"] == "water"]
+    assert [(row["class"], row["source"]) for row in waters] == [
+        ("stream", "declared"),
+        ("river", "found"),
+    ]
 
 
 def test_crossings_lie_on_what_they_cross(island: Island) -> None:
