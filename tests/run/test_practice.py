@@ -10,7 +10,7 @@ from pydantic import ValidationError
 
 from routeplan.errors import TableError
 from routeplan.run import assumed_values, default_value, practice_rows, read_run, value_of
-from routeplan.run.practice import CableMake, CircuitOrder, Costs, Loss, Reels, Slack
+from routeplan.run.practice import CableMake, CircuitOrder, Costs, GroundRules, Loss, Reels, Slack
 
 
 def test_every_field_of_the_practice_has_a_default_row() -> None:
@@ -19,6 +19,7 @@ def test_every_field_of_the_practice_has_a_default_row() -> None:
     free = {"joints.max_count", "joints.max_section_m", "cable.measured", "cable.legs"}
     free |= {"loss.connector_grade"}
     for section, model in {
+        "ground": GroundRules,
         "slack": Slack,
         "reels": Reels,
         "costs": Costs,

@@ -224,6 +224,13 @@ class Strip {
       const piece = [this.xAt(start), y, Math.max(this.xAt(end), this.xAt(start) + 1), y];
       strokeLine(ctx, [piece], this.run.styles.get(placement), PAPER);
     }
+    for (const point of this.leg.points) {
+      const [code, x] = [this.run.codes[point.code], this.xAt(point.ground)];
+      if (code === "loop") ring(ctx, x, this.plot.bottom - 5, 2.5);
+      if (code === "crossing") {
+        drawCross(ctx, x, this.plot.bottom - 5, [[2.5, 2.5], [2.5, -2.5]], [[3.5, PAPER], [1.4, INK]]);
+      }
+    }
     for (const joint of this.run.joints) {
       if (joint.leg !== this.legNumber) continue;
       drawPoint(ctx, joint.assumed ? "assumed_joint" : "joint", this.xAt(joint.ground), y);
