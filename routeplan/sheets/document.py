@@ -27,6 +27,7 @@ from routeplan.sheets.rows import row_of, shaped
 from routeplan.sheets.spectrum import spectrum_row
 from routeplan.sheets.stations import station_rows
 from routeplan.sheets.tables import SCHEMA, Json, Row
+from routeplan.sheets.way_rows import separate_way_rows, standby_rows
 from routeplan.units import amount_from_cents, m_from_mm
 
 __all__ = ["plan_document"]
@@ -64,6 +65,8 @@ def plan_document(planned: Plan) -> dict[str, Json]:
         "splices": list(_splices(planned)),
         "panels": list(_panels(planned)),
         "circuits": [_circuit(planned, circuit) for circuit in planned.circuits],
+        "separate_ways": [*separate_way_rows(planned)],
+        "standbys": [*standby_rows(planned)],
         "checks": [row_of("checks", check) for check in planned.checks],
         "bill": [],
         "assumptions": [row_of("assumptions", entry) for entry in assumptions(planned)],

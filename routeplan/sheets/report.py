@@ -23,6 +23,7 @@ from routeplan.sheets.report_lists import (
 )
 from routeplan.sheets.report_parts import section, verdict_mark
 from routeplan.sheets.report_splices import closures_html
+from routeplan.sheets.report_ways import protection_html
 from routeplan.sheets.text import count_text, length_text, number_text, safe
 
 __all__ = ["report_html"]
@@ -107,6 +108,7 @@ def _sections(document: Row) -> list[tuple[str, str, str]]:
         ("reels", "Reels and cuts", reels_html(document)),
         ("joints", "Joints", joints_html(document)),
         ("light", "Light", circuits_html(document)),
+        ("protection", "Protection", protection_html(document)),
         ("checks", "Checks", checks_html(document)),
         ("bill", "Bill", bill_html(document)),
         ("assumptions", "Assumptions", assumptions_html(document)),

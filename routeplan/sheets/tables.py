@@ -16,6 +16,7 @@ from routeplan.sheets.column_kinds import (
 )
 from routeplan.sheets.columns import Column, Json, Row, Table
 from routeplan.sheets.tables_light import LIGHT_TABLES, VERDICTS
+from routeplan.sheets.tables_ways import WAY_TABLES
 
 __all__ = ["HEAD", "SCHEMA", "TABLES", "Column", "Json", "Row", "Table", "csv_tables", "table"]
 
@@ -332,6 +333,7 @@ _TABLES = (
         ),
     ),
     *LIGHT_TABLES,
+    *WAY_TABLES,
     Table(
         name="checks",
         title="Checks",
