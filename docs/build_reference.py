@@ -30,7 +30,7 @@ _INTRODUCTIONS = {  # what a reader has to know before the keys of a section of 
     "joining": "How lines become legs and points find them: [lengths](lengths.md).",
     "streets": "Where the ways of `[[leg]]` are found, and what they cost: "
     "[streets](streets.md). `costs` may be written as tables, `[streets.costs.road]` with "
-    "`primary = 2.5`, or in one, `costs = { \"road.primary\" = 2.5 }`. Areas of the geometry that "
+    '`primary = 2.5`, or in one, `costs = { "road.primary" = 2.5 }`. Areas of the geometry that '
     "are to be avoided are avoided.",
     "leg": "A leg whose way is found along streets when the run is planned, between sites that "
     "stand in the geometry as points; the heading stands once for each. Two legs of which one is "
@@ -119,8 +119,8 @@ _NOT_YET = """\
 _COMMANDS_HEAD = """\
 # Commands
 
-`routeplan COMMAND ...`, or `python -m routeplan COMMAND ...`. None uses the network, save `route` where
-it is asked to download streets.
+`routeplan COMMAND ...`, or `python -m routeplan COMMAND ...`. None uses the network, save `route`
+where it is asked to download streets.
 """
 
 _COMMANDS_TAIL = """\
