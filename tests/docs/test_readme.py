@@ -13,7 +13,7 @@ from pathlib import Path
 
 import pytest
 
-from routeplan.cli import main
+from routeplan.cli import main, make_parser
 
 ROOT = Path(__file__).parents[2]
 README = (ROOT / "README.md").read_text("utf-8")
@@ -149,3 +149,29 @@ def test_the_readme_is_short_and_opens_with_the_job() -> None:
     assert blocks[0] == "# routeplan"
     assert blocks[1].startswith("A broadcast engineer")
     assert re.fullmatch(r"!\[.+\]\(maps/quenmoor_link\.png\)", blocks[2])
+
+
+@pytest.mark.parametrize("words", ["[reels]\nstock = [2000]", "[pulling]", "[traces]", "[compare]"])
+def test_keys_for_what_is_missing_are_refused(
+    clone: Path, capsys: pytest.CaptureFixture[str], words: str
+) -> None:
+    """A run file with a key for what the README calls missing is refused."""
+    missing = re.search(r"^## What it does not do yet\n\n(.*?)\n\n", README, re.M | re.DOTALL)
+    assert missing is not None
+    assert "refused, not ignored" in missing[1]
+    run = clone / "demo_routes/quenmoor_link/asked.toml"
+    run.write_text(f'geometry = ["route.geojson"]\n{words}\n', "utf-8")
+    assert main(["check", str(run)]) == 2
+    said = capsys.readouterr().err
+    assert "is not a known key" in said or "is not yet available" in said
+
+
+def test_the_changelog_names_every_command() -> None:
+    """The changelog's list of commands is the program's."""
+    usage = re.search(r"^  COMMAND\n((?:    .*\n)+)", make_parser().format_help(), re.MULTILINE)
+    assert usage is not None
+    commands = {line.split()[0] for line in usage[1].splitlines()}
+    changes = (ROOT / "CHANGELOG.md").read_text("utf-8")
+    listed = re.search(r"^- Commands (.*)\.$", changes, re.MULTILINE)
+    assert listed is not None
+    assert set(re.findall(r"`(\w+)`", listed[1])) == commands
