@@ -347,6 +347,14 @@ def test_run_file_names_what_the_route_holds() -> None:
     }
 
 
+def test_no_circuit_of_the_link_shines_both_ways_on_one_wavelength_of_one_fibre() -> None:
+    """A circuit on a single fibre would have a wavelength for each way."""
+    with (DEMO / "quenmoor_link/run.toml").open("rb") as file:
+        circuits = tomllib.load(file)["circuit"]
+    assert [circuit["name"] for circuit in circuits] == ["Programme", "Telemetry"]
+    assert all(each["fibre_count"] > 1 or len(each["wavelengths_nm"]) > 1 for each in circuits)
+
+
 def test_a_way_costs_least_where_the_ground_is_level(island: Island) -> None:
     """A way between two towns goes over the pass, not straight over the top of the fell."""
     start, end = np.array([-7_500.0, 1_000.0]), np.array([-1_600.0, 1_000.0])
