@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from routeplan.sheets.lookup import Row, rows_at, text_at, value_at
 from routeplan.sheets.report_parts import Column, db, length, number, table, words
-from routeplan.sheets.text import length_text, safe
+from routeplan.sheets.text import length_text, number_text, safe
 
 __all__ = ["protection_html"]
 
@@ -61,24 +61,33 @@ def _where(row: Row) -> str:
 
 
 def _standbys(rows: list[Row]) -> str:
+    """Return each circuit and its standby one below the other, and what both have in common."""
     if not rows:
         return ""
     columns = [
-        words("Circuit", "main"),
-        words("Standby", "standby"),
-        db("Margin", "main_margin_db"),
-        db("Standby margin", "standby_margin_db"),
-        db("Worst loss", "main_worst_db"),
-        db("Standby worst loss", "standby_worst_db"),
-        number("Delay, us", "main_delay_us", digits=3),
-        number("Standby delay, us", "standby_delay_us", digits=3),
-        number("Difference, us", "difference_us", digits=3),
-        Column(head="Cable in common", cell=_shared, is_long=True),
+        words("Circuit", "name", is_long=False),
+        words("Stands by for", "main", is_long=False),
+        db("Least margin, dB", "margin_db"),
+        db("Worst loss, dB", "worst_db"),
+        number("Delay, us", "delay_us", digits=3),
     ]
-    return f"<h3>Circuits that stand by</h3>\n{table(columns, rows)}"
+    parts = ["<h3>Circuits that stand by</h3>\n"]
+    for row in rows:
+        both = [_side(row, "main"), {**_side(row, "standby"), "main": text_at(row, "main")}]
+        parts.append(f"{table(columns, both)}<p>{safe(_together(row))}</p>\n")
+    return "".join(parts)
 
 
-def _shared(row: Row) -> str:
+def _side(row: Row, side: str) -> Row:
+    keys = ("margin_db", "worst_db", "delay_us")
+    return {"name": text_at(row, side), "main": "-"} | {
+        key: row.get(f"{side}_{key}") for key in keys
+    }
+
+
+def _together(row: Row) -> str:
     listed = row.get("shared_cables")
-    names = listed if isinstance(listed, list) else []
-    return safe(", ".join(map(str, names)) or "none")
+    names = ", ".join(map(str, listed)) if isinstance(listed, list) else ""
+    cable = f"Both are in cable {names}: one cut takes both." if names else "No cable carries both."
+    difference = number_text(value_at(row, "difference_us"), digits=3)
+    return f"Their delays differ by {difference} us. {cable}"

@@ -62,10 +62,13 @@ def test_the_report_says_what_could_cut_both(document: dict[str, Any]) -> None:
     """The section is there, with every exposure, and what is not known is said."""
     page = report_html(document)
     section = page.partition('<section id="protection">')[2].partition("</section>")[0]
-    assert section.count("<tr>") == 2 + len(document["separate_ways"][0]["exposures"]) + 1
+    exposures = document["separate_ways"][0]["exposures"]
+    assert section.count("<tr>") == (1 + len(exposures)) + (1 + 2), "heads, exposures, circuits"
     assert "share no street and no junction; proven." in section
     assert "Chambers, buildings and ducts inside one street are not known here." in section
     assert "Programme standby" in section
+    difference_us = document["standbys"][0]["difference_us"]
+    assert f"Their delays differ by {difference_us:.3f} us. No cable carries both." in section
 
 
 def test_a_run_without_protection_has_no_such_section(mixed_plan: Plan) -> None:
