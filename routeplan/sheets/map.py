@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING
 
 from routeplan.sheets.lookup import Row, row_at, rows_at, text_at, value_at
 from routeplan.sheets.map_data import map_data
+from routeplan.sheets.optics_pictures import circuit_pictures
 from routeplan.sheets.text import count_text, data_block, length_text, number_text, safe
 
 if TYPE_CHECKING:
@@ -149,7 +150,8 @@ def _below_html(document: Row) -> str:
         '<section class="strip"><canvas id="strip-chart"></canvas>'
         '<canvas id="strip-pointer" tabindex="0" role="img" '
         'aria-label="Height and loss against ground length"></canvas></section>\n'
-        f'<footer class="foot">{_cautions_html(document)}<span class="choices">'
+        f'<footer class="foot">{_cautions_html(document)}{_light_html(document)}'
+        '<span class="choices">'
         '<select data-choice="leg" aria-label="Leg" hidden></select>'
         '<select data-choice="curve" aria-label="Loss of" hidden></select></span></footer>\n'
         f"{data_block('run-data', map_data(document))}\n"
@@ -166,6 +168,20 @@ def _cautions_html(document: Row) -> str:
         for row in cautions
     )
     return f"<details><summary><b>Cautions</b> {topics}</summary><dl>{texts}</dl></details>"
+
+
+def _light_html(document: Row) -> str:
+    """Return the pictures of every circuit's light, folded away until they are wanted."""
+    drawn = [(text_at(row, "name"), circuit_pictures(row)) for row in rows_at(document, "circuits")]
+    shown = [(name, pictures) for name, pictures in drawn if pictures]
+    if not shown:
+        return ""
+    names = " \N{MIDDLE DOT} ".join(safe(name) for name, _ in shown)
+    figures = "".join(
+        f"<h2>{safe(name)}</h2>" + "".join(f"<figure>{picture}</figure>" for picture in pictures)
+        for name, pictures in shown
+    )
+    return f'<details class="light"><summary><b>Light</b> {names}</summary>{figures}</details>'
 
 
 def _with_policy(html: str) -> str:

@@ -32,7 +32,7 @@ from routeplan.sheets.svg_parts import (
 )
 from routeplan.sheets.text import number_text, plain
 
-__all__ = ["PICTURES_MOST", "level_svg", "spectrum_svg"]
+__all__ = ["PICTURES_MOST", "circuit_pictures", "level_svg", "spectrum_svg"]
 
 PICTURES_MOST = 4
 """Wavelengths of one circuit whose power is drawn; the others are in the data alone."""
@@ -49,6 +49,20 @@ class _Limit:
     text: str
     dash: str
     is_high: bool = False
+
+
+def circuit_pictures(circuit: Row) -> list[str]:
+    """
+    Return the pictures of one circuit: attenuation against wavelength, power along the glass.
+
+    Parameters
+    ----------
+    circuit
+        A row of `circuits`; `PICTURES_MOST` wavelengths are drawn at most.
+    """
+    levels = rows_at(circuit, "levels")[:PICTURES_MOST]
+    drawn = [spectrum_svg(circuit), *(level_svg(circuit, row) for row in levels)]
+    return [picture for picture in drawn if picture]
 
 
 def spectrum_svg(circuit: Row) -> str:

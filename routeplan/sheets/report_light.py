@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from routeplan.sheets.lookup import Row, rows_at, text_at, value_at
-from routeplan.sheets.optics_pictures import PICTURES_MOST, level_svg, spectrum_svg
+from routeplan.sheets.optics_pictures import PICTURES_MOST, circuit_pictures
 from routeplan.sheets.report_answers import answers_html
 from routeplan.sheets.report_parts import Column, db, number, table, verdict_mark, words
 from routeplan.sheets.text import count_text, length_text, number_text, safe
@@ -75,11 +75,9 @@ def _circuit(document: Row, circuit: Row) -> str:
 def _pictures(circuit: Row) -> str:
     """Return attenuation against wavelength and power along the glass, where the data is there."""
     levels = rows_at(circuit, "levels")
-    drawn = [
-        spectrum_svg(circuit),
-        *(level_svg(circuit, row) for row in levels[:PICTURES_MOST]),
-    ]
-    figures = "".join(f'<figure class="keep">{picture}</figure>' for picture in drawn if picture)
+    figures = "".join(
+        f'<figure class="keep">{picture}</figure>' for picture in circuit_pictures(circuit)
+    )
     more = len(levels) - PICTURES_MOST
     note = (
         f'<p class="note">Power at {count_text(more, "more wavelength")} is in plan.json.</p>\n'

@@ -4,16 +4,20 @@ from __future__ import annotations
 
 import re
 from bisect import bisect_right
+from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import pytest
 
+from routeplan import plan, read_run
+from routeplan.sheets.document import plan_document
 from routeplan.sheets.map import map_html
 from tests.sheets.made_up_run import HOSTILE_NAMES, Row, made_up_run
 
 if TYPE_CHECKING:
     from playwright.sync_api import Page
 
+DEMO = Path(__file__).parents[2] / "demo_routes/quenmoor_link"
 SPOT = """(ground) => {
   const { map, layer } = runSheet;
   const at = map.latLngToContainerPoint(layer.spotLatLng({ leg: 0, ground }));
@@ -309,3 +313,14 @@ def test_a_background_is_drawn_under_the_way(open_html: Any, document: Row) -> N
     before = page.evaluate(GREY)
     _switch(page, "background")
     assert page.evaluate(GREY) < before
+
+
+def test_the_pictures_of_light_unfold_below_the_map(open_html: Any) -> None:
+    """Every circuit's pictures are in the page, folded away until they are asked for."""
+    document = plan_document(plan(read_run(DEMO)))
+    page = open_html(map_html(document)).page
+    drawn = page.locator(".foot .light figure svg")
+    assert drawn.count() == 4  # attenuation and power of each of the two circuits
+    assert not drawn.first.is_visible()
+    page.click(".foot .light summary")
+    assert drawn.first.is_visible()
