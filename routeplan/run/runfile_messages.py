@@ -16,6 +16,7 @@ from routeplan.run.trouble import Trouble, listed, nearest_hint, number_hint, sh
 
 __all__ = ["key_path", "note_errors", "sections"]
 
+_MISSPELT_RATIO = 0.9  # so like a key of its own section that it belongs in no other
 _UNITS = {
     "_ps_per_nm": "ps/nm",
     "_db_per_km": "dB/km",
@@ -173,7 +174,7 @@ def _unknown_key(
     here = _section_of(path[:-1])
     known = known or sections().get(here, ())
     homes = [section for section, keys in sections().items() if key in keys and section != here]
-    if homes and not nearest_hint(key, [name for name in known if name.lower() == key.lower()]):
+    if homes and not nearest_hint(key, known, likeness_min_ratio=_MISSPELT_RATIO):
         remedy = f"It belongs {_place_of(homes[0])}."
     else:
         remedy = nearest_hint(key, known) or _hint_elsewhere(key)

@@ -23,6 +23,7 @@ __all__ = [
 
 _SHOWN_OF_A_KIND = 20
 _SHOWN_CHARACTERS = 80
+_LIKENESS_MIN_RATIO = 0.6
 
 
 @dataclass(slots=True)
@@ -101,7 +102,11 @@ def listed(values: Iterable[object]) -> str:
 
 
 def nearest_hint(
-    value: object, known: Iterable[str], *, template: str = 'Did you mean "{}"?'
+    value: object,
+    known: Iterable[str],
+    *,
+    template: str = 'Did you mean "{}"?',
+    likeness_min_ratio: float = _LIKENESS_MIN_RATIO,
 ) -> str:
     """
     Return a hint at the known name nearest to `value`, or nothing if none is near.
@@ -114,7 +119,9 @@ def nearest_hint(
     if not isinstance(value, str):
         return ""
     by_folded = {name.casefold(): name for name in known}
-    near = difflib.get_close_matches(value[:100].casefold(), by_folded, n=1, cutoff=0.6)
+    near = difflib.get_close_matches(
+        value[:100].casefold(), by_folded, n=1, cutoff=likeness_min_ratio
+    )
     return template.format(by_folded[near[0]]) if near else ""
 
 

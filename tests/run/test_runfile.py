@@ -122,7 +122,12 @@ CIRCUIT = '[[circuit]]\nname = "P"\nfrom = "A"\nto = "B"\n'
             "(850, limit at least 1260 nm).",
         ),
         (
-            "[[circuit]]\nform = 'A'",
+            "[[circuit]]\nwavelength_nm = 1310",
+            'run.toml, circuit "Circuit 1", wavelength_nm: is not a known key. '
+            'Did you mean "wavelengths_nm"?',
+        ),
+        (
+            '[[circuit]]\nform = "A"',
             'run.toml, circuit "Circuit 1", form: is not a known key. Did you mean "from"?',
         ),
         (
