@@ -5,9 +5,14 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping, Sequence
 from itertools import groupby
 
-from routeplan.sheets.lookup import Row, row_at, rows_at, text_at, value_at, whole_at
-from routeplan.sheets.report_splices import joint_leg_place, position_text
-from routeplan.sheets.text import length_text, plain
+from routeplan.sheets.joint_words import (
+    cable_lines,
+    entered_m_of,
+    joint_leg_place,
+    position_text,
+)
+from routeplan.sheets.lookup import Row, row_at, rows_at, text_at, whole_at
+from routeplan.sheets.text import plain
 
 __all__ = ["cards_text"]
 
@@ -33,23 +38,13 @@ def cards_text(document: Row) -> str:
     for row in rows_at(document, "splices"):
         splices.setdefault(text_at(row, "joint"), []).append(row)
     sections = {text_at(row, "name"): row for row in rows_at(document, "sections")}
-    entered = _entered_m(document)
+    entered = entered_m_of(document)
     cards = (
         "\n".join(_card(document, joint, splices.get(name, []), sections, entered))
         for joint in rows_at(document, "joints")
         for name in [text_at(joint, "name")]
     )
     return f"\n{_FORM_FEED}\n".join(cards) + "\n"
-
-
-def _entered_m(document: Row) -> dict[tuple[str, str], float]:
-    """Return where along a section's jacket the stations of each name lie. [m]"""
-    found: dict[tuple[str, str], float] = {}
-    for row in rows_at(document, "stations"):
-        along_m = value_at(row, "section_m")
-        if text_at(row, "kind") in ("joint", "site") and along_m is not None:
-            found[text_at(row, "section"), text_at(row, "name")] = along_m
-    return found
 
 
 def _card(
@@ -66,42 +61,13 @@ def _card(
     yield f"Way there  {plain(joint_leg_place(document, joint))}"
     yield f"Position   {position_text(joint)}"
     units = text_at(document, "units")
-    for end in rows_at(joint, "ends"):
-        yield "Cable      " + _end_line(end, sections, units=units)
-    for section in _texts(joint.get("opened")):
-        at_m = next(
-            (
-                entered[section, name]
-                for name in (text_at(joint, "name"), text_at(joint, "node"))
-                if (section, name) in entered
-            ),
-            None,
-        )
-        row = sections.get(section, {})
-        yield (
-            f"Cable      {plain(section)} passes, from {plain(text_at(row, 'from'))} to "
-            f"{plain(text_at(row, 'to'))}: open it at {plain(length_text(at_m, units=units))}, "
-            "do not cut it"
-        )
+    for line in cable_lines(joint, sections, entered, units=units):
+        yield f"Cable      {line}"
     for tray, group in groupby(splices, key=lambda row: whole_at(row, "tray")):
         yield ""
         yield f"TRAY {tray}" if tray else "NOT CUT, on no tray"
         yield "-" * _WIDTH
         yield from (_fibre_line(row) for row in group)
-
-
-def _end_line(end: Row, sections: Mapping[str, Row], *, units: str) -> str:
-    """Return what a cable end is: its section, where it comes from, its own jacket metres."""
-    name, side = text_at(end, "section"), text_at(end, "side")
-    row = sections.get(name, {})
-    at_m = value_at(row, "sheath_m") if side == "end" else 0.0
-    other = text_at(row, "from" if side == "end" else "to")
-    way = "from" if side == "end" else "to"
-    reel = f", reel {plain(text_at(row, 'reel'))}" if text_at(row, "reel") else ""
-    at = plain(length_text(at_m, units=units))
-    mark_m = value_at(end, "jacket_mark_m")
-    mark = "" if mark_m is None else f", marked {plain(length_text(mark_m, units=units))}"
-    return f"{plain(name)} {way} {plain(other)}{reel}: its {side}, at {at} of its jacket{mark}"
 
 
 def _fibre_line(row: Row) -> str:
@@ -116,7 +82,3 @@ def _fibre_text(end: Row) -> str:
         plain(text) for text in (text_at(end, "tube_colour"), text_at(end, "fibre_colour")) if text
     )
     return f"{plain(text_at(end, 'section'))} {whole_at(end, 'fibre')} {colours}".rstrip()
-
-
-def _texts(value: object) -> list[str]:
-    return [str(entry) for entry in value] if isinstance(value, list) else []

@@ -64,7 +64,7 @@ _HOW_TO_READ = (
     ),
     (
         "Fibre colours",
-        "The patch shows the colour and its mark, the word beside it counts. In the schedule an "
+        "The patches show tube and fibre with their marks, the words count. On a card an "
         "arrow joins fibres of the same number and colour; a cross marks any other pair.",
     ),
 )

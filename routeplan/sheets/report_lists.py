@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
+from routeplan.sheets.joint_words import joint_leg_place, position_text
 from routeplan.sheets.lookup import Row, row_at, rows_at, text_at, value_at
 from routeplan.sheets.map_style import line_style
 from routeplan.sheets.profile import line_svg
@@ -16,7 +17,6 @@ from routeplan.sheets.report_parts import (
     verdict_mark,
     words,
 )
-from routeplan.sheets.report_splices import joint_place, position_text
 from routeplan.sheets.text import number_text, safe
 
 __all__ = [
@@ -163,7 +163,7 @@ def joints_html(document: Row) -> str:
         Column(head="Place", cell=_place_cell),
         *([words("Leg", "leg")] if len(rows_at(document, "legs")) > 1 else []),
         length("Ground station", "ground_m", units=text_at(document, "units")),
-        Column(head="How to get there", cell=lambda row: joint_place(document, row)),
+        Column(head="How to get there", cell=lambda row: safe(joint_leg_place(document, row))),
         Column(
             head="Latitude, longitude",
             cell=lambda row: f'<span class="whole">{safe(position_text(row))}</span>',

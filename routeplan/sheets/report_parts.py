@@ -17,6 +17,7 @@ __all__ = [
     "number",
     "section",
     "swatch",
+    "swatch_fills",
     "table",
     "table_row",
     "verdict_mark",
@@ -117,11 +118,16 @@ def swatch(colour: str) -> str:
 
     A colour nobody has defined here gets an empty patch: the word is what counts.
     """
-    known = [_SWATCHES[word] for word in colour.lower().split() if word in _SWATCHES]
+    known = swatch_fills(colour)
     fill = known[0] if known else "transparent"
     if len(known) > 1:
         fill = f"linear-gradient({fill} 34%,{known[1]} 34% 66%,{fill} 66%)"
     return f'<span class="swatch" style="background:{fill}"></span>{safe(colour)}'
+
+
+def swatch_fills(colour: str) -> list[str]:
+    """Return what the words of a colour look like, the mark after the ground; nothing unknown."""
+    return [_SWATCHES[word] for word in colour.lower().split() if word in _SWATCHES]
 
 
 def _class(column: Column) -> str:

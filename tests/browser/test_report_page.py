@@ -27,7 +27,7 @@ def test_hostile_names_stay_text(open_html: Any, hostile_document: Row) -> None:
 
 
 def test_each_closure_starts_a_page_in_print(open_html: Any, document: Row) -> None:
-    """A sheet can be taped to the lid of its closure; long tables repeat their heads."""
+    """A card can be taped to the lid of its closure; long tables repeat their heads."""
     page = open_html(report_html(document)).page
     page.emulate_media(media="print")
     assert page.evaluate(STYLE, [".closure:nth-of-type(2)", "breakBefore"]) == "page"
@@ -46,3 +46,17 @@ def test_nothing_is_wider_than_the_page(open_html: Any, document: Row) -> None:
         "Math.max(...[...document.querySelectorAll('table')].map((t) => t.scrollWidth))"
     )
     assert widest <= 695
+
+
+def test_no_text_of_a_card_runs_over_its_edge(open_html: Any, document: Row) -> None:
+    """As the browser sets them, all texts of every card end on its paper."""
+    page = open_html(report_html(document)).page
+    over = page.evaluate(
+        "[...document.querySelectorAll('.card')].flatMap((card) => {"
+        "const edge = card.getBoundingClientRect();"
+        "return [...card.querySelectorAll('text')].filter((text) => {"
+        "const own = text.getBoundingClientRect();"
+        "return own.right > edge.right + 0.5 || own.left < edge.left - 0.5"
+        "|| own.bottom > edge.bottom + 0.5}).map((text) => text.textContent)})"
+    )
+    assert over == []

@@ -7,9 +7,9 @@ from html import unescape
 
 import pytest
 
+from routeplan.sheets.joint_words import runs_of_splices
 from routeplan.sheets.report import report_html
 from routeplan.sheets.report_parts import swatch
-from routeplan.sheets.report_splices import runs_of_splices
 from tests.sheets.made_up_run import HOSTILE_NAMES, Row
 
 DASH = "\N{EN DASH}"
@@ -34,13 +34,20 @@ def _rows(part: str) -> list[str]:
     return [_text(f"<body>{row}").strip() for row in rows]
 
 
-def test_every_fibre_of_every_closure_has_a_row(document: Row) -> None:
-    """24 fibres in 3 closures are 72 rows, each with both colours in words."""
+def _fibres(part: str) -> list[str]:
+    """Return the lines of all fibres of the cards, as a reader sees them."""
+    found = re.findall(r'<g class="fibre">(.*?)</g>', part, re.DOTALL)
+    return [_text(f"<body>{line}").strip() for line in found]
+
+
+def test_every_fibre_of_every_closure_has_a_line(document: Row) -> None:
+    """24 fibres in 3 closures are 72 lines: colours in words, the tube's at the tray's head."""
     html = report_html(document)
     schedule = _section(html, "schedule")
-    assert len(_rows(schedule)) == len(document["splices"]) == 72
-    assert schedule.count('class="closure"') == 3
-    assert _rows(schedule)[13] == "2 S1 14 orange orange → S2 14 orange orange splice spare 0.10"
+    assert len(_fibres(schedule)) == len(document["splices"]) == 72
+    assert schedule.count('class="closure"') == schedule.count("<svg") == 3
+    assert _fibres(schedule)[13] == "2 S1 14 orange \N{RIGHTWARDS ARROW} S2 14 orange spare"
+    assert _text(f"<body>{schedule}").count("Tray 2, tube orange") == 3
 
 
 def test_closures_carry_what_a_crew_needs_on_the_lid(document: Row) -> None:
@@ -49,7 +56,7 @@ def test_closures_carry_what_a_crew_needs_on_the_lid(document: Row) -> None:
     joint = document["joints"][0]
     assert f"{joint['lat']:.6f}, {joint['lon']:.6f}" in text
     assert "5 000.0 m along the way from Ostrel House" in text
-    assert "section S1 (from Ostrel House), reel R1 ends here" in text
+    assert "S1 from Ostrel House, reel R1: its end, at 5 145.0 m of its jacket" in text
     assert "place assumed: confirm on site before ordering" in text
     assert document["title"] in text
 
@@ -80,8 +87,8 @@ def test_a_colour_that_differs_is_not_straight_through() -> None:
 def test_a_stored_fibre_has_an_empty_far_side(document: Row) -> None:
     """With nothing to splice to, the row is still there and says stored."""
     document["splices"][0] |= {"out": None, "kind": "stored"}
-    row = _rows(_section(report_html(document), "schedule"))[0]
-    assert row == "1 S1 1 blue blue ↓ stored Programme 0.10"
+    line = _fibres(_section(report_html(document), "schedule"))[0]
+    assert line == "1 S1 1 blue \N{DOWNWARDS ARROW} stored Programme"
 
 
 def test_marked_colours_show_their_mark() -> None:
