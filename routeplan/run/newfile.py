@@ -26,7 +26,6 @@ _EXAMPLES = {  # keys without a default, as they would be written
     "cable.metal": "false",
     "cable.located": "false",
     "cable.indoor_max_m": "15.0",
-    "cable.terminate": '"circuits"',
     "joints.max_count": "40",
     "joints.keep_off_m": "20.0",
     "joints.cost_factor_by_kind": "{ pole = 2.0 }",

@@ -18,6 +18,7 @@ def test_every_field_of_the_practice_has_a_default_row() -> None:
     named = {row.name for row in practice_rows()}
     free = {"joints.max_count", "joints.max_section_m", "cable.measured", "cable.legs"}
     free |= {"loss.connector_grade"}
+    free |= {f"cable.{key}" for key in ("make", "metal", "located", "indoor_max_m")}
     for section, model in {
         "ground": GroundRules,
         "slack": Slack,
