@@ -31,6 +31,8 @@ __all__ = [
     "TableError",
 ]
 
+_CHOICES = ("one of ", "only ")  # a limit that is a list of words says so itself
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Problem:
@@ -45,7 +47,8 @@ class Problem:
     def __str__(self) -> str:
         """Return the problem as one or two sentences."""
         text = f"{self.where}: {self.what}" if self.where else self.what
-        facts = [self.value, f"limit {self.limit}" if self.limit else ""]
+        is_choice = self.limit.startswith(_CHOICES)
+        facts = [self.value, f"limit {self.limit}" if self.limit and not is_choice else self.limit]
         shown = ", ".join(fact for fact in facts if fact)
         if shown:
             text += f" ({shown})"

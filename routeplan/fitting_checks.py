@@ -15,7 +15,7 @@ from routeplan.light.grid import check_coarse_channels, coarse_channel_count
 from routeplan.light.interfaces import check_fibre_count, check_wavelengths, find_interface
 from routeplan.run.model import Run
 from routeplan.run.optics import ANY_INTERFACE, CircuitOrder
-from routeplan.run.trouble import listed, nearest_hint, shown
+from routeplan.run.trouble import nearest_hint, one_of, shown
 
 __all__ = ["fitting_problems", "optics_problems", "way_problems"]
 
@@ -139,4 +139,4 @@ def _off_the_way(where: str, name: str, known: Iterable[str]) -> Problem:
 
 def _some(names: Sequence[str]) -> str:
     more = f" and {len(names) - _LISTED} more" if len(names) > _LISTED else ""
-    return listed(names[:_LISTED]) + more
+    return one_of(names[:_LISTED]) + more

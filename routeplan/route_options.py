@@ -282,7 +282,7 @@ def _check_choices(given: Mapping[str, Any], problems: list[Problem]) -> None:
                 where="--separate",
                 what="is not a known rule",
                 value=str(separate)[:80],
-                limit="streets, junctions",
+                limit="one of streets, junctions",
             )
         )
     asked = [

@@ -333,7 +333,7 @@ def test_all_that_keeps_legs_from_ways_is_said_at_once(told: Callable[..., list[
             STREETS + '[[leg]]\nname = "Main"\nfrom = "A"\nto = "Bee"\n',
             [
                 'run.toml, leg "Main", to: is not a site that stands in the geometry as a point '
-                '("Bee", limit A, B, C).'
+                '("Bee", one of A, B, C).'
             ],
         ),
         (
@@ -351,7 +351,7 @@ def test_all_that_keeps_legs_from_ways_is_said_at_once(told: Callable[..., list[
             STREETS + MAIN + '[[leg]]\nname = "S"\nseparate_from = "Mian"\n',
             [
                 'run.toml, leg "S", separate_from: is not another leg that is found along streets '
-                '("Mian", limit Main). Did you mean "Main"?'
+                '("Mian", only Main). Did you mean "Main"?'
             ],
         ),
         (
@@ -376,7 +376,7 @@ def test_all_that_keeps_legs_from_ways_is_said_at_once(told: Callable[..., list[
         (
             STREETS + MAIN + 'way = "rails"\n',
             [
-                'run.toml, leg "Main", way: is not one of the values it can take ("rails", limit '
+                'run.toml, leg "Main", way: is not one of the values it can take ("rails", only '
                 "streets)."
             ],
         ),

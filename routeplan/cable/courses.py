@@ -13,7 +13,7 @@ from routeplan.errors import Problem, RunFileError
 from routeplan.ground.model import Ground, Leg, Node
 from routeplan.run.model import Run
 from routeplan.run.practice import CableMake
-from routeplan.run.trouble import listed, nearest_hint, shown
+from routeplan.run.trouble import nearest_hint, one_of, shown
 
 __all__ = ["Course", "cable_courses"]
 
@@ -131,7 +131,7 @@ def _leg_problems(cables: Mapping[str, CableMake], legs: Sequence[Leg]) -> Itera
                 where=where,
                 what="names a leg that the geometry does not have",
                 value=shown(leg),
-                limit=listed(list(known)),
+                limit=one_of(list(known)),
                 remedy=nearest_hint(leg, list(known)),
             )
         if not unknown and make.legs:

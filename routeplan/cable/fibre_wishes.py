@@ -9,7 +9,7 @@ from routeplan.cable.hops import Hop, Way
 from routeplan.cable.model import Cable
 from routeplan.errors import Problem
 from routeplan.run.practice import CircuitOrder
-from routeplan.run.trouble import listed, nearest_hint, shown
+from routeplan.run.trouble import listed, nearest_hint, one_of, shown
 
 __all__ = ["hops_via", "via_problems", "wanted_problems"]
 
@@ -31,7 +31,7 @@ def via_problems(circuit: CircuitOrder, cables: Sequence[Cable]) -> Iterator[Pro
                 where=f'circuit "{circuit.name}", via',
                 what="is not the name of a cable",
                 value=shown(name),
-                limit=listed(known),
+                limit=one_of(known),
                 remedy=nearest_hint(name, known),
             )
 

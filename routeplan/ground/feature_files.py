@@ -22,6 +22,7 @@ from routeplan.ground.feature_tags import (
 from routeplan.ground.features import FEATURE_KINDS, FeatureKind, FeatureLayer, feature_layer
 from routeplan.ground.model import Leg
 from routeplan.run.crs import crs_or_none, is_wgs84, unusable
+from routeplan.run.trouble import one_of
 
 __all__ = ["Box", "box_around", "is_osm", "read_features", "read_osm"]
 
@@ -186,7 +187,7 @@ def _chosen(path: Path, fields: list[str], columns: dict[str, str]) -> dict[str,
             where=path.name,
             what=f"has no column for the {key}",
             value=column,
-            limit=", ".join(fields) or "no column",
+            limit=one_of(fields) or "no column",
         )
         for key, column in columns.items()
         if column not in fields
@@ -196,7 +197,7 @@ def _chosen(path: Path, fields: list[str], columns: dict[str, str]) -> dict[str,
             where=path.name,
             what="no such thing is read from a column",
             value=key,
-            limit=", ".join(_COLUMN_NAMES),
+            limit=one_of(_COLUMN_NAMES),
         )
         for key in columns
         if key not in _COLUMN_NAMES
@@ -233,7 +234,7 @@ def _kinds(
                 where=path.name,
                 what=f"column {chosen['kind']} holds what is no kind",
                 value=", ".join(strange[:5]),
-                limit=", ".join(FEATURE_KINDS),
+                limit=one_of(FEATURE_KINDS),
                 remedy="Say which kind each value stands for",
             )
         )

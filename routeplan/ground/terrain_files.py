@@ -15,6 +15,7 @@ from routeplan.ground.terrain_model import Affine, Sheet, Terrain, Tile
 from routeplan.ground.terrain_place import misplaced
 from routeplan.ground.terrain_plain import asc_reader, hgt_reader, open_asc, open_hgt
 from routeplan.ground.terrain_tiff import open_tiff, tiff_reader
+from routeplan.run.trouble import one_of
 
 __all__ = ["TERRAIN_SUFFIXES", "open_terrain", "window_reader"]
 
@@ -74,7 +75,7 @@ def _expanded(paths: Sequence[Path], problems: list[Problem]) -> Iterator[Path]:
         inside = sorted(p for p in path.iterdir() if p.suffix.lower() in TERRAIN_SUFFIXES)
         if not inside:
             what = "is a folder without a raster of heights"
-            problems.append(Problem(where=path.name, what=what, limit=", ".join(TERRAIN_SUFFIXES)))
+            problems.append(Problem(where=path.name, what=what, limit=one_of(TERRAIN_SUFFIXES)))
         yield from inside
 
 
@@ -85,7 +86,7 @@ def _opened(path: Path, *, crs: str | None) -> Tile | Problem:
             where=path.name,
             what="is of no kind of raster that is read",
             value=suffix or "no suffix",
-            limit=", ".join(TERRAIN_SUFFIXES),
+            limit=one_of(TERRAIN_SUFFIXES),
         )
     if not path.is_file():
         folder = path.parent.name or "this folder"

@@ -29,6 +29,7 @@ from routeplan.run.trouble import (
     listed,
     nearest_hint,
     number_hint,
+    one_of,
     shown,
 )
 
@@ -230,7 +231,7 @@ def _check_place(
         if value is not None and kind != "crossing":
             reading.fault(key, "is for crossings only", value=f"at a {_spoken(kind).lower()}")
     if kind == "crossing" and crosses is None and "crosses" not in known:
-        reading.fault("", "is a crossing that does not say what it crosses", limit=listed(CROSSES))
+        reading.fault("", "is a crossing that does not say what it crosses", limit=one_of(CROSSES))
 
 
 def _joint(kind: str, known: Known, reading: _Reading) -> JointFitness:
@@ -327,7 +328,7 @@ def _word(known: Known, key: str, reading: _Reading, *, words: tuple[str, ...] =
         key,
         f"is not a known {key}" if key != "crosses" else "is nothing known to be crossed",
         value=shown(value),
-        limit=listed(words),
+        limit=one_of(words),
         remedy=nearest_hint(value, words),
     )
     return None

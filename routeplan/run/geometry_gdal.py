@@ -18,7 +18,7 @@ from routeplan.run.crs import crs_or_none
 from routeplan.run.geometry_gpx import xml_problem
 from routeplan.run.model import Source
 from routeplan.run.shapes import Layer, Shape, feature_label
-from routeplan.run.trouble import Trouble, listed, nearest_hint, shown
+from routeplan.run.trouble import Trouble, listed, nearest_hint, one_of, shown
 
 if TYPE_CHECKING:
     from pyproj import CRS
@@ -116,7 +116,7 @@ def _layer_names(path: Path, *, file: str, only: str | None, trouble: Trouble) -
         where=file,
         what="has no such layer",
         value=shown(only),
-        limit=listed(every),
+        limit=one_of(every),
         remedy=nearest_hint(only, every),
     )
     trouble.add(GeometryError, problem, file=file)

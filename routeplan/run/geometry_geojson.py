@@ -152,7 +152,7 @@ def _features(root: Table, *, file: str, trouble: Trouble) -> Iterator[Table]:
             file,
             "is not GeoJSON",
             value=f"type is {shown(kind)}",
-            limit=f"FeatureCollection, Feature, {', '.join(_DEPTHS)}, GeometryCollection",
+            limit=f"one of FeatureCollection, Feature, {', '.join(_DEPTHS)}, GeometryCollection",
         )
 
 

@@ -18,7 +18,7 @@ from routeplan.run.optics import (
     SectionFigures,
 )
 from routeplan.run.practice import Loss
-from routeplan.run.trouble import is_plain_text, listed, nearest_hint, shown
+from routeplan.run.trouble import is_plain_text, nearest_hint, one_of, shown
 
 if TYPE_CHECKING:
     from routeplan.run.runfile import Declared
@@ -213,7 +213,7 @@ def _table_part_problems(where: str, part: CircuitPart) -> Iterator[Problem]:
         yield Problem(
             where=where,
             what="names no part",
-            limit=listed(optical_parts()),
+            limit=one_of(optical_parts()),
             remedy='Give name, or kind = "own" and loss_db.',
         )
     elif part.name not in optical_parts():
@@ -249,6 +249,6 @@ def _unknown(
         where=where,
         what=f"is not a known {what}",
         value=shown(name),
-        limit="" if hint and len(known) > 12 else listed(known),
+        limit="" if hint and len(known) > 12 else one_of(known),
         remedy=hint,
     )

@@ -13,7 +13,7 @@ from routeplan.run.optics import ANY_INTERFACE
 from routeplan.run.optics_checks import measured_problems, optics_problems
 from routeplan.run.practice import CableMake, CircuitOrder, Interface, Loss, Slack
 from routeplan.run.street_rules import leg_problems
-from routeplan.run.trouble import Trouble, is_plain_text, listed, nearest_hint, shown
+from routeplan.run.trouble import Trouble, is_plain_text, nearest_hint, one_of, shown
 
 if TYPE_CHECKING:
     from routeplan.run.runfile import Declared
@@ -148,7 +148,7 @@ def _cable_problems(where: str, cable: CableMake) -> Iterator[Problem]:
             where=f"{where}.fibre_type",
             what="is a multimode fibre, which does not mix with the singlemode fibre planned here",
             value=shown(cable.fibre_type),
-            limit=listed(fibre_types()),
+            limit=one_of(fibre_types()),
         )
     elif cable.fibre_type not in fibre_types():
         yield _unknown_name(f"{where}.fibre_type", "fibre type", cable.fibre_type, fibre_types())
@@ -284,7 +284,7 @@ def _unknown_name(where: str, what: str, name: str, known: tuple[str, ...]) -> P
         where=where,
         what=f"is not a known {what}",
         value=shown(name),
-        limit="" if hint and len(known) > 12 else listed(known),
+        limit="" if hint and len(known) > 12 else one_of(known),
         remedy=hint,
     )
 

@@ -12,7 +12,7 @@ from pydantic_core import ErrorDetails
 from routeplan.errors import Problem, RunFileError
 from routeplan.run.optics import CircuitBend, CircuitPart, MeasuredAttenuation
 from routeplan.run.practice import RunFile, RunHead
-from routeplan.run.trouble import Trouble, listed, nearest_hint, number_hint, shown
+from routeplan.run.trouble import Trouble, nearest_hint, number_hint, one_of, shown
 
 __all__ = ["key_path", "note_errors", "sections"]
 
@@ -146,7 +146,7 @@ def _problem(detail: ErrorDetails, data: Mapping[str, Any], *, file: str) -> Pro
             where=where,
             what=_WHATS[kind],
             value=value,
-            limit=listed(known),
+            limit=one_of(known),
             remedy=nearest_hint(detail["input"], known),
         )
     what = _WHATS.get(kind, f"is not right: {detail['msg']}")
@@ -182,7 +182,7 @@ def _unknown_key(
     return Problem(
         where=where,
         what=what or "is not a known key",
-        limit="" if remedy else listed(known),
+        limit="" if remedy else one_of(known),
         remedy=remedy,
     )
 

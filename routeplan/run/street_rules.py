@@ -10,7 +10,7 @@ from pydantic import BeforeValidator, Field, Strict
 
 from routeplan.errors import Problem
 from routeplan.run.fields import AnyPlacement, Name, OwnPlacement, PositiveMetres, Section
-from routeplan.run.trouble import is_plain_text, listed, nearest_hint, shown
+from routeplan.run.trouble import is_plain_text, listed, nearest_hint, one_of, shown
 
 __all__ = ["LegOrder", "StreetRules", "leg_problems", "stop_problems"]
 
@@ -154,7 +154,7 @@ def stop_problems(legs: Sequence[LegOrder], sites: Sequence[str]) -> Iterator[Pr
                     where=f"{_where(leg.name)}, {key}",
                     what="is not a site that stands in the geometry as a point",
                     value=shown(name),
-                    limit=listed(sites) or "none is there",
+                    limit=one_of(sites) or "none is there",
                     remedy=nearest_hint(name, sites),
                 )
 
@@ -192,7 +192,7 @@ def _pair_problems(leg: LegOrder, named: Mapping[str, LegOrder], count: int) -> 
             where=where,
             what="is not another leg that is found along streets",
             value=shown(leg.separate_from),
-            limit=listed(others) or "there is none",
+            limit=one_of(others) or "there is none",
             remedy=nearest_hint(leg.separate_from, others),
         )
         return

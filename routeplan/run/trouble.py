@@ -18,6 +18,7 @@ __all__ = [
     "listed",
     "nearest_hint",
     "number_hint",
+    "one_of",
     "shown",
 ]
 
@@ -99,6 +100,19 @@ def shown(value: object) -> str:
 def listed(values: Iterable[object]) -> str:
     """Return the values of a choice as a message lists them."""
     return ", ".join(str(value) for value in values)
+
+
+def one_of(values: Iterable[object]) -> str:
+    """
+    Return the values of a choice as the limit of a problem; nothing if there are none.
+
+    Examples
+    --------
+    >>> one_of(["yes", "avoid", "no"]), one_of(["Main"]), one_of([])
+    ('one of yes, avoid, no', 'only Main', '')
+    """
+    known = list(values)
+    return f"{'one of' if len(known) > 1 else 'only'} {listed(known)}" if known else ""
 
 
 def nearest_hint(

@@ -203,7 +203,7 @@ def _bad_placement(
 ) -> list[Problem]:
     if placement is None or placement in table["placement"]:
         return []
-    from routeplan.run.trouble import listed, nearest_hint, shown
+    from routeplan.run.trouble import nearest_hint, one_of, shown
 
     known = table["placement"]
     return [
@@ -211,7 +211,7 @@ def _bad_placement(
             where="placement",
             what="is not a known placement",
             value=shown(placement),
-            limit=listed(known),
+            limit=one_of(known),
             remedy=nearest_hint(placement, known),
         )
     ]

@@ -16,7 +16,7 @@ from routeplan.run.geometry_geojson import layers_from_geojson
 from routeplan.run.geometry_gpx import layers_from_gpx
 from routeplan.run.model import PLACEMENTS
 from routeplan.run.shapes import Layer
-from routeplan.run.trouble import Trouble, cleaned_text, listed, nearest_hint, shown
+from routeplan.run.trouble import Trouble, cleaned_text, nearest_hint, one_of, shown
 from routeplan.streets.assemble import Lines, lines_from
 
 __all__ = ["read_layers", "read_polygons"]
@@ -159,7 +159,7 @@ def _placement(known: Mapping[str, object], where: str, usual: str | None, troub
             where=f"{where}, placement",
             what="is not a known placement",
             value=shown(word),
-            limit=listed(PLACEMENTS),
+            limit=one_of(PLACEMENTS),
             remedy=nearest_hint(word, PLACEMENTS),
         )
         trouble.add(GeometryError, problem)

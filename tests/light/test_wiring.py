@@ -71,7 +71,7 @@ def test_an_angled_end_on_a_flat_one_and_an_unknown_site_are_errors() -> None:
     )
     unknown, mixed = problems_of(straight_run(toml + CIRCUIT))
     assert unknown == (
-        'panel "Hil", site: is not a site ("Hil", limit Studio, Hill). Did you mean "Hill"?'
+        'panel "Hil", site: is not a site ("Hil", one of Studio, Hill). Did you mean "Hill"?'
     )
     assert mixed.startswith('panel "Studio", lead_polish: an angled connector would be mated')
 
@@ -119,7 +119,7 @@ def test_a_measured_section_goes_before_its_cable() -> None:
     rest_km = found["cables"][0]["glass_m"] / 1000 - glass_km
     assert lines["fibre G.652.D, measured C1"]["each_db"] == pytest.approx(0.2 * rest_km, abs=6e-4)
     (text,) = problems_of(straight_run(toml.replace('"S2"', '"S9"')))
-    assert 'section "S9", name: is not a section of this plan ("S9", limit S1, S2, S3)' in text
+    assert 'section "S9", name: is not a section of this plan ("S9", one of S1, S2, S3)' in text
 
 
 def test_glass_above_its_ceiling_fails_a_check() -> None:

@@ -144,20 +144,20 @@ def test_areas_are_read_and_unkinded_polygons_left_out(
     [
         (
             {"kind": "hand_hole"},
-            'kind: is not a known kind ("hand_hole", limit site, handhole, maintenance_hole, pole, '
-            'cabinet, pedestal, building, crossing). Did you mean "handhole"?',
+            'kind: is not a known kind ("hand_hole", one of site, handhole, maintenance_hole, '
+            'pole, cabinet, pedestal, building, crossing). Did you mean "handhole"?',
         ),
         ({"kind": "Site"}, 'Did you mean "site"?'),
-        ({"kind": 5}, "kind: is not a known kind (5, limit"),
+        ({"kind": 5}, "kind: is not a known kind (5, one of"),
         (
             {"kind": "site", "role": "boss"},
-            'role: is not a known role ("boss", limit studio, transmitter, venue, compound, '
+            'role: is not a known role ("boss", one of studio, transmitter, venue, compound, '
             "position, repeater).",
         ),
         ({"kind": "pole", "role": "studio"}, "role: is for sites only (studio at a pole)."),
         (
             {"kind": "pole", "joint": True},
-            "joint: is not a known joint (true, limit yes, avoid, no).",
+            "joint: is not a known joint (true, one of yes, avoid, no).",
         ),
         ({"kind": "pole", "loop_m": "12"}, 'loop_m: is not a number ("12"). Write the number'),
         (
@@ -173,10 +173,13 @@ def test_areas_are_read_and_unkinded_polygons_left_out(
             {"kind": "pole", "joint_cost_factor": 0},
             "joint_cost_factor: is out of range (0, limit more than 0, at most 10000).",
         ),
-        ({"kind": "crossing"}, "is a crossing that does not say what it crosses (limit road, rail"),
+        (
+            {"kind": "crossing"},
+            "is a crossing that does not say what it crosses (one of road, rail",
+        ),
         (
             {"kind": "crossing", "crosses": "lava"},
-            'crosses: is nothing known to be crossed ("lava", limit road, rail, water, power, '
+            'crosses: is nothing known to be crossed ("lava", one of road, rail, water, power, '
             "pipeline).",
         ),
         ({"kind": "pole", "crosses": "road"}, "crosses: is for crossings only (at a pole)."),
@@ -207,7 +210,7 @@ def test_wrong_properties_of_points_are_named(
     [
         (
             {"placement": "areal"},
-            'placement: is not a known placement ("areal", limit aerial, duct, buried, surface, '
+            'placement: is not a known placement ("areal", one of aerial, duct, buried, surface, '
             'indoor, bridge, water, existing). Did you mean "aerial"?',
         ),
         (
@@ -252,7 +255,7 @@ def test_wrong_areas_are_named(
 ) -> None:
     """Areas are to avoid or take a permit, and have rings of four positions at least."""
     assert said(collection(road, feature("Polygon", RING, kind="park"))) == [
-        'route.geojson, feature 2, kind: is not a known kind ("park", limit avoid, permit).'
+        'route.geojson, feature 2, kind: is not a known kind ("park", one of avoid, permit).'
     ]
     thin = [[[10.0, 50.0], [10.1, 50.0], [10.0, 50.0]]]
     assert said(collection(road, feature("Polygon", thin, kind="avoid"))) == [

@@ -252,7 +252,7 @@ def test_layers_of_a_geopackage_are_read_all_or_by_name(
     assert [line.source.layer for line in run.lines] == ["spurs"]
     assert run.title == "net"
     assert said(write("run.toml", 'geometry = ["net.gpkg|spur"]')) == [
-        'net.gpkg: has no such layer ("spur", limit ways, spurs). Did you mean "spurs"?'
+        'net.gpkg: has no such layer ("spur", one of ways, spurs). Did you mean "spurs"?'
     ]
 
 

@@ -148,7 +148,7 @@ def test_longitudes_beyond_the_antimeridian_are_brought_back(
         (b"1" + b"0" * 5000, "route.geojson: holds a number with too many digits."),
         (
             b'{"type": "Topology"}',
-            'route.geojson: is not GeoJSON (type is "Topology", limit FeatureCollection, Feature, '
+            'route.geojson: is not GeoJSON (type is "Topology", one of FeatureCollection, Feature, '
             "Point, MultiPoint, LineString, MultiLineString, Polygon, MultiPolygon, "
             "GeometryCollection).",
         ),

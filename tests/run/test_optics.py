@@ -118,13 +118,13 @@ def test_every_key_is_read_as_it_stands(run_with: Callable[[str], Path]) -> None
     [
         (
             '[loss]\nconnector_grade = "grade E"',
-            'loss.connector_grade: is not a known connector grade ("grade E", limit grade A,',
+            'loss.connector_grade: is not a known connector grade ("grade E", one of grade A,',
         ),
         (
             '[loss]\nconnector_grade = "grade B"\nconnector_limit_db = 0.4',
             "loss.connector_limit_db: is given beside connector_grade, which says it already",
         ),
-        ('[loss]\nconnector_polish = "upc"', 'limit PC, UPC, APC). Did you mean "UPC"?'),
+        ('[loss]\nconnector_polish = "upc"', 'one of PC, UPC, APC). Did you mean "UPC"?'),
         ("[loss]\nrepairs_count = 2.5", "loss.repairs_count: is not a whole number (2.5)"),
         (
             "[loss]\nrepair_cable_m = -1",
@@ -169,10 +169,10 @@ def test_every_key_is_read_as_it_stands(run_with: Callable[[str], Path]) -> None
             "attenuation_db_per_km = 0.4 } ]",
             'section "S1", measured: gives a wavelength more than once (1310 nm)',
         ),
-        (f"{PART}count = 1", 'circuit "P", part 1: names no part (limit splitter 1:2,'),
+        (f"{PART}count = 1", 'circuit "P", part 1: names no part (one of splitter 1:2,'),
         (
             f'{PART}name = "spliter 1:2"',
-            'part 1, name: is not a known passive part ("spliter 1:2", limit splitter 1:2, '
+            'part 1, name: is not a known passive part ("spliter 1:2", one of splitter 1:2, '
             "splitter 1:4, splitter 1:8, splitter 1:16, splitter 1:32, splitter 1:64, "
             'wdm 1310/1550, cwdm 4 pair, cwdm 8 pair). Did you mean "splitter 1:2"?',
         ),
@@ -206,7 +206,7 @@ def test_every_key_is_read_as_it_stands(run_with: Callable[[str], Path]) -> None
         (f'{CIRCUIT}standby_for = "P"', 'circuit "P", standby_for: stands by for itself ("P")'),
         (
             f'{CIRCUIT}standby_for = "Q"',
-            'standby_for: is not a known circuit of this run ("Q", limit P)',
+            'standby_for: is not a known circuit of this run ("Q", only P)',
         ),
         (
             f"{OWN}channel_loss_min_db = 6.0",

@@ -44,7 +44,7 @@ CIRCUIT = '[[circuit]]\nname = "P"\nfrom = "A"\nto = "B"\n'
         (
             "[joints]\nzzz = 1",
             "run.toml, joints.zzz: is not a known key "
-            "(limit assumed_spacing_m, max_count, max_section_m, fibres_per_tray, keep_off_m, "
+            "(one of assumed_spacing_m, max_count, max_section_m, fibres_per_tray, keep_off_m, "
             "cost_factor_by_kind, closure_splices_max, closure_ports).",
         ),
         (
@@ -79,8 +79,8 @@ CIRCUIT = '[[circuit]]\nname = "P"\nfrom = "A"\nto = "B"\n'
         ),
         (
             'purpose = "links"',
-            'run.toml, purpose: is not one of the values it can take ("links", limit link, venue). '
-            'Did you mean "link"?',
+            'run.toml, purpose: is not one of the values it can take ("links", one of link, '
+            'venue). Did you mean "link"?',
         ),
         (
             "[slack]\nloop_every_m = { areal = 600 }",
@@ -114,7 +114,7 @@ CIRCUIT = '[[circuit]]\nname = "P"\nfrom = "A"\nto = "B"\n'
         (
             f"{CIRCUIT}fibre_count = 3",
             'run.toml, circuit "P", fibre_count: is not one of the values it can take '
-            "(3, limit 1, 2).",
+            "(3, one of 1, 2).",
         ),
         (
             f"{CIRCUIT}wavelengths_nm = [850]",
