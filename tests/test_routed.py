@@ -405,7 +405,7 @@ def test_what_contradicts_itself_is_said(
     toml: str, messages: list[str], told: Callable[..., list[str]], tmp_path: Path
 ) -> None:
     """Each with its key, the value, what could stand there and the remedy."""
-    assert told(toml) == [message.format(folder=tmp_path.name) for message in messages]
+    assert told(toml) == [message.format(folder=tmp_path) for message in messages]
 
 
 def test_streets_without_legs_are_said_to_play_no_part(tmp_path: Path) -> None:

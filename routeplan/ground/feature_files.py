@@ -22,7 +22,7 @@ from routeplan.ground.feature_tags import (
 from routeplan.ground.features import FEATURE_KINDS, FeatureKind, FeatureLayer, feature_layer
 from routeplan.ground.model import Leg
 from routeplan.run.crs import crs_or_none, is_wgs84, unusable
-from routeplan.run.trouble import one_of
+from routeplan.run.trouble import looked_in, one_of
 
 __all__ = ["Box", "box_around", "is_osm", "read_features", "read_osm"]
 
@@ -277,9 +277,7 @@ def _degrees(geometries: NDArray[np.object_], crs: Any) -> NDArray[np.object_]:
 
 def _there(path: Path) -> None:
     if not path.exists():
-        folder = path.parent.name or "this folder"
-        remedy = f"It is looked for in {folder}"
-        raise GeometryError(Problem(where=path.name, what="is not there", remedy=remedy))
+        raise GeometryError(Problem(where=path.name, what="is not there", remedy=looked_in(path)))
 
 
 def _info(path: Path, layer: str | None) -> dict[str, Any]:

@@ -15,7 +15,7 @@ from routeplan.ground.terrain_model import Affine, Sheet, Terrain, Tile
 from routeplan.ground.terrain_place import misplaced
 from routeplan.ground.terrain_plain import asc_reader, hgt_reader, open_asc, open_hgt
 from routeplan.ground.terrain_tiff import open_tiff, tiff_reader
-from routeplan.run.trouble import one_of
+from routeplan.run.trouble import looked_in, one_of
 
 __all__ = ["TERRAIN_SUFFIXES", "open_terrain", "window_reader"]
 
@@ -89,8 +89,7 @@ def _opened(path: Path, *, crs: str | None) -> Tile | Problem:
             limit=one_of(TERRAIN_SUFFIXES),
         )
     if not path.is_file():
-        folder = path.parent.name or "this folder"
-        return Problem(where=path.name, what="is not there", remedy=f"It is looked for in {folder}")
+        return Problem(where=path.name, what="is not there", remedy=looked_in(path))
     if not os.access(path, os.R_OK):
         return Problem(where=path.name, what="may not be read by this user")
     if suffix == ".hgt":

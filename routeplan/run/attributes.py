@@ -320,10 +320,8 @@ def _word(known: Known, key: str, reading: _Reading, *, words: tuple[str, ...] =
     words = words or _WORDS[key]
     if value is None:
         return None
-    if isinstance(value, str) and reading.loose:
-        value = value.strip().lower()
-    if isinstance(value, str) and value in words:
-        return value
+    if isinstance(value, str) and (word := _plain_word(value)) in words:
+        return word
     reading.fault(
         key,
         f"is not a known {key}" if key != "crosses" else "is nothing known to be crossed",
@@ -332,6 +330,11 @@ def _word(known: Known, key: str, reading: _Reading, *, words: tuple[str, ...] =
         remedy=nearest_hint(value, words),
     )
     return None
+
+
+def _plain_word(text: str) -> str:
+    """Return text as the words of a choice are spelt: "Maintenance hole" is maintenance_hole."""
+    return "_".join(text.casefold().replace("-", " ").replace("_", " ").split())
 
 
 def _number(known: Known, key: str, reading: _Reading) -> float | None:

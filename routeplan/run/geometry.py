@@ -17,7 +17,7 @@ from routeplan.run.geometry_geojson import layers_from_geojson
 from routeplan.run.geometry_gpx import layers_from_gpx
 from routeplan.run.model import Area, Floats, Line, Place
 from routeplan.run.shapes import Layer
-from routeplan.run.trouble import Trouble
+from routeplan.run.trouble import Trouble, looked_in
 
 if TYPE_CHECKING:
     from pyproj import CRS
@@ -134,8 +134,7 @@ def file_bytes(path: Path, *, file: str, trouble: Trouble) -> bytes | None:
     try:
         content = path.read_bytes()
     except FileNotFoundError:
-        folder = path.parent.name or "this folder"
-        _refuse(trouble, file, "is not there", remedy=f"It is looked for in {folder}.")
+        _refuse(trouble, file, "is not there", remedy=looked_in(path))
     except IsADirectoryError:
         _refuse(trouble, file, "is a folder, not a file")
     except PermissionError:

@@ -16,6 +16,7 @@ from routeplan.run.geometry import (
     file_bytes,
     geometry_from_files,
 )
+from routeplan.run.mark_files import marks_from_files
 from routeplan.run.model import Run
 from routeplan.run.practice import LayerColumns
 from routeplan.run.runfile import Declared, declared_from_text
@@ -60,7 +61,9 @@ def _read(path: Path, trouble: Trouble) -> Run | None:
     if path.is_dir():
         path = path / RUN_FILE
         if not path.is_file():
-            _refuse(trouble, str(path.parent), f"is a folder without a {RUN_FILE}")
+            remedy = "Give a geometry file, or write a run file for one: routeplan new GEOMETRY."
+            what = f"is a folder without a {RUN_FILE}"
+            _refuse(trouble, str(path.parent), what, remedy=remedy)
             return None
     is_bare = path.suffix.lower() != ".toml"
     content: bytes | None = b""
@@ -93,6 +96,9 @@ def _read(path: Path, trouble: Trouble) -> Run | None:
     named = head.terrain if head else ()
     terrain = raster_sources(named, path.parent, digest=digest, trouble=trouble)
     layers = layer_sources(_layers(declared), path.parent, digest=digest, trouble=trouble)
+    marks = marks_from_files(
+        head.marks if head else (), path.parent, declared.marks, digest=digest, trouble=trouble
+    )
     streets = None
     if declared.streets is not None:
         streets = street_files(declared.streets, path.parent, digest=digest, trouble=trouble)
@@ -104,6 +110,7 @@ def _read(path: Path, trouble: Trouble) -> Run | None:
         terrain=terrain,
         layers=layers,
         streets=streets,
+        marks=marks,
         digest=digest.hexdigest(),
     )
 

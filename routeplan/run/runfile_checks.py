@@ -250,7 +250,10 @@ def _end_problems(where: str, circuit: CircuitOrder) -> Iterator[Problem]:
         )
     elif circuit.from_ is not None and circuit.from_ == circuit.to:
         yield Problem(
-            where=where, what="ends where it starts", value=shown(circuit.to), remedy="Change to."
+            where=where,
+            what="ends where it starts",
+            value=shown(circuit.to),
+            remedy="Name two different sites in from and to.",
         )
 
 

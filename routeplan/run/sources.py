@@ -12,7 +12,7 @@ from routeplan.run.geometry import file_and_layer
 from routeplan.run.model import LayerSource, RasterSource, StreetFile, StreetFiles
 from routeplan.run.practice import LayerColumns
 from routeplan.run.street_rules import StreetRules
-from routeplan.run.trouble import Trouble
+from routeplan.run.trouble import Trouble, looked_in
 
 if TYPE_CHECKING:
     from hashlib import _Hash
@@ -130,8 +130,7 @@ def _digest(path: Path, name: str, *, digest: _Hash, trouble: Trouble) -> str | 
                     own.update(block)
                     digest.update(block)
     except FileNotFoundError:
-        folder = path.parent.name or "this folder"
-        _refuse(trouble, name, "is not there", remedy=f"It is looked for in {folder}.")
+        _refuse(trouble, name, "is not there", remedy=looked_in(path))
     except PermissionError:
         _refuse(trouble, name, "may not be read by this user")
     except (OSError, ValueError) as error:

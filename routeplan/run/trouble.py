@@ -4,10 +4,12 @@ from __future__ import annotations
 
 import difflib
 import json
+import os
 import unicodedata
 from collections import Counter
 from collections.abc import Iterable
 from dataclasses import dataclass, field
+from pathlib import Path
 
 from routeplan.errors import InputError, Problem
 
@@ -16,6 +18,7 @@ __all__ = [
     "cleaned_text",
     "is_plain_text",
     "listed",
+    "looked_in",
     "nearest_hint",
     "number_hint",
     "one_of",
@@ -100,6 +103,14 @@ def shown(value: object) -> str:
 def listed(values: Iterable[object]) -> str:
     """Return the values of a choice as a message lists them."""
     return ", ".join(str(value) for value in values)
+
+
+def looked_in(path: Path) -> str:
+    """Return where a file that is not there was looked for, as the remedy of a problem."""
+    folder = Path(os.path.abspath(path)).parent  # noqa: PTH100  # `..` is resolved, links are not
+    if folder.is_dir():
+        return f"It is looked for in {folder}."
+    return f"It is looked for in {folder}, and there is no such folder."
 
 
 def one_of(values: Iterable[object]) -> str:

@@ -78,7 +78,7 @@ def _file_of(path: Path) -> Path:
         Problem(
             where=file.name,
             what=what,
-            value=f"looked for in {file.absolute().parent.name or 'the root folder'}",
+            value=f"looked for in {file.absolute().parent}",
             remedy="Give an .osm, .osm.pbf, .osm.bz2 or .graphml file, or a layer of lines.",
         )
     )

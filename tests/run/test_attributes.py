@@ -53,6 +53,27 @@ def test_a_crossing_bears_no_joint(
     ]
 
 
+def test_words_are_known_however_they_are_written(
+    collection: Callable[..., Path], feature: Feature, road: dict[str, Any]
+) -> None:
+    """Case does not matter, nor whether a space, a hyphen or an underscore joins two words."""
+    road["properties"]["placement"] = "Aerial"
+    points = [
+        feature("Point", AT, name="P", kind="Maintenance hole", joint="AVOID"),
+        feature("Point", AT, name="Q", kind=" maintenance-Hole "),
+        feature("Point", AT, name="R", kind="Site", role="Studio"),
+        feature("Point", AT, name="S", kind="Crossing", crosses="Water"),
+    ]
+    run = read_run(collection(road, *points))
+    assert {line.placement for line in run.lines} == {"aerial"}
+    assert [(place.kind, place.role, place.joint, place.crosses) for place in run.places] == [
+        ("maintenance_hole", None, "avoid", None),
+        ("maintenance_hole", None, "yes", None),
+        ("site", "studio", "yes", None),
+        ("crossing", None, "no", "water"),
+    ]
+
+
 def test_every_property_of_a_point_is_read(
     collection: Callable[..., Path], feature: Feature, road: object
 ) -> None:
@@ -147,7 +168,7 @@ def test_areas_are_read_and_unkinded_polygons_left_out(
             'kind: is not a known kind ("hand_hole", one of site, handhole, maintenance_hole, '
             'pole, cabinet, pedestal, building, crossing). Did you mean "handhole"?',
         ),
-        ({"kind": "Site"}, 'Did you mean "site"?'),
+        ({"kind": "Sites"}, 'Did you mean "site"?'),
         ({"kind": 5}, "kind: is not a known kind (5, one of"),
         (
             {"kind": "site", "role": "boss"},

@@ -120,8 +120,17 @@ def test_a_file_that_cannot_be_read_is_named(
 def test_what_is_not_there_is_named(tmp_path: Path, said: Callable[[Path], list[str]]) -> None:
     """A missing run file, a missing geometry file, and a folder without a run file."""
     assert said(tmp_path / "no.toml")[0].startswith("no.toml: is not there.")
-    assert said(tmp_path / "no.geojson")[0].startswith("no.geojson: is not there.")
-    assert said(tmp_path)[0].endswith("is a folder without a run.toml.")
+    assert said(tmp_path / "no.geojson") == [
+        f"no.geojson: is not there. It is looked for in {tmp_path}."
+    ]
+    assert said(tmp_path / "of/../none/no.geojson") == [
+        f"no.geojson: is not there. It is looked for in {tmp_path / 'none'}, and there is no such "
+        "folder."
+    ]
+    assert said(tmp_path)[0].endswith(
+        "is a folder without a run.toml. Give a geometry file, or write a run file for one: "
+        "routeplan new GEOMETRY."
+    )
 
 
 @pytest.mark.skipif(

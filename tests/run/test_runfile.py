@@ -171,7 +171,10 @@ def test_what_is_not_yet_built_is_refused(
     ("toml", "part"),
     [
         (f"{CIRCUIT}{CIRCUIT}", 'circuit "P": stands 2 times'),
-        ('[[circuit]]\nfrom = "A"\nto = "A"', 'circuit "Circuit 1": ends where it starts ("A")'),
+        (
+            '[[circuit]]\nfrom = "A"\nto = "A"',
+            'circuit "Circuit 1": ends where it starts ("A"). Name two',
+        ),
         ('[[circuit]]\nfrom = "A"', 'circuit "Circuit 1": names one of its ends only ("A")'),
         (
             f'{CIRCUIT}interface = "10GBASE-EX"',
