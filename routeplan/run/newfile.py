@@ -21,6 +21,7 @@ _EXAMPLES = {  # keys without a default, as they would be written
     "background": "[]",
     "terrain": "[]",
     "layers": "[]",
+    "marks": "[]",
     "cable.measured": "[ { wavelength_nm = 1310, attenuation_db_per_km = 0.33 } ]",
     "cable.make": '"loose tube"',
     "cable.metal": "false",

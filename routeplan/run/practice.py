@@ -350,6 +350,15 @@ class RunHead(Section):
         description="OpenStreetMap extracts and vector files of what may be crossed; see "
         "`[[layer]]` for files that name things in their own way.",
     )
+    marks: Annotated[
+        tuple[Text, ...],
+        Strict(False),
+        BeforeValidator(_listed, json_schema_input_type=tuple[Text, ...] | Text),
+    ] = Field(
+        default=(),
+        description="CSV files of jacket marks, one line a reel, beside `[[mark]]`: a file "
+        "or a list; columns `reel`, `start_m` in metres, `falling` (true or false, or left out).",
+    )
     placement: AnyPlacement = Field(description="Placement of lines that do not say.")
     units: Literal["metric", "us"] = Field(
         description="What people see: metric or us; files keep SI."
