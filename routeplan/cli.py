@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import atexit
 import contextlib
 import gc
 import os
@@ -144,12 +145,22 @@ def _complain(error: RouteplanError, *, as_json: bool) -> int:
 
 @contextlib.contextmanager
 def _resting_collector() -> Iterator[None]:
-    """Let the garbage collector rest: what a plan and its imports make is all still needed."""
+    """
+    Let the garbage collector rest: what a plan and its imports make is all still needed.
+
+    What was made meanwhile joins the collector's oldest generation unsearched, or the first
+    object made afterwards would have all of it searched; and nothing is searched once more as the
+    process ends, when its memory goes back anyhow.
+    """
     was_enabled = gc.isenabled()
     gc.disable()
     try:
         yield
     finally:
+        gc.freeze()
+        gc.unfreeze()
+        atexit.unregister(gc.freeze)  # once, however often a process plans
+        atexit.register(gc.freeze)
         if was_enabled:
             gc.enable()
 
@@ -196,6 +207,7 @@ def _warn(planned: Plan, *, most: int) -> None:
         say(f"warning: and {more} more, in report.html", stream=sys.stderr)
 
 
+@_resting_collector()
 def _check(arguments: argparse.Namespace) -> int:
     from routeplan.planning import plan
     from routeplan.run import read_run

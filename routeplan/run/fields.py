@@ -43,7 +43,12 @@ class Section(BaseModel):
     """A section of a run file: frozen, strict, and closed to unknown keys."""
 
     model_config = ConfigDict(
-        frozen=True, extra="forbid", strict=True, allow_inf_nan=False, validate_by_name=True
+        frozen=True,
+        extra="forbid",
+        strict=True,
+        allow_inf_nan=False,
+        validate_by_name=True,
+        defer_build=True,  # a section within another is not built twice, one not used not at all
     )
 
 
