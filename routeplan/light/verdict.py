@@ -132,11 +132,22 @@ def _margin_finding(
     text = (
         f"{optic.name} allows {power.available_db:.3f} dB; the "
         f"{'worst' if worst else 'statistical'} loss is {lost_db:.3f} dB and "
-        f"{practice.margin_db:.3f} dB are kept in hand: "
+        f"{practice.margin_db:.3f} dB are kept in hand"
     )
     if margin_db >= 0.0:
-        return Finding(verdict="fits", text=f"{text}{margin_db:.3f} dB are left.")
-    return Finding(verdict="fails", text=f"{text}{-margin_db:.3f} dB are missing.")
+        return Finding(verdict="fits", text=f"{text}: {margin_db:.3f} dB are left.")
+    text = f"{text} (loss.margin_db): {-margin_db:.3f} dB are missing"
+    return Finding(verdict="fails", text=f"{text}{_on_statistical(power, practice)}.")
+
+
+def _on_statistical(power: PowerFigures, practice: LossPractice) -> str:
+    """Return what a verdict on the statistical loss would rest on, if it is on the worst."""
+    margin_db = power.statistical_margin_db
+    if practice.verdict_on != "worst" or margin_db is None or margin_db == power.margin_db:
+        return ""
+    if margin_db < 0.0:
+        return f"; on the statistical loss {-margin_db:.3f} dB would be missing, too"
+    return f"; on the statistical loss {margin_db:.3f} dB would be left (loss.verdict_on)"
 
 
 def _overload_findings(power: PowerFigures, optic: Optic, practice: LossPractice) -> list[Finding]:

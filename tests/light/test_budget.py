@@ -154,6 +154,25 @@ def test_verdict_is_on_the_loss_that_practice_names() -> None:
     assert likely.statistical_margin_db is not None
     assert likely.statistical_margin_db > 0.0
     assert (worst.verdict, likely.verdict) == ("fails", "fits")
+    assert worst.reasons[0].endswith(
+        f"3.000 dB are kept in hand (loss.margin_db): 0.100 dB are missing; on the statistical "
+        f"loss {likely.statistical_margin_db:.3f} dB would be left (loss.verdict_on)."
+    )
+
+
+def test_a_circuit_that_fails_on_either_loss_says_so() -> None:
+    """No other verdict is held out where the statistical loss leaves nothing, too."""
+    link = optic(basis="channel", channel_loss_db=4.0)
+    worst = circuit_budget(path([2000.0] * 2), 1310.0, practice=practice(), optic=link)
+    likely_practice = practice(verdict_on="statistical")
+    likely = circuit_budget(path([2000.0] * 2), 1310.0, practice=likely_practice, optic=link)
+    assert worst.statistical_margin_db is not None
+    missing_db = -worst.statistical_margin_db
+    assert missing_db > 0.0
+    assert worst.reasons[0].endswith(
+        f"; on the statistical loss {missing_db:.3f} dB would be missing, too."
+    )
+    assert likely.reasons[0].endswith(f"(loss.margin_db): {missing_db:.3f} dB are missing.")
 
 
 def test_too_strong_light_is_mended_by_an_attenuator() -> None:
