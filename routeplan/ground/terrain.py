@@ -76,21 +76,30 @@ def heights_at(terrain: Terrain, lonlat: Floats) -> Heights:
     ----------
     .. [1] Bilinear interpolation, any textbook of numerical analysis.
     """
-    heights = np.full(len(lonlat), np.nan)
+    heights: Floats | None = None
     for sheet in terrain.sheets:
-        unknown = np.isnan(heights)
-        rest = np.flatnonzero(unknown)
-        every = len(rest) == len(lonlat)
-        col, row = cell_positions(sheet, lonlat if every else lonlat[rest])
-        if every and _is_all_inside(sheet, col, row):
-            heights = _sheet_heights(sheet, col, row)
+        if heights is None:
+            heights = _heights_in(sheet, lonlat)
         else:
-            inside = _is_inside(sheet, col, row)
-            if inside.any():
-                heights[rest[inside]] = _sheet_heights(sheet, col[inside], row[inside])
+            rest = np.flatnonzero(np.isnan(heights))
+            heights[rest] = _heights_in(sheet, lonlat[rest])
         if not np.isnan(heights).any():
             break
+    if heights is None:
+        heights = np.full(len(lonlat), np.nan)
     return Heights(heights_m=heights, state=_states(terrain, lonlat, heights))
+
+
+def _heights_in(sheet: Sheet, lonlat: Floats) -> Floats:
+    """Return what heights one sheet knows of points, NaN of the others."""
+    col, row = cell_positions(sheet, lonlat)
+    if _is_all_inside(sheet, col, row):
+        return _sheet_heights(sheet, col, row)
+    heights = np.full(len(lonlat), np.nan)
+    inside = _is_inside(sheet, col, row)
+    if inside.any():
+        heights[inside] = _sheet_heights(sheet, col[inside], row[inside])
+    return heights
 
 
 def _is_all_inside(sheet: Sheet, col: Floats, row: Floats) -> bool:
@@ -148,8 +157,9 @@ def _windows(sheet: Sheet, col: Floats, row: Floats) -> Iterator[Whole | slice]:
     for begin in range(0, len(col), _CHUNK):
         part = slice(begin, begin + _CHUNK)
         # A point on a bound may go to either side: a window is read as wide as its points need.
-        up = (np.maximum(row[part], 0.0) * (1.0 / height)).astype(np.int64)
-        window[part] = up * across + (np.maximum(col[part], 0.0) * (1.0 / width)).astype(np.int64)
+        # Within the outer half cell, beyond the first centres, whole numbers are nought as well.
+        up = (row[part] * (1.0 / height)).astype(np.int32)
+        window[part] = up * across + (col[part] * (1.0 / width)).astype(np.int32)
     ends = np.append(np.flatnonzero(window[1:] != window[:-1]) + 1, len(window))
     if (len(ends) - 64) * _RUNS_FEW <= len(window):
         begin = 0
@@ -175,13 +185,17 @@ def _window_heights(sheet: Sheet, read: Read, col: Floats, row: Floats) -> Float
     r0, r1, is_level = _bounds(row, sheet.rows)
     stored, void = read(r0, r1, c0, c1)
     heights = np.empty(len(col))
+    # Of a window with fewer cells than its points have corners, cells are looked through instead.
+    is_clean = stored.size <= 4 * len(col) and _are_known(sheet, [stored], void)
     for begin in range(0, len(col), _CHUNK):
         part = slice(begin, begin + _CHUNK)
         left, across = _cell(col[part], c0, c1, is_inner=is_inner)
         top, along = _cell(row[part], r0, r1, is_inner=is_level)
         top *= c1 - c0
         top += left
-        heights[part] = _bilinear(sheet, stored, void=void, first=top, across=across, along=along)
+        corners = _corners(stored, top)
+        unknown = [] if is_clean else _unknown(sheet, corners, void)
+        heights[part] = _bilinear(corners, unknown, across=across, along=along)
     tile = sheet.tiles[0]
     if tile.factor_m != 1.0 or tile.offset_m:
         heights = heights * tile.factor_m + tile.offset_m
@@ -208,21 +222,22 @@ def _cell(at: Floats, first: int, last: int, *, is_inner: bool) -> tuple[Whole, 
     return whole, share
 
 
-def _bilinear(
-    sheet: Sheet,
-    stored: NDArray[np.generic],
-    *,
-    void: float | None,
-    first: Whole,
-    across: Floats,
-    along: Floats,
-) -> Floats:
-    """Return stored values between centres of a window's cells, NaN where one is unknown."""
+def _corners(stored: NDArray[np.generic], first: Whole) -> list[NDArray[np.generic]]:
+    """Return a window's cells north-west, north-east, south-west and south-east of points."""
     rows, cols = stored.shape
     right, down = int(cols > 1), cols * int(rows > 1)
     flat = stored.ravel()
-    corners = [flat[step:].take(first) for step in (0, right, down, down + right)]
-    unknown = _unknown(sheet, corners, void)
+    return [flat[step:].take(first) for step in (0, right, down, down + right)]
+
+
+def _bilinear(
+    corners: list[NDArray[np.generic]],
+    unknown: list[NDArray[np.bool_]],
+    *,
+    across: Floats,
+    along: Floats,
+) -> Floats:
+    """Return stored values between the centres of four cells, NaN where one is unknown."""
     nw, ne, sw, se = (values.astype(np.float64) for values in corners)
     for values, miss in zip((nw, ne, sw, se), unknown, strict=False):
         values[miss] = 0.0
@@ -240,18 +255,28 @@ def _bilinear(
     return nw
 
 
+def _limits(sheet: Sheet) -> tuple[float, float]:
+    """Return the lowest and the highest value of a height, as stored."""
+    tile = sheet.tiles[0]
+    limits = [(limit - tile.offset_m) / tile.factor_m for limit in (LOWEST_M, HIGHEST_M)]
+    return min(limits), max(limits)
+
+
+def _are_known(sheet: Sheet, stored: list[NDArray[np.generic]], void: float | None) -> bool:
+    """Tell whether all of some values are heights; NaN is none."""
+    low, high = _limits(sheet)
+    lowest = min(float(values.min()) for values in stored)
+    highest = max(float(values.max()) for values in stored)
+    return low < lowest and highest < high and not (void is not None and lowest <= void <= highest)
+
+
 def _unknown(
     sheet: Sheet, corners: list[NDArray[np.generic]], void: float | None
 ) -> list[NDArray[np.bool_]]:
     """Return at which corners the height is unknown or impossible; nothing if at none."""
-    tile = sheet.tiles[0]
-    limits = [(limit - tile.offset_m) / tile.factor_m for limit in (LOWEST_M, HIGHEST_M)]
-    low, high = min(limits), max(limits)
-    lowest = min(float(values.min()) for values in corners)
-    highest = max(float(values.max()) for values in corners)
-    is_void_met = void is not None and lowest <= void <= highest
-    if low < lowest and highest < high and not is_void_met:
+    if _are_known(sheet, corners, void):
         return []
+    low, high = _limits(sheet)
     unknown = []
     for values in corners:
         known = (values > low) & (values < high)  # type: ignore[operator]

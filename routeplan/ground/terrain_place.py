@@ -20,6 +20,7 @@ _CHUNK = 65536
 _CACHED = 8192  # keeps every temporary array in the processor's cache
 _FIT_FROM = 4096  # fewer points are transformed one by one
 _FIT_CELLS = 0.002  # how far a fitted position may lie off
+_TERM_CELLS = 0.0001  # terms that move no position farther are not worth their time
 
 
 def misplaced(tile: Tile) -> Problem | None:
@@ -211,6 +212,8 @@ def _fitted(sheet: Sheet, lon: Floats, lat: Floats, count: int) -> tuple[Floats,
         inverse @ value.reshape(count, count) @ inverse.T
         for value in _exact(sheet, middle[0] + half[0] * u, middle[1] + half[1] * v)
     ]
+    for table in tables:
+        table[np.abs(table) < _TERM_CELLS] = 0.0  # u and v are within -1 to 1
     probes = np.linspace(-1.0, 1.0, count + 1)
     u, v = (grid.ravel() for grid in np.meshgrid(probes, probes, indexing="ij"))
     truth = _exact(sheet, middle[0] + half[0] * u, middle[1] + half[1] * v)
@@ -220,7 +223,8 @@ def _fitted(sheet: Sheet, lon: Floats, lat: Floats, count: int) -> tuple[Floats,
     col, row = np.empty(len(lon)), np.empty(len(lon))
     for begin in range(0, len(lon), _CACHED):
         part = slice(begin, begin + _CACHED)
-        u, v = (lon[part] - middle[0]) / half[0], (lat[part] - middle[1]) / half[1]
+        u = (lon[part] - middle[0]) * (1.0 / half[0])
+        v = (lat[part] - middle[1]) * (1.0 / half[1])
         col[part], row[part] = _polynomial(tables[0], u, v), _polynomial(tables[1], u, v)
     return col, row
 
@@ -228,15 +232,29 @@ def _fitted(sheet: Sheet, lon: Floats, lat: Floats, count: int) -> tuple[Floats,
 def _polynomial(table: Floats, u: Floats, v: Floats) -> Floats:
     """Return the sum of table[i, j] u^i v^j, by Horner's rule in both."""
     total = np.zeros_like(u)
-    inner = np.empty_like(u)
-    for row in table[::-1]:
-        inner.fill(row[-1])
-        for value in row[-2::-1]:
-            inner *= v
-            inner += value
-        total *= u
-        total += inner
+    for number in range(len(table) - 1, -1, -1):
+        if number < len(table) - 1:
+            total *= u
+        inner = _row_polynomial(table[number], v)
+        if inner is not None:
+            total += inner
     return total
+
+
+def _row_polynomial(row: Floats, v: Floats) -> Floats | float | None:
+    """Return the sum of row[j] v^j up to the last term that is not zero; None if all are."""
+    terms = np.flatnonzero(row)
+    if not len(terms):
+        return None
+    last = int(terms[-1])
+    if not last:
+        return float(row[0])
+    inner: Floats = v * row[last]
+    for value in row[last - 1 : 0 : -1]:
+        inner += value
+        inner *= v
+    inner += row[0]
+    return inner
 
 
 def cell_step_m(sheet: Sheet, lon: float, lat: float) -> float:
