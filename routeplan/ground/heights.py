@@ -140,9 +140,8 @@ def assumed_heights(run: Run, ground: Ground) -> Iterator[AssumedValue]:
             reason += ": measured on the ellipsoid, without slope"
         elif leg.heights_from == ("terrain",):
             source = files
-            reason = (
-                f"smoothed over {wave_m:g} m, which took {leg.smoothed_off_m:.1f} m off its length"
-            )
+            off_m = round(leg.smoothed_off_m, 1) + 0.0  # never "-0.0"
+            reason = f"smoothed over {wave_m:g} m, which took {off_m:.1f} m off its length"
         elif files:
             source = "geometry" if len(leg.heights_from) == 1 else f"geometry; {files}"
             reason = "lines that have heights of their own keep them, before the terrain's"

@@ -73,7 +73,8 @@ def test_a_tilted_plane_in_a_grid_gives_its_slope_length(
 ) -> None:
     """Eastward, southward and across, the ground is as long as the plane's slope says."""
     write_tiff(tmp_path / "hills.tif", surface(plane, side=250, step_m=10.0))
-    leg = leg_of(document_of(tmp_path, way(*ends)))
+    document = document_of(tmp_path, way(*ends))
+    leg = leg_of(document)
     first, last = (plane(np.array(east), np.array(south)) for east, south in ends)
     grid_m = float(np.hypot(*np.subtract(ends[1], ends[0])))
     expected = slope_length_m(grid_m, rise_m, middle_m=float(first + last) / 2)
@@ -82,6 +83,9 @@ def test_a_tilted_plane_in_a_grid_gives_its_slope_length(
     assert leg["line"][0][2] == pytest.approx(float(first), abs=0.002)
     assert leg["line"][-1][2] == pytest.approx(float(last), abs=0.002)
     assert leg["heights_from"] == ["terrain"]
+    (said,) = [one for one in document["assumptions"] if one["name"] == "heights of leg Way"]
+    assert said["source"] == "hills.tif"
+    assert "took 0.0 m off" in said["reason"]
 
 
 def test_two_tiles_are_one_terrain(tmp_path: Path) -> None:
