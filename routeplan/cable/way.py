@@ -12,8 +12,8 @@ from routeplan.cable.crossed import ChainCrossing, crossing_zones
 from routeplan.cable.model import Cable, Millimetres
 from routeplan.cable.spots import Spot, spot_at, tie_key, weighed
 from routeplan.geodesy import is_turned
-from routeplan.ground.legs import position_at
 from routeplan.ground.model import Leg, Node, Stretch
+from routeplan.ground.points import position_at
 from routeplan.run.model import Floats
 from routeplan.run.practice import Practice
 from routeplan.units import mm_from_m

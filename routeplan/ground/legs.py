@@ -1,4 +1,4 @@
-"""Legs, nodes and placed points, from a joined network."""
+"""Legs and nodes from a joined network."""
 
 from __future__ import annotations
 
@@ -15,13 +15,13 @@ from routeplan.errors import CrsError, GeometryError, Problem
 from routeplan.ground.drawn import Drawn, draw_line, joined_drawn, shape_of
 from routeplan.ground.heights import height_warnings, heights_from, leg_profile, run_terrain
 from routeplan.ground.joining import Network, Piece, chains, join_lines
-from routeplan.ground.locate import index_lines, near_lines, nearest_m
 from routeplan.ground.meeting import met_by
-from routeplan.ground.model import Crossing, Ground, Leg, Millimetres, Node, PlacedPoint, Stretch
+from routeplan.ground.model import Ground, Leg, Millimetres, Node, Stretch
+from routeplan.ground.points import place_points
 from routeplan.ground.terrain_report import steep_stretches
-from routeplan.run.model import Floats, Place, Placement, Run
+from routeplan.run.model import Floats, Placement, Run
 
-__all__ = ["lay_ground", "position_at"]
+__all__ = ["lay_ground"]
 
 _SCALE_RATIO = 0.01  # house rule: national grids and UTM zones keep within a third of it
 
@@ -65,7 +65,7 @@ def lay_ground(run: Run) -> Ground:
     ]
     legs = [leg for leg, _ in laid]
     points = [place for place in run.places if place.kind != "site"]
-    legs, nodes, crossings, problems = _place_points(run, legs, nodes, points)
+    legs, nodes, crossings, problems = place_points(run, legs, nodes, points)
     problems = [
         *network.problems,
         *_name_problems(groups, names),
@@ -311,113 +311,6 @@ def _shared(value: float | None, piece: Piece, placement: Placement) -> float | 
     if value is None or placement != "existing":
         return None
     return value * piece.drawn.share
-
-
-def _place_points(
-    run: Run, legs: list[Leg], nodes: list[Node], places: Sequence[Place]
-) -> tuple[list[Leg], list[Node], list[Crossing], list[Problem]]:
-    joining = run.practice.joining
-    shapes = [(leg.shape_lonlat, leg.shape_mm) for leg in legs]
-    index = index_lines(shapes)
-    points = np.array([[place.lon, place.lat] for place in places]).reshape(-1, 2)
-    radius = np.full(len(places), joining.reach_distance_max_m)
-    found: list[list[PlacedPoint]] = [[] for _ in legs]
-    crossings: list[Crossing] = []
-    problems: list[Problem] = []
-    tolerance_mm = round(joining.join_tolerance_m * 1000)
-    for number, hits in enumerate(near_lines(index, points, radius_m=radius)):
-        place = places[number]
-        if not hits:
-            far_m = nearest_m(index, points[number])
-            problems.append(_far_point(place, far_m, joining.reach_distance_max_m))
-            continue
-        leg = legs[hits[0].line]
-        ground_mm = _whole_station(leg, hits[0].index)
-        at_node = _plain_node_at(leg, nodes, ground_mm, tolerance_mm)
-        if at_node is not None and place.kind != "crossing" and nodes[at_node].place is None:
-            nodes[at_node] = replace(nodes[at_node], place=place, name=place.name)
-            continue
-        placed = PlacedPoint(place=place, ground_mm=ground_mm, offset_m=hits[0].offset_m)
-        found[hits[0].line].append(placed)
-        if place.kind == "crossing":
-            crossings.append(_crossing(leg, placed))
-    legs = [
-        replace(leg, points=tuple(sorted(placed, key=_station_order)))
-        for leg, placed in zip(legs, found, strict=True)
-    ]
-    return legs, nodes, crossings, problems
-
-
-def _whole_station(leg: Leg, station_mm: float) -> int:
-    """Return a whole millimetre, the half rounded in the leg's canonical direction."""
-    return leg.length_mm - round(leg.length_mm - station_mm) if leg.is_turned else round(station_mm)
-
-
-def _station_order(point: PlacedPoint) -> tuple[int, float, float, str]:
-    # Places at one station keep an order that does not depend on the file.
-    return (point.ground_mm, point.place.lon, point.place.lat, point.place.name)
-
-
-def _plain_node_at(
-    leg: Leg, nodes: Sequence[Node], ground_mm: int, tolerance_mm: int
-) -> int | None:
-    """Return the branch node, not a site, that a station on a leg falls on."""
-    for node_id, at_mm in ((leg.start, 0), (leg.end, leg.length_mm)):
-        number = int(node_id[1:]) - 1
-        if abs(ground_mm - at_mm) <= tolerance_mm and not nodes[number].is_site:
-            return number
-    return None
-
-
-def _crossing(leg: Leg, placed: PlacedPoint) -> Crossing:
-    place = placed.place
-    lonlat, _ = position_at(leg, np.array([placed.ground_mm]))
-    return Crossing(
-        leg=leg.id,
-        name=place.name,
-        crosses=place.crosses or "road",
-        ground_mm=placed.ground_mm,
-        width_m=place.width_m,
-        lon=float(lonlat[0, 0]),
-        lat=float(lonlat[0, 1]),
-    )
-
-
-def position_at(leg: Leg, ground_mm: Millimetres) -> tuple[Floats, Floats]:
-    """
-    Return where stations of a leg lie, and how high.
-
-    Parameters
-    ----------
-    leg
-        The leg.
-    ground_mm
-        Ground stations, shape (n,); fastest when rising. [mm]
-
-    Returns
-    -------
-    lonlat
-        WGS 84 longitude and latitude, shape (n, 2). [deg]
-    heights_m
-        Shape (n,), NaN where unknown. [m]
-    """
-    lonlat = np.column_stack(
-        [np.interp(ground_mm, leg.shape_mm, leg.shape_lonlat[:, axis]) for axis in (0, 1)]
-    )
-    lonlat[:, 0] = geodesy.wrapped(lonlat[:, 0])
-    if leg.heights_m is None:
-        return lonlat, np.full(len(ground_mm), np.nan)
-    return lonlat, np.interp(ground_mm, leg.ground_mm, leg.heights_m)
-
-
-def _far_point(place: Place, far_m: float, limit_m: float) -> Problem:
-    return Problem(
-        where=str(place.source),
-        what=f'{place.kind.replace("_", " ")} "{place.name}" is far from every line',
-        value=f"{far_m:,.1f} m".replace(",", " "),
-        limit=f"reach_distance_max_m = {limit_m:g}",
-        remedy="Move it onto the way, or raise joining.reach_distance_max_m",
-    )
 
 
 def _track_warnings(

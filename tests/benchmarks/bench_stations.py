@@ -11,7 +11,7 @@ import numpy as np
 import shapely
 
 from routeplan.cable.rulers import readings
-from routeplan.ground.legs import position_at
+from routeplan.ground.points import position_at
 from routeplan.planning import plan
 from routeplan.run import read_run
 from tests.benchmarks.inputs import write_long_run

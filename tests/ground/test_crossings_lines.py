@@ -13,7 +13,7 @@ from hypothesis import strategies as st
 
 from routeplan import geodesy
 from routeplan.ground.crossings import FoundCrossing, find_crossings
-from routeplan.ground.legs import position_at
+from routeplan.ground.points import position_at
 from tests.ground.crossing_layers import (
     STEP_DEG,
     cells,

@@ -10,8 +10,9 @@ from hypothesis import strategies as st
 
 from routeplan import geodesy
 from routeplan.errors import CrsError
-from routeplan.ground.legs import lay_ground, position_at
+from routeplan.ground.legs import lay_ground
 from routeplan.ground.model import Ground, Leg
+from routeplan.ground.points import position_at
 from routeplan.run.model import Line, Place
 from tests.drawn_runs import LAT, LON, lonlat, make_line, make_place, make_run, straight
 
