@@ -126,19 +126,12 @@ def assembled(
     notes
         Notes of the reading.
     """
-    drawn = len(lines.first) - 1
-    lines = unique_lines(lines)
-    again = drawn - (len(lines.first) - 1)
-    lines, vertex, position = _numbered(lines)
-    begin, end, line = _cut(vertex, lines.first)
-    begin, end, line, twice = _without_twins(vertex, begin, end, line, _keys(lines))
-    nodes, ends = np.unique(np.concatenate([vertex[begin], vertex[end]]), return_inverse=True)
-    edge_start, edge_end = np.split(ends.astype(np.int32), 2)
-    sizes = end - begin + 1
-    shape_first = np.concatenate([[0], np.cumsum(sizes)]).astype(np.int64)
-    within = np.arange(shape_first[-1]) - np.repeat(shape_first[:-1], sizes)
-    shape_lonlat = _unbroken(position[vertex[np.repeat(begin, sizes) + within]], shape_first)
-    length_m = edge_lengths_m(shape_lonlat, shape_first)
+    kept = unique_lines(lines)
+    again = len(lines.first) - len(kept.first)
+    lines, vertex, position = _numbered(kept)
+    begin, end, line, twice = _without_twins(vertex, *_cut(vertex, lines.first), _keys(lines))
+    nodes, edge_start, edge_end = _edge_ends(vertex, begin, end)
+    shape_lonlat, shape_first = _edge_shapes(position[vertex], begin, end)
     row_first, row_node, row_edge = adjacency(edge_start, edge_end, len(nodes))
     road_class, class_words = _coded(lines.road_class, line)
     name, name_words = _coded(lines.name, line)
@@ -150,7 +143,7 @@ def assembled(
         node_lonlat=position[nodes],
         edge_start=edge_start,
         edge_end=edge_end,
-        length_m=length_m,
+        length_m=edge_lengths_m(shape_lonlat, shape_first),
         shape_first=shape_first,
         shape_lonlat=shape_lonlat,
         road_class=road_class,
@@ -175,6 +168,21 @@ def assembled(
         part=labelled(row_first, row_node),
     )
     return replace(network, notes=(*notes, *_said(network, twice + again, where)))
+
+
+def _edge_ends(vertex: Whole, begin: Whole, end: Whole) -> tuple[Whole, Whole, Whole]:
+    """Return the vertices that are nodes, and the numbers of the nodes edges start and end at."""
+    nodes, ends = np.unique(np.concatenate([vertex[begin], vertex[end]]), return_inverse=True)
+    edge_start, edge_end = np.split(ends.astype(np.int32), 2)
+    return nodes, edge_start, edge_end
+
+
+def _edge_shapes(lonlat: Floats, begin: Whole, end: Whole) -> tuple[Floats, Whole]:
+    """Return the vertices of all edges, and where each edge's begin among them."""
+    sizes = end - begin + 1
+    first = np.concatenate([[0], np.cumsum(sizes)]).astype(np.int64)
+    within = np.arange(first[-1]) - np.repeat(first[:-1], sizes)
+    return _unbroken(lonlat[np.repeat(begin, sizes) + within], first), first
 
 
 def _unbroken(shape_lonlat: Floats, shape_first: Whole) -> Floats:
