@@ -130,7 +130,7 @@ def _problem(detail: ErrorDetails, data: Mapping[str, Any], *, file: str) -> Pro
     where = f"{file}, {key_path(path, data)}"
     if kind == "extra_forbidden":
         return _unknown_key(path, where)
-    if path[-1] == "[key]":
+    if path[-1] == "[key]" and kind == "literal_error":
         return _unknown_key(path[:-1], where, known=_expected(detail))
     value = "" if kind == "missing" else shown(detail["input"])
     if kind in _BOUNDS:

@@ -135,6 +135,10 @@ CIRCUIT = '[[circuit]]\nname = "P"\nfrom = "A"\nto = "B"\n'
             "run.toml, title: holds characters that cannot be printed.",
         ),
         ("title = ''", 'run.toml, title: is empty ("").'),
+        (
+            '[[circuit]]\nname = "P"\nleads = { "" = "crossed" }',
+            'run.toml, circuit "P", leads, : is empty ("").',
+        ),
     ],
 )
 def test_a_wrong_key_or_value_is_named_with_its_remedy(
