@@ -7,7 +7,7 @@ from itertools import groupby
 
 from routeplan.cable.layout import LaidCable
 from routeplan.cable.makes import MakeRow, has_metal, make_of
-from routeplan.cable.model import Layout
+from routeplan.cable.model import Joint, Layout
 from routeplan.check import Check, verdict_on
 from routeplan.ground.model import Ground
 from routeplan.light.model import Verdict
@@ -35,13 +35,23 @@ def closure_checks(run: Run, layout: Layout, splice_counts: Mapping[str, int]) -
         Splices in each joint, by joint id. [-]
     """
     joints = run.practice.joints
+    sharing: dict[str, list[Joint]] = {}
     for joint in layout.joints:
-        if joint.kind != "splice":
+        sharing.setdefault(joint.closure or joint.id, []).append(joint)
+    for joint in layout.joints:
+        if joint.kind != "splice" or joint.closure:
             continue
+        inside = sharing[joint.id]
         where = f"{joint.id}, {joint.reach_name}"
         found = {
-            "closure splices": (splice_counts[joint.id], joints.closure_splices_max),
-            "closure ports": (len(joint.ends) + 2 * len(joint.opened), joints.closure_ports),
+            "closure splices": (
+                sum(splice_counts[each.id] for each in inside),
+                joints.closure_splices_max,
+            ),
+            "closure ports": (
+                sum(len(each.ends) + 2 * len(each.opened) for each in inside),
+                joints.closure_ports,
+            ),
         }
         for kind, (value, limit) in found.items():
             if limit is not None:

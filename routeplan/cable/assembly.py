@@ -8,6 +8,7 @@ from typing import Literal, TypeAlias
 
 import numpy as np
 
+from routeplan.cable.closures import StraightJoint, shared_closures
 from routeplan.cable.layout import LaidCable
 from routeplan.cable.model import (
     Cable,
@@ -47,6 +48,7 @@ class _Tally:
     ends: dict[str, list[CableEnd]] = field(default_factory=dict)
     entered: dict[str, list[Mark]] = field(default_factory=dict)
     bare_cents: dict[str, int] = field(default_factory=dict)  # joints at nodes, without splices
+    straight: dict[str, StraightJoint] = field(default_factory=dict)  # by joint
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -87,6 +89,7 @@ def put_together(
     joints = _counted(
         [_with_ends(joint, tally) for joint in tally.joints.values()], cables, tally, uses, run=run
     )
+    joints = shared_closures(joints, tally.straight, run.practice.joints)
     cost = sum(reel.cost_cents for reel in tally.reels) + sum(j.cost_cents for j in joints)
     pairs = zip(tally.reels, tally.sections, strict=True)
     return Layout(
@@ -116,8 +119,20 @@ def _stops_along(cable: LaidCable, ground: Ground, tally: _Tally, *, run: Run) -
         else:
             joint = _joint_on(cable, f"J{len(tally.joints) + 1}", at, spot=chosen.get(at), run=run)
             tally.joints[joint.id] = joint
+            if at in chosen:
+                tally.straight[joint.id] = _straight(cable, joint, chosen[at], run=run)
             stops[at] = _Stop(name=joint.id, joint=joint.id)
     return stops
+
+
+def _straight(cable: LaidCable, joint: Joint, spot: Spot, *, run: Run) -> StraightJoint:
+    """Return what tells whether a joint may share a closure: a reach point, or a spot of a leg."""
+    place, make = spot.place, cable.way.cable.make
+    return StraightJoint(
+        place=(place.name, place.lon, place.lat) if place else (joint.leg, joint.ground_mm),
+        splice_count=make.fibre_count,
+        splice_cents=cents_from_amount(run.practice.costs.splice_each * make.fibre_count),
+    )
 
 
 def _stop_at_node(cable: LaidCable, chain_mm: int, node: Node, tally: _Tally, *, run: Run) -> _Stop:
@@ -317,8 +332,11 @@ def fewer_joints(laid: Sequence[LaidCable], layout: Layout) -> tuple[int, int] |
     Returns
     -------
     fewer_joints
-        Joint count and cost [cents], the joint taken from the span where that costs least.
+        Joint count and cost [cents], the joint taken from the span where that costs least. None
+        as well where cables share closures: what a joint fewer saves is not known then.
     """
+    if any(joint.closure for joint in layout.joints):
+        return None
     found = []
     for cable in laid:
         for span in cable.spans:

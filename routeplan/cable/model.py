@@ -132,6 +132,7 @@ class Joint:
 
     `opened` are sections of cables that pass, entered at mid-span, each at its chain value of
     `opened_mm`. A joint at a site has nothing but those: what is cut there goes to the panel.
+    `closure` is the joint of another cable whose closure it shares, empty if it has its own.
     """
 
     id: str
@@ -148,6 +149,7 @@ class Joint:
     cost_cents: int
     opened: tuple[str, ...] = ()
     opened_mm: tuple[int, ...] = ()
+    closure: str = ""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -96,13 +96,17 @@ def splice_rows(
     plant = _plant(joints, sections, cables, uses)
     colours = {cable.id: _colours(cable) for cable in cables}
     rows: list[Splice] = []
+    filled: dict[str, int] = {}  # trays of closures; those that share one fill them one by one
     for joint in joints:
         ends = [_fibre_ends(piece, plant, colours) for piece in _pieces(joint)]
         links = list(_links(joint, plant))
-        places = tray_places(
-            [_tube(link, joint, plant) for link in links], fibres_per_tray=fibres_per_tray
-        )
-        for ((end, fibre), target, circuit), (tray, position) in zip(links, places, strict=True):
+        tubes = [_tube(link, joint, plant) for link in links]
+        places = list(tray_places(tubes, fibres_per_tray=fibres_per_tray))
+        closure = joint.closure or joint.id
+        before = filled.get(closure, 0)
+        filled[closure] = before + max((tray for tray, _ in places), default=0)
+        for ((end, fibre), target, circuit), (own, position) in zip(links, places, strict=True):
+            tray = own + before if own else 0
             a = ends[end][fibre - 1]
             b = _far_end(a, target, ends)
             rows.append(

@@ -10,6 +10,8 @@ from itertools import groupby
 from routeplan.sheets.card_parts import PATCH_MM, SQUEEZE, fitted_text, letters_em, patch, rule
 from routeplan.sheets.joint_words import (
     cable_lines,
+    closure_name,
+    closures_of,
     entered_m_of,
     joint_leg_place,
     position_text,
@@ -84,7 +86,7 @@ def card_svg(document: Row, joint_name: str) -> str:
     document
         The mapping that `plan.json` holds.
     joint_name
-        The closure.
+        The closure, or a joint that shares it.
 
     Returns
     -------
@@ -92,8 +94,12 @@ def card_svg(document: Row, joint_name: str) -> str:
         One `svg` element after the other; nothing if there is no such closure.
     """
     sources = card_sources(document)
-    joints = [row for row in rows_at(document, "joints") if text_at(row, "name") == joint_name]
-    return "".join(page for joint in joints for page in card_pages(sources, joint))
+    found = (
+        joints
+        for joints in closures_of(document)
+        if joint_name in [text_at(joint, "name") for joint in joints]
+    )
+    return "".join(page for joints in found for page in card_pages(sources, joints))
 
 
 def card_sources(document: Row) -> CardSources:
@@ -109,12 +115,13 @@ def card_sources(document: Row) -> CardSources:
     )
 
 
-def card_pages(sources: CardSources, joint: Row) -> list[str]:
-    """Return the pages of one card, each an `svg` element."""
-    rows = sources.splices.get(text_at(joint, "name"), [])
+def card_pages(sources: CardSources, joints: Sequence[Row]) -> list[str]:
+    """Return the pages of the card for the joints in one closure, each an `svg` element."""
+    rows = [row for joint in joints for row in sources.splices.get(text_at(joint, "name"), ())]
+    name = closure_name(joints)
     lines = list(_lines(rows))
     grid = _grid(lines)
-    facts = list(_facts(sources, joint, rows))
+    facts = list(_facts(sources, joints, rows))
     tops_mm = [12.0 + _FACT_MM * len(facts) + 3.0, 14.0]
     pages = _paged(lines, grid, tops_mm=tops_mm)
     title = text_at(sources.document, "title")
@@ -125,9 +132,7 @@ def card_pages(sources: CardSources, joint: Row) -> list[str]:
         of = f", page {number} of {len(pages)}" if len(pages) > 1 else ""
         deepest = max((len(column) for column in columns), default=0)
         body = [
-            fitted_text(
-                0, 6.4, f"Closure {text_at(joint, 'name')}{of}", 110, size_mm=5.6, bold=True
-            ),
+            fitted_text(0, 6.4, f"Closure {name}{of}", 110, size_mm=5.6, bold=True),
             fitted_text(_WIDTH_MM - title_mm, 6.4, title, 70, size_mm=3.2, colour=MUTED),
             rule(0, 8.6, _WIDTH_MM, 0.5),
             *(_fact_lines(facts) if number == 1 else ()),
@@ -139,7 +144,7 @@ def card_pages(sources: CardSources, joint: Row) -> list[str]:
                 for at, line in enumerate(column)
             ]
         height_mm = top_mm + grid.step_mm * deepest + 2.0
-        drawn.append(_page(body, height_mm, title=f"Closure {text_at(joint, 'name')}{of}"))
+        drawn.append(_page(body, height_mm, title=f"Closure {name}{of}"))
     return drawn
 
 
@@ -153,9 +158,12 @@ def _page(body: Sequence[str], height_mm: float, *, title: str) -> str:
     )
 
 
-def _facts(sources: CardSources, joint: Row, rows: Sequence[Row]) -> Iterator[tuple[str, str]]:
+def _facts(
+    sources: CardSources, joints: Sequence[Row], rows: Sequence[Row]
+) -> Iterator[tuple[str, str]]:
     """Yield label and text of the lines above the table, long texts over several."""
-    document = sources.document
+    document, joint = sources.document, joints[0]
+    units = text_at(document, "units")
     place = text_at(joint, "reach_name") or text_at(joint, "node")
     circuits = dict.fromkeys(text_at(row, "circuit") for row in rows)
     limits_db = {value_at(row, "limit_db") for row in rows if text_at(row, "kind") == "splice"}
@@ -168,9 +176,9 @@ def _facts(sources: CardSources, joint: Row, rows: Sequence[Row]) -> Iterator[tu
         *(
             ("" if at else "Cable ends", line)
             for at, line in enumerate(
-                cable_lines(
-                    joint, sources.sections, sources.entered_m, units=text_at(document, "units")
-                )
+                line
+                for each in joints
+                for line in cable_lines(each, sources.sections, sources.entered_m, units=units)
             )
         ),
         ("Circuits", "; ".join(name for name in circuits if name)),

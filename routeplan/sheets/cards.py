@@ -7,6 +7,8 @@ from itertools import groupby
 
 from routeplan.sheets.joint_words import (
     cable_lines,
+    closure_name,
+    closures_of,
     entered_m_of,
     joint_leg_place,
     position_text,
@@ -40,30 +42,32 @@ def cards_text(document: Row) -> str:
     sections = {text_at(row, "name"): row for row in rows_at(document, "sections")}
     entered = entered_m_of(document)
     cards = (
-        "\n".join(_card(document, joint, splices.get(name, []), sections, entered))
-        for joint in rows_at(document, "joints")
-        for name in [text_at(joint, "name")]
+        "\n".join(_card(document, joints, splices, sections, entered))
+        for joints in closures_of(document)
     )
     return f"\n{_FORM_FEED}\n".join(cards) + "\n"
 
 
 def _card(
     document: Row,
-    joint: Row,
-    splices: Sequence[Row],
+    joints: Sequence[Row],
+    splices: Mapping[str, Sequence[Row]],
     sections: Mapping[str, Row],
     entered: Mapping[tuple[str, str], float],
 ) -> Iterator[str]:
+    joint = joints[0]
     place = plain(text_at(joint, "reach_name") or text_at(joint, "node"))
-    yield f"CLOSURE {plain(text_at(joint, 'name'))}   {plain(text_at(document, 'title'))}"
+    yield f"CLOSURE {closure_name(joints)}   {plain(text_at(document, 'title'))}"
     yield "=" * _WIDTH
     yield f"Place      {place}" + (" (assumed: look at it first)" if joint.get("assumed") else "")
     yield f"Way there  {plain(joint_leg_place(document, joint))}"
     yield f"Position   {position_text(joint)}"
     units = text_at(document, "units")
-    for line in cable_lines(joint, sections, entered, units=units):
-        yield f"Cable      {line}"
-    for tray, group in groupby(splices, key=lambda row: whole_at(row, "tray")):
+    for each in joints:
+        for line in cable_lines(each, sections, entered, units=units):
+            yield f"Cable      {line}"
+    rows = [row for each in joints for row in splices.get(text_at(each, "name"), ())]
+    for tray, group in groupby(rows, key=lambda row: whole_at(row, "tray")):
         yield ""
         yield f"TRAY {tray}" if tray else "NOT CUT, on no tray"
         yield "-" * _WIDTH

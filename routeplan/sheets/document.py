@@ -102,7 +102,9 @@ def _totals(planned: Plan) -> Row:
             "reel_count": len(layout.reels),
             "section_count": len(layout.sections),
             "joint_count": len(layout.joints),
-            "closure_count": sum(joint.kind == "splice" for joint in layout.joints),
+            "closure_count": sum(
+                joint.kind == "splice" and not joint.closure for joint in layout.joints
+            ),
             "splice_count": sum(planned.splice_counts.values()),
             "pigtail_splice_count": pigtail_splice_count(planned),
             "cost": amount_from_cents(layout.proof.cost_cents),
@@ -258,6 +260,7 @@ def _joint(planned: Plan, joint: Joint, ends: list[Json]) -> Row:
             "cost": amount_from_cents(joint.cost_cents),
             "ends": ends,
             "opened": list(joint.opened),
+            "closure": joint.closure or joint.id,
         },
     )
 

@@ -9,6 +9,8 @@ from routeplan.sheets.text import length_text, plain
 
 __all__ = [
     "cable_lines",
+    "closure_name",
+    "closures_of",
     "entered_m_of",
     "joint_leg_place",
     "position_text",
@@ -88,6 +90,20 @@ def entered_m_of(document: Row) -> dict[tuple[str, str], float]:
         if text_at(row, "kind") in ("joint", "site") and along_m is not None:
             found[text_at(row, "section"), text_at(row, "name")] = along_m
     return found
+
+
+def closures_of(document: Row) -> list[list[Row]]:
+    """Return the joints in each closure, the one it is named after first."""
+    found: dict[str, list[Row]] = {}
+    for joint in rows_at(document, "joints"):
+        name = text_at(joint, "name")
+        found.setdefault(text_at(joint, "closure") or name, []).append(joint)
+    return list(found.values())
+
+
+def closure_name(joints: Sequence[Row]) -> str:
+    """Return what a closure is called: after all joints in it."""
+    return " + ".join(plain(text_at(joint, "name")) for joint in joints)
 
 
 def cable_lines(

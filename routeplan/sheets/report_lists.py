@@ -157,7 +157,8 @@ def joints_html(document: Row) -> str:
         Column(
             head="Joint",
             cell=lambda row: (
-                f'<a href="#closure-{safe(text_at(row, "name"))}">{safe(text_at(row, "name"))}</a>'
+                f'<a href="#closure-{safe(text_at(row, "closure") or text_at(row, "name"))}">'
+                f"{safe(text_at(row, 'name'))}</a>"
             ),
         ),
         Column(head="Place", cell=_place_cell),

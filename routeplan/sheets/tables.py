@@ -295,6 +295,7 @@ _TABLES = (
             money_column("cost", "Closure, visit and splices."),
             rows_column("ends", "ends", "Cable ends that meet in it."),
             Column(key="opened", kind="texts", text="Sections that it enters at mid-span."),
+            text_column("closure", "Joint in whose closure it is: its own, or one it shares."),
         ),
     ),
     Table(name="fibre_end", title="Fibre end", path=(), columns=_FIBRE_END),

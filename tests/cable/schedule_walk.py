@@ -128,11 +128,13 @@ def check_joint_rows(
     sections: Sequence[Section],
     cables: Sequence[Cable],
     fibres_per_tray: int,
+    trays_before: int = 0,
 ) -> None:
     """Hold the rows of one joint against its cable ends and what it enters."""
     cable_of = {section.id: section.cable for section in sections}
     makes = {cable.id: cable.make for cable in cables}
-    check_trays([row for row in here if row.kind != "express"], fibres_per_tray)
+    on_trays = [row for row in here if row.kind != "express"]
+    check_trays([replace(row, tray=row.tray - trays_before) for row in on_trays], fibres_per_tray)
     uncut = [row for row in here if row.kind == "express"]
     assert [(row.tray, row.position) for row in uncut] == [
         (0, number) for number in range(1, len(uncut) + 1)

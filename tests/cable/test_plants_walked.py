@@ -139,14 +139,18 @@ def test_schedules_are_whole(number: int) -> None:
     for seed, plant in block(number):
         by_joint = {key: list(of) for key, of in groupby(plant.rows, key=lambda row: row.joint)}
         assert list(by_joint) == [joint.id for joint in plant.layout.joints], seed
+        filled: Counter[str] = Counter()
         for joint in plant.layout.joints:
+            closure = joint.closure or joint.id
             check_joint_rows(
                 joint,
                 by_joint[joint.id],
                 sections=plant.layout.sections,
                 cables=plant.layout.cables,
                 fibres_per_tray=plant.run.practice.joints.fibres_per_tray,
+                trays_before=filled[closure],
             )
+            filled[closure] += len({row.tray for row in by_joint[joint.id]} - {0})
 
 
 @pytest.mark.parametrize("number", range(BLOCKS))

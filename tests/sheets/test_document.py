@@ -114,7 +114,9 @@ def test_totals_are_exact_sums(many_documents: list[Row]) -> None:
         assert totals["reel_count"] == len(reels)
         assert totals["section_count"] == len(sections)
         assert totals["joint_count"] == len(joints)
-        assert totals["closure_count"] == sum(joint["kind"] == "splice" for joint in joints)
+        assert totals["closure_count"] == sum(
+            joint["kind"] == "splice" and joint["closure"] == joint["name"] for joint in joints
+        )
         assert totals["splice_count"] == sum(joint["splice_count"] for joint in joints)
         assert cents(totals["cost"]) == sum(cents(r["cost"]) for r in (*reels, *joints))
         assert totals["cost"] == document["layout"]["cost"]
@@ -327,6 +329,7 @@ def test_duct_run_by_hand(duct_plan: Plan) -> None:
         "cost": 666.0,
         "ends": ends,
         "opened": [],
+        "closure": "J1",
     }
 
 
