@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from typing import TypeAlias
 
-from routeplan.cable.way import existing_name, leg_at
+from routeplan.cable.way import Way, existing_name
 from routeplan.circuits import CircuitPlan, measured_glass
 from routeplan.light.along import losses_along_db
 from routeplan.light.model import ExistingSpan, Glass, Path
@@ -18,6 +18,9 @@ __all__ = ["power_rows"]
 
 _Station: TypeAlias = tuple[str, int]
 """Leg and ground station there. [mm]"""
+
+_Point: TypeAlias = tuple[float, _Station]
+"""How far along a piece of glass, 0 to 1, and where that is."""
 
 
 def power_rows(planned: Plan, circuit: CircuitPlan) -> Iterator[Row]:
@@ -53,20 +56,21 @@ def power_rows(planned: Plan, circuit: CircuitPlan) -> Iterator[Row]:
 
 
 def _losses_at(
-    places: Sequence[tuple[int, tuple[_Station, _Station]]], losses_db: Sequence[float]
+    places: Sequence[tuple[int, Sequence[_Point]]], losses_db: Sequence[float]
 ) -> Iterator[tuple[_Station, float]]:
-    """Yield both ends of every piece of glass with the loss there, then the whole loss."""
-    for step, (first, last) in places:
-        yield first, losses_db[step - 1] if step else 0.0
-        yield last, losses_db[step]
+    """Yield the points of every piece of glass with the loss there, then the whole loss."""
+    for step, points in places:
+        before_db = losses_db[step - 1] if step else 0.0
+        for share, station in points:
+            yield station, before_db + share * (losses_db[step] - before_db)
     if places:
-        yield places[-1][1][1], losses_db[-1]
+        yield places[-1][1][-1][1], losses_db[-1]
 
 
 def _glass_places(
     planned: Plan, circuit: CircuitPlan, path: Path
-) -> Iterator[tuple[int, tuple[_Station, _Station]]]:
-    """Yield for every piece of glass its step's number and the leg and station of both its ends."""
+) -> Iterator[tuple[int, Sequence[_Point]]]:
+    """Yield for every piece of glass its step's number and its ends on every leg it lies on."""
     ways = {cable.way.cable.id: cable.way for cable in planned.laid}
     own = {use.cable: use for use in circuit.uses}
     spans = {
@@ -85,6 +89,20 @@ def _glass_places(
             cable, start, end = spans[name]
             low, high = own[cable].span_mm or (start, end)
             start, end = max(start, low), min(end, high)
-            first, last = (start, end) if own[cable].forward else (end, start)
-            here, there = leg_at(ways[cable], first), leg_at(ways[cable], last)
-            yield number, ((here[0].name, here[1]), (there[0].name, there[1]))
+            points = list(_leg_points(ways[cable], start, end))
+            if not own[cable].forward:
+                points = [(1.0 - share, station) for share, station in reversed(points)]
+            if points:
+                yield number, points
+
+
+def _leg_points(way: Way, start_mm: int, end_mm: int) -> Iterator[_Point]:
+    """Yield where a part of a chain begins and ends on each leg, with its share of the part."""
+    length_mm = max(end_mm - start_mm, 1)
+    for leg, forward, offset_mm in way.legs:
+        low = max(start_mm, offset_mm)
+        high = min(end_mm, offset_mm + leg.length_mm)
+        for at in (low, high) if low < high else ():
+            along = at - offset_mm
+            station = (leg.name, along if forward else leg.length_mm - along)
+            yield (at - start_mm) / length_mm, station
